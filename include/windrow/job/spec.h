@@ -1,0 +1,130 @@
+// The validated job: what one invocation is to do. Made from the job file by parse_job(); paths are absolute.
+#pragma once
+#include <array>
+#include <map>
+#include <optional>
+#include <string>
+#include <utility>
+#include <vector>
+
+#include "windrow/base/error.h"
+#include "windrow/calendar/calendar.h"
+
+namespace windrow::job {
+
+struct RunSpec {
+  std::string name, family, forcing;
+  bool anchor = false;  ///< exactly one run a family has it (a family of one is its own anchor)
+  std::vector<std::string> patterns;  ///< as written, absolute; globbed later
+  std::string land_fraction;          ///< path or empty
+};
+
+enum class Method { conservative1 };
+enum class Adjustment { none, mean_shift, mean_ratio, quantile_mapping };
+enum class Form { additive, multiplicative };
+enum class Carry { target, correction };
+enum class SeasonKind { month, year, moving };
+
+struct AdjustSpec {
+  Adjustment method = Adjustment::none;
+  Form form = Form::additive;             ///< default: multiplicative for mean-ratio
+  std::vector<std::string> observed;      ///< one or two station columns
+  std::optional<std::pair<calendar::Date, calendar::Date>> period;  ///< default: the anchor run's whole period
+  SeasonKind season = SeasonKind::moving;
+  bool season_given = false;              ///< monthly model data default to month
+  int window_days = 31, day_step = 5;
+  int quantiles = 100;
+  double max_ratio = 10;
+  Carry carry = Carry::target;
+  bool accept_period_mismatch = false;
+};
+
+struct TerrainSpec {
+  std::array<double, 12> lapse_per_m{};  ///< per metre, in K (or the field's units) — negative for cooling with height
+  std::string model_height;              ///< path
+};
+
+struct FieldSpec {
+  std::string variable, name, units;  ///< units empty: the source's
+  Method method = Method::conservative1;
+  bool total = false;
+  double min_cover = 0.5, min_land = 0;
+  bool fill_nearest = false;
+  std::optional<std::pair<double, double>> range;
+  AdjustSpec adjust;
+  std::optional<TerrainSpec> terrain;
+};
+
+struct AxisSpec {
+  double from = 0, to = 0, step = 0;
+  [[nodiscard]] std::vector<double> edges() const;  ///< from + i*step computed as (from*(n-i) + to*i)/n
+};
+enum class MeshKind { latlon, projected };
+struct MeshSpec {
+  std::string name;  ///< default "mesh"
+  MeshKind kind = MeshKind::latlon;
+  AxisSpec x, y;     ///< lon, lat on latlon meshes
+  std::string crs;
+  std::string height;          ///< path or empty
+  bool ellipsoid = false;      ///< [mesh] earth = "ellipsoid"
+};
+
+struct StationSpec {
+  bool given = false;
+  std::string sites;
+  std::vector<std::string> daily, monthly, normals;
+  std::map<std::string, std::string> columns, units;
+  std::optional<std::pair<int, int>> normals_period;
+  int min_years = 10;
+  std::string day_note;  ///< text for the product's comment, from `day = {...}`
+};
+
+enum class ReachMethod { nearest, inverse_distance };
+enum class Beyond { taper, raw, missing };
+struct ReachSpec {
+  ReachMethod method = ReachMethod::inverse_distance;
+  double radius_m = 300e3;
+  double power = 2;
+  Beyond beyond = Beyond::taper;
+  int neighbours = 32;
+};
+
+struct OutputSpec {
+  std::string directory;  ///< default "out"
+  std::string name = "{field}_{run}_{mesh}.nc";
+  bool deflate = true;
+  int level = 1;
+  int digits = 0;
+  std::optional<std::array<int, 3>> tile;  ///< nothing: auto
+  std::vector<std::pair<std::string, std::string>> attributes;
+};
+
+struct JobSpec {
+  std::string path;       ///< the job file
+  std::string text;       ///< its text, kept for provenance
+  std::string title, version = "1";
+  std::string workspace;  ///< default "work"
+  std::optional<long long> memory_bytes;
+  int threads = 0;
+  double settle_s = 0;
+  std::vector<RunSpec> runs;
+  std::vector<FieldSpec> fields;
+  MeshSpec mesh;
+  StationSpec stations;
+  ReachSpec reach;
+  OutputSpec output;
+};
+
+/// Parses and validates. Every problem is Error(job) whose message is `FILE:LINE:COLUMN: what, expected what` and whose
+/// detail shows the line with a caret; the nearest valid word is named. `overrides` are --set key=value pairs (dotted
+/// path, index for arrays of tables: field.0.units=K).
+JobSpec parse_job(const std::string& path, const std::string& text, const std::vector<std::string>& overrides);
+
+/// The commented job file that `windrow new` prints (kinds: "grid"). Parses with parse_job once its paths exist.
+std::string template_text(const std::string& kind);
+
+/// Every setting with its value, defaults included, one "key = value" a line, in job-file order. Result-changing keys
+/// only when `result_only`; used for the ledger and the staleness key.
+std::vector<std::pair<std::string, std::string>> settings(const JobSpec& job, bool result_only);
+
+}  // namespace windrow::job

@@ -1,0 +1,76 @@
+// Stations in memory: sites, series, normals, completeness. Reads tables (text::CsvTable), knows no file system.
+#pragma once
+#include <cstdint>
+#include <map>
+#include <string>
+#include <vector>
+
+#include "windrow/base/angle.h"
+#include "windrow/base/notices.h"
+#include "windrow/calendar/calendar.h"
+#include "windrow/text/csv.h"
+
+namespace windrow::station {
+
+struct Site {
+  std::string id;
+  std::string name;
+  GeoPoint position;
+  double elevation_m = 0;  ///< NaN: not given
+};
+
+/// How headings and units of a user's file map to windrow's names (job file [stations] columns, units).
+struct Mapping {
+  std::map<std::string, std::string> columns;  ///< windrow's name -> heading in the file ("longitude" -> "lon")
+  std::map<std::string, std::string> units;    ///< heading -> units, when the heading carries no [unit]
+};
+
+/// One observed variable of one station in output units. Days count from 0000-01-01, proleptic Gregorian.
+struct DailySeries {
+  std::vector<std::int64_t> day;  ///< strictly ascending, only days with a value
+  std::vector<double> value;
+};
+struct MonthlyValue {
+  int year = 0, month = 0;
+  double value = 0;
+};
+
+/// What is known of one variable at one station after quality rules. Exactly one of the three is filled, or daily and
+/// normals / monthly and normals together (normals win nothing when a series gives the season).
+struct Record {
+  Site site;
+  DailySeries daily;                  ///< complete months only (WMO-No. 1203, 4.4)
+  std::vector<MonthlyValue> monthly;  ///< complete months: given, or made from daily
+  std::vector<double> normal;         ///< 12, NaN where missing; empty when there are none
+  int complete_years = 0;             ///< most limiting calendar month's number of complete months
+};
+
+/// Completeness rules of WMO-No. 1203 (2017), section 4.4 as summarised in the secondary source named in the tests.
+enum class Kind { mean, sum };
+/// Mean: rejected with >= 11 days missing or >= 5 consecutive days missing. Sum: rejected with any day missing.
+bool month_complete(const std::vector<bool>& present, Kind kind);
+/// Valid months needed for a normal over `years` years: 80 % (24 of 30).
+int months_needed(int years);
+
+struct Options {
+  std::vector<std::string> observed;  ///< station columns; two are averaged (both must be present)
+  std::string units;                  ///< output units of the field
+  Kind kind = Kind::mean;
+  bool per_day_rate = false;          ///< field is a rate (mm/day); monthly sums are divided by the month's length
+  double low = -1e30, high = 1e30;    ///< impossible outside, in output units
+  int min_years = 10;
+  int normals_first = 0, normals_last = 0;  ///< normals_period, 0 when not given
+};
+
+struct Tables {
+  text::CsvTable sites;
+  std::vector<text::CsvTable> daily, monthly, normals;
+};
+
+/// Builds the records of one field. Duplicates (same station and date twice, two sites at one position, a site twice),
+/// impossible values, stations without enough complete years and sites without coordinates are left out and told through
+/// `notices` by name. Error(data) names file and line for what cannot be read at all: bad date, bad number, unknown
+/// column (with the near miss), empty table, unknown units.
+std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, const Options& options, Notices& notices);
+
+}  // namespace windrow::station
