@@ -11,7 +11,7 @@
 
 #include "windrow/base/notices.h"
 #include "windrow/calendar/calendar.h"
-#include "windrow/mesh/mesh.h"
+#include "windrow/mesh/latlon_edges.h"
 
 namespace windrow::cf {
 

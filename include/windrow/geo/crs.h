@@ -5,7 +5,7 @@
 #include <variant>
 #include <vector>
 
-#include "windrow/mesh/mesh.h"
+#include "windrow/mesh/projector.h"
 
 namespace windrow::geo {
 

@@ -2,7 +2,6 @@
 #pragma once
 #include <cstddef>
 #include <cstdint>
-#include <functional>
 #include <memory>
 #include <optional>
 #include <string>
@@ -10,15 +9,11 @@
 
 #include "windrow/base/angle.h"
 #include "windrow/codec/digest.h"
+#include "windrow/mesh/latlon_edges.h"
+#include "windrow/mesh/projector.h"
 #include "windrow/sphere/polygon.h"
 
 namespace windrow::mesh {
-
-/// Extent of a structured latitude-longitude block: edges ascending, longitude edges spanning at most 360 degrees.
-struct LatLonEdges {
-  std::vector<double> lon_deg;  ///< nx + 1
-  std::vector<double> lat_deg;  ///< ny + 1, within -90..90
-};
 
 /// Cells of one mesh, numbered 0..size()-1 row by row (y ascending, then x). Areas are steradians on the unit sphere.
 class Mesh {
@@ -43,21 +38,6 @@ class Mesh {
 };
 
 using MeshPtr = std::shared_ptr<const Mesh>;
-
-/// Takes mesh coordinates to geodetic degrees, in place: x -> longitude, y -> latitude. A point the projection cannot
-/// reach becomes NaN. Thread-safe.
-using Projector = std::function<void(std::vector<double>& x, std::vector<double>& y)>;
-
-/// How latitude is understood: on the sphere as given, or geodetic on an ellipsoid and turned into authalic latitude
-/// (Snyder 1987, PP 1395, eqs 3-11, 3-12), so that areas are those of the ellipsoid.
-struct Earth {
-  double radius_m = 6371007.1809;  ///< sphere radius, or the ellipsoid's authalic radius
-  double e2 = 0;                   ///< first eccentricity squared; 0: sphere
-  bool operator==(const Earth&) const = default;
-  static Earth sphere(double radius_m);
-  static Earth ellipsoid(double semi_major_m, double inverse_flattening);
-};
-double authalic_latitude_deg(double geodetic_deg, double e2);
 
 /// Latitude-longitude cells. Error(data) when edges are not strictly ascending, leave -90..90 or span over 360 degrees.
 MeshPtr make_latlon(LatLonEdges edges, const Earth& earth, const std::string& place);

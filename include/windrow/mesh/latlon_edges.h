@@ -1,0 +1,13 @@
+// The plain record of a latitude-longitude block, shared with readers that know no geometry.
+#pragma once
+#include <vector>
+
+namespace windrow::mesh {
+
+/// Extent of a structured latitude-longitude block: edges ascending, longitude edges spanning at most 360 degrees.
+struct LatLonEdges {
+  std::vector<double> lon_deg;  ///< nx + 1
+  std::vector<double> lat_deg;  ///< ny + 1, within -90..90
+};
+
+}  // namespace windrow::mesh
