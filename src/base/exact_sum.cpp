@@ -11,7 +11,7 @@ BinnedSum::Bins BinnedSum::bins(double bound, std::uint64_t terms) {
   bound = std::max(bound, std::numeric_limits<double>::min());
   int exponent = 0;
   std::frexp(bound, &exponent);  // bound <= 2^exponent
-  const int log_terms = terms <= 1 ? 0 : std::bit_width(terms - 1);
+  const int log_terms = terms <= 1 ? 0 : static_cast<int>(std::bit_width(terms - 1));
   // terms * bound <= 2^(exponent + log_terms) = 2^52 * q1
   const int q1 = std::max(exponent + log_terms - 52, -960);
   // rests are at most q1 / 2: terms * q1 / 2 <= 2^52 * q2

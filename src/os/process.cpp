@@ -7,10 +7,8 @@
 #include <unistd.h>
 
 #include <algorithm>
-#include <atomic>
 #include <csignal>
-#include <cstdio>
-#include <cstdlib>
+#include <ctime>
 #include <fstream>
 #include <string>
 
@@ -48,7 +46,7 @@ std::int64_t memory_limit() {
   std::ifstream groups("/proc/self/cgroup");
   for (std::string line; std::getline(groups, line);) {
     const auto path = line.substr(line.rfind(':') + 1);
-    for (const std::string root : {"/sys/fs/cgroup" + path + "/memory.max",
+    for (const std::string& root : {"/sys/fs/cgroup" + path + "/memory.max",
                                    "/sys/fs/cgroup/memory" + path + "/memory.limit_in_bytes"}) {
       if (const auto value = control_value(root); value > 0) limit = std::min(limit, value);
     }
