@@ -1,0 +1,219 @@
+// The library mutex and the thin RAII over netCDF-C. Nothing here knows CF.
+#include "nc_file.h"
+
+#include <utility>
+
+namespace windrow::cf {
+
+std::mutex& library_mutex() {
+  static std::mutex mutex;
+  return mutex;
+}
+
+namespace nc {
+
+namespace {
+
+std::string read_strings(int file, int variable, const std::string& name, std::size_t count, const std::string& path) {
+  std::vector<char*> strings(count, nullptr);
+  check(nc_get_att_string(file, variable, name.c_str(), strings.data()), path, "attribute " + name);
+  std::string joined;
+  for (std::size_t i = 0; i < count; ++i) {
+    if (i > 0) joined += ' ';
+    if (strings[i] != nullptr) joined += strings[i];
+  }
+  nc_free_string(count, strings.data());
+  return joined;
+}
+
+Att read_attribute(int file, int variable, int index, const std::string& path) {
+  char name[NC_MAX_NAME + 1] = {};
+  check(nc_inq_attname(file, variable, index, name), path, "attribute");
+  Att att;
+  att.name = name;
+  std::size_t count = 0;
+  check(nc_inq_att(file, variable, name, &att.type, &count), path, "attribute " + att.name);
+  if (att.type == NC_CHAR) {
+    att.text.resize(count);
+    if (count > 0) check(nc_get_att_text(file, variable, name, att.text.data()), path, "attribute " + att.name);
+    while (!att.text.empty() && att.text.back() == '\0') att.text.pop_back();
+  } else if (att.type == NC_STRING) {
+    att.text = read_strings(file, variable, att.name, count, path);
+  } else if (type_size(att.type) > 0) {
+    att.numbers.resize(count);
+    if (count > 0) check(nc_get_att_double(file, variable, name, att.numbers.data()), path, "attribute " + att.name);
+  }  // user-defined types are kept by name only
+  return att;
+}
+
+std::vector<Att> read_attributes(int file, int variable, const std::string& path) {
+  int count = 0;
+  check(variable == NC_GLOBAL ? nc_inq_natts(file, &count) : nc_inq_varnatts(file, variable, &count), path,
+        "attributes");
+  std::vector<Att> atts;
+  for (int i = 0; i < count; ++i) atts.push_back(read_attribute(file, variable, i, path));
+  return atts;
+}
+
+}  // namespace
+
+void check(int status, const std::string& place, const std::string& what, Failure kind) {
+  if (status == NC_NOERR) return;
+  throw Error(kind, place, (what.empty() ? std::string() : what + ": ") + nc_strerror(status));
+}
+
+const Att* Var::find(const std::string& wanted) const {
+  for (const Att& att : attributes)
+    if (att.name == wanted) return &att;
+  return nullptr;
+}
+
+std::string Var::text(const std::string& wanted) const {
+  const Att* att = find(wanted);
+  return att != nullptr ? att->text : std::string();
+}
+
+std::size_t type_size(nc_type type) {
+  switch (type) {
+    case NC_BYTE:
+    case NC_CHAR:
+    case NC_UBYTE:
+      return 1;
+    case NC_SHORT:
+    case NC_USHORT:
+      return 2;
+    case NC_INT:
+    case NC_UINT:
+    case NC_FLOAT:
+      return 4;
+    case NC_DOUBLE:
+    case NC_INT64:
+    case NC_UINT64:
+      return 8;
+    default:
+      return 0;
+  }
+}
+
+std::string type_name(nc_type type) {
+  static const char* const names[] = {"unknown", "byte",   "char", "short", "int",    "float", "double",
+                                      "ubyte",   "ushort", "uint", "int64", "uint64", "string"};
+  return type >= 0 && type <= NC_STRING ? names[type] : "user-defined";
+}
+
+File File::open(const std::string& path) {
+  const std::scoped_lock lock(library_mutex());
+  int id = -1;
+  check(nc_open(path.c_str(), NC_NOWRITE, &id), path, "");
+  return {id, path};
+}
+
+File File::create(const std::string& path, int mode) {
+  const std::scoped_lock lock(library_mutex());
+  int id = -1;
+  check(nc_create(path.c_str(), mode, &id), path, "", Failure::output);
+  return {id, path};
+}
+
+File::File(File&& other) noexcept : id_(std::exchange(other.id_, -1)), path_(std::move(other.path_)) {}
+
+File& File::operator=(File&& other) noexcept {
+  std::swap(id_, other.id_);
+  std::swap(path_, other.path_);
+  return *this;
+}
+
+File::~File() {
+  if (id_ < 0) return;
+  const std::scoped_lock lock(library_mutex());
+  nc_close(id_);
+}
+
+void File::close(Failure kind) {
+  if (id_ < 0) return;
+  const std::scoped_lock lock(library_mutex());
+  check(nc_close(std::exchange(id_, -1)), path_, "closing", kind);
+}
+
+std::vector<Dim> File::dimensions() const {
+  const std::scoped_lock lock(library_mutex());
+  int count = 0;
+  check(nc_inq_dimids(id_, &count, nullptr, 0), path_, "dimensions");
+  std::vector<int> ids(count);
+  check(nc_inq_dimids(id_, &count, ids.data(), 0), path_, "dimensions");
+  int unlimited_count = 0;
+  check(nc_inq_unlimdims(id_, &unlimited_count, nullptr), path_, "dimensions");
+  std::vector<int> unlimited(unlimited_count);
+  check(nc_inq_unlimdims(id_, &unlimited_count, unlimited.data()), path_, "dimensions");
+  std::vector<Dim> dims;
+  for (const int id : ids) {
+    char name[NC_MAX_NAME + 1] = {};
+    Dim dim;
+    dim.id = id;
+    check(nc_inq_dim(id_, id, name, &dim.length), path_, "dimensions");
+    dim.name = name;
+    for (const int other : unlimited) dim.unlimited |= other == id;
+    dims.push_back(dim);
+  }
+  return dims;
+}
+
+std::vector<Att> File::global_attributes() const {
+  const std::scoped_lock lock(library_mutex());
+  return read_attributes(id_, NC_GLOBAL, path_);
+}
+
+std::vector<Var> File::variables() const {
+  const std::scoped_lock lock(library_mutex());
+  int count = 0;
+  check(nc_inq_varids(id_, &count, nullptr), path_, "variables");
+  std::vector<int> ids(count);
+  check(nc_inq_varids(id_, &count, ids.data()), path_, "variables");
+  std::vector<Var> vars;
+  for (const int id : ids) {
+    char name[NC_MAX_NAME + 1] = {};
+    Var var;
+    var.id = id;
+    int rank = 0;
+    check(nc_inq_varndims(id_, id, &rank), path_, "variables");
+    var.dims.resize(rank);
+    check(nc_inq_var(id_, id, name, &var.type, nullptr, var.dims.data(), nullptr), path_, "variables");
+    var.name = name;
+    var.attributes = read_attributes(id_, id, path_);
+    vars.push_back(std::move(var));
+  }
+  return vars;
+}
+
+std::vector<double> File::doubles(const Var& variable) const {
+  const std::scoped_lock lock(library_mutex());
+  std::size_t count = 1;
+  for (const int dim : variable.dims) {
+    std::size_t length = 0;
+    check(nc_inq_dimlen(id_, dim, &length), path_, "variable " + variable.name);
+    count *= length;
+  }
+  std::vector<double> values(count);
+  if (count > 0) check(nc_get_var_double(id_, variable.id, values.data()), path_, "variable " + variable.name);
+  return values;
+}
+
+void File::raw(const Var& variable, std::span<const std::size_t> start, std::span<const std::size_t> count,
+               void* out) const {
+  const std::scoped_lock lock(library_mutex());
+  check(nc_get_vara(id_, variable.id, start.data(), count.data(), out), path_, "variable " + variable.name);
+}
+
+std::vector<std::size_t> File::chunking(const Var& variable) const {
+  const std::scoped_lock lock(library_mutex());
+  std::vector<std::size_t> lengths(variable.dims.size());
+  int storage = NC_CONTIGUOUS;
+  if (lengths.empty()) return {};
+  check(nc_inq_var_chunking(id_, variable.id, &storage, lengths.data()), path_, "variable " + variable.name);
+  return storage == NC_CHUNKED ? lengths : std::vector<std::size_t>();
+}
+
+Attribute to_record(const Att& attribute) { return {attribute.name, attribute.text, attribute.numbers}; }
+
+}  // namespace nc
+}  // namespace windrow::cf
