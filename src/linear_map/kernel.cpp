@@ -48,34 +48,33 @@ Weights make_weights(const LinearMap& map, std::span<const double> fraction) {
   return out;
 }
 
-template <typename T>
-void SourceBlock<T>::resize(std::size_t column_count, std::size_t step_count) {
-  columns = column_count;
+void SourceBlock::resize(const std::vector<std::uint32_t>& columns, std::size_t all_columns, std::size_t step_count) {
+  held = columns.size();
   steps = step_count;
-  value.assign(blocks() * columns * kLanes, std::numeric_limits<T>::quiet_NaN());
+  slot.assign(all_columns, kNotHeld);
+  for (std::size_t i = 0; i < columns.size(); ++i) slot[columns[i]] = static_cast<std::uint32_t>(i);
+  value.assign(blocks() * held * kLanes, std::numeric_limits<double>::quiet_NaN());
 }
 
-template <typename T>
-void SourceBlock<T>::fill(std::size_t t0, std::size_t count, const T* values) {
+void SourceBlock::fill(std::size_t t0, std::size_t count, const double* values) {
   for (std::size_t t = t0; t < t0 + count; ++t) {
-    T* lane = value.data() + (t / kLanes) * columns * kLanes + t % kLanes;
-    const T* from = values + (t - t0) * columns;
-    for (std::size_t c = 0; c < columns; ++c) lane[c * kLanes] = from[c];
+    double* lane = value.data() + (t / kLanes) * held * kLanes + t % kLanes;
+    const double* from = values + (t - t0) * held;
+    for (std::size_t i = 0; i < held; ++i) lane[i * kLanes] = from[i];
   }
 }
 
-template <typename T>
-WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const SourceBlock<T>& source, std::size_t block,
+WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const SourceBlock& source, std::size_t block,
                               RowLanes& out) {
   const LinearMap& map = *weights.map;
-  const T* values = source.value.data() + block * source.columns * kLanes;
+  const double* values = source.value.data() + block * source.held * kLanes;
   const auto first = map.row_start[row], last = map.row_start[row + 1];
   const bool mean = map.quantity == Quantity::mean;
   if (mean && last - first == 1) {
-    const T* v = values + static_cast<std::size_t>(map.column[first]) * kLanes;
+    const double* v = values + static_cast<std::size_t>(source.slot[map.column[first]]) * kLanes;
     const double w = weights.weight[first], share = std::min(1.0, map.share[first]);
     for (std::size_t lane = 0; lane < kLanes; ++lane) {
-      const auto x = static_cast<double>(v[lane]);
+      const double x = v[lane];
       out.value[lane] = x;
       out.cover[lane] = x == x ? share : 0.0;
       out.weight[lane] = x == x ? w : 0.0;
@@ -84,11 +83,11 @@ WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const Sou
   }
   double sum[kLanes] = {}, present[kLanes] = {}, cover[kLanes] = {};
   for (auto k = first; k < last; ++k) {
-    const T* v = values + static_cast<std::size_t>(map.column[k]) * kLanes;
+    const double* v = values + static_cast<std::size_t>(source.slot[map.column[k]]) * kLanes;
     const double w = weights.weight[k], share = map.share[k];
     for (std::size_t lane = 0; lane < kLanes; ++lane) {
       // A missing value is a NaN; it enters with weight zero. Adding zero changes no bit of the other terms.
-      const auto x = static_cast<double>(v[lane]);
+      const double x = v[lane];
       const bool has = x == x;
       sum[lane] += has ? w * x : 0.0;
       present[lane] += has ? w : 0.0;
@@ -104,8 +103,7 @@ WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const Sou
   }
 }
 
-template <typename T>
-void apply_series(const Weights& weights, std::size_t row, const SourceBlock<T>& source, std::span<double> series) {
+void apply_series(const Weights& weights, std::size_t row, const SourceBlock& source, std::span<double> series) {
   RowLanes lanes;
   for (std::size_t block = 0; block < source.blocks(); ++block) {
     apply_row(weights, row, source, block, lanes);
@@ -113,12 +111,5 @@ void apply_series(const Weights& weights, std::size_t row, const SourceBlock<T>&
     std::copy_n(lanes.value.begin(), count, series.begin() + static_cast<std::ptrdiff_t>(t0));
   }
 }
-
-template struct SourceBlock<float>;
-template struct SourceBlock<double>;
-template void apply_row(const Weights&, std::size_t, const SourceBlock<float>&, std::size_t, RowLanes&);
-template void apply_row(const Weights&, std::size_t, const SourceBlock<double>&, std::size_t, RowLanes&);
-template void apply_series(const Weights&, std::size_t, const SourceBlock<float>&, std::span<double>);
-template void apply_series(const Weights&, std::size_t, const SourceBlock<double>&, std::span<double>);
 
 }  // namespace windrow::linear_map

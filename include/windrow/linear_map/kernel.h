@@ -26,16 +26,22 @@ struct Weights {
 /// `fraction`: one a column in 0..1, or empty. NaN fractions count as 0.
 Weights make_weights(const LinearMap& map, std::span<const double> fraction);
 
-/// Source values interleaved: value[(block * columns + column) * kLanes + lane], step = block * kLanes + lane.
-/// The last block is padded with NaN.
-template <typename T>
+/// Source values of some columns, interleaved: value[(block * held + slot) * kLanes + lane], step = block * kLanes + lane.
+/// The last block is padded with NaN. Steps count from the block's own first step.
 struct SourceBlock {
-  std::size_t columns = 0, steps = 0;
-  std::vector<T> value;
+  std::size_t held = 0;             ///< columns held
+  std::size_t steps = 0;
+  std::vector<std::uint32_t> slot;  ///< map column -> position held; kNotHeld elsewhere
+  std::vector<double> value;
+  static constexpr std::uint32_t kNotHeld = 0xffffffffU;
   [[nodiscard]] std::size_t blocks() const { return (steps + kLanes - 1) / kLanes; }
-  void resize(std::size_t column_count, std::size_t step_count);
-  /// `values[t * columns + c]`, t0 <= t < t0 + count, into steps t0...
-  void fill(std::size_t t0, std::size_t count, const T* values);
+  /// Holds `columns` (ascending map columns) of a map with `all_columns`.
+  void resize(const std::vector<std::uint32_t>& columns, std::size_t all_columns, std::size_t step_count);
+  /// `values[t * held + i]`, into steps t0 <= t < t0 + count.
+  void fill(std::size_t t0, std::size_t count, const double* values);
+  [[nodiscard]] double at(std::size_t step, std::size_t position) const {
+    return value[((step / kLanes) * held + position) * kLanes + step % kLanes];
+  }
 };
 
 /// Values and cover of one row for the kLanes steps of one block, in double.
@@ -46,12 +52,10 @@ struct RowLanes {
   std::array<double, kLanes> weight;  ///< sum of present weights: value * weight * row_area is the integral
 };
 
-/// One row, one block. A row with a single pairing of a mean hands the source value on unchanged.
-template <typename T>
-void apply_row(const Weights& weights, std::size_t row, const SourceBlock<T>& source, std::size_t block, RowLanes& out);
+/// One row, one block; all columns of the row must be held. A row with a single pairing of a mean hands the source value on unchanged.
+void apply_row(const Weights& weights, std::size_t row, const SourceBlock& source, std::size_t block, RowLanes& out);
 
 /// A row over all steps of the source: series[t].
-template <typename T>
-void apply_series(const Weights& weights, std::size_t row, const SourceBlock<T>& source, std::span<double> series);
+void apply_series(const Weights& weights, std::size_t row, const SourceBlock& source, std::span<double> series);
 
 }  // namespace windrow::linear_map

@@ -5,6 +5,7 @@
 
 #include <cmath>
 #include <limits>
+#include <numeric>
 #include <random>
 
 using namespace windrow::linear_map;
@@ -32,9 +33,11 @@ LinearMap random_map(std::size_t rows, std::size_t columns, std::mt19937_64& ran
   return map;
 }
 
-SourceBlock<double> source_of(std::size_t columns, std::size_t steps, const std::vector<double>& values) {
-  SourceBlock<double> source;
-  source.resize(columns, steps);
+SourceBlock source_of(std::size_t columns, std::size_t steps, const std::vector<double>& values) {
+  SourceBlock source;
+  std::vector<std::uint32_t> all(columns);
+  std::iota(all.begin(), all.end(), 0U);
+  source.resize(all, columns, steps);
   source.fill(0, steps, values.data());
   return source;
 }
@@ -83,6 +86,30 @@ TEST_CASE("the missing-data path gives the same bits as the plain path on comple
       CHECK(part.cover[lane - 1] == 0);
     }
     if (map.row_start[row + 1] - map.row_start[row] > 1) CHECK(full.value[1] == sum / total);
+  }
+}
+
+TEST_CASE("a block that holds some columns gives the values of one that holds all") {
+  std::mt19937_64 random(14);
+  const auto map = random_map(50, 40, random);
+  const auto weights = make_weights(map, {});
+  std::vector<double> values(40 * 11);
+  for (auto& x : values) x = static_cast<double>(random() % 1000);
+  const auto all = source_of(40, 11, values);
+  for (std::size_t row = 0; row < map.rows(); ++row) {
+    const std::vector<std::uint32_t> needed(map.column.begin() + static_cast<std::ptrdiff_t>(map.row_start[row]),
+                                            map.column.begin() + static_cast<std::ptrdiff_t>(map.row_start[row + 1]));
+    std::vector<double> few;
+    for (std::size_t t = 0; t < 11; ++t) {
+      for (const auto c : needed) few.push_back(values[t * 40 + c]);
+    }
+    SourceBlock part;
+    part.resize(needed, 40, 11);
+    part.fill(0, 11, few.data());
+    std::vector<double> a(11), b(11);
+    apply_series(weights, row, all, std::span<double>(a));
+    apply_series(weights, row, part, std::span<double>(b));
+    for (std::size_t t = 0; t < 11; ++t) CHECK((a[t] == b[t] || (std::isnan(a[t]) && std::isnan(b[t]))));
   }
 }
 
