@@ -1,4 +1,5 @@
-// Comma-separated tables (RFC 4180; also semicolon or tab, decided by the header line). UTF-8, BOM dropped, CRLF allowed.
+// Comma-separated tables (RFC 4180; also semicolon or tab, decided by the header line). UTF-8, BOM dropped, CRLF
+// allowed.
 #pragma once
 #include <cstddef>
 #include <string>
@@ -12,7 +13,11 @@ struct Heading {
   std::string units;  ///< "degC" of "tas [degC]"; empty when there is no bracket
 };
 
-/// A whole table in memory. Error(data) names file and line: unbalanced quote, a row with too many fields, no header.
+/// A whole table in memory. The separator is the one of comma, semicolon and tab that the header line has most of.
+/// Blank lines are passed over; a row may have fewer fields than the header. Blanks around a field or its quotes drop.
+/// Error(data) names file and line: no header, a heading (name) twice, a quote not closed, inside an unquoted field or
+/// followed by text, a carriage return without line feed outside quotes, a row with too many fields, bytes that are not
+/// UTF-8, a NUL.
 class CsvTable {
  public:
   static CsvTable parse(std::string_view bytes, const std::string& file);
@@ -20,13 +25,14 @@ class CsvTable {
   [[nodiscard]] std::size_t rows() const { return lines_.size(); }
   [[nodiscard]] std::string_view at(std::size_t row, std::size_t column) const;  ///< trimmed; empty when absent
   [[nodiscard]] std::size_t line(std::size_t row) const { return lines_[row]; }  ///< 1-based line in the file
-  [[nodiscard]] int column(std::string_view name) const;                         ///< -1 when there is none
+  [[nodiscard]] int column(std::string_view name) const;                         ///< exact name; -1 when there is none
   [[nodiscard]] const std::string& file() const { return file_; }
 
  private:
   std::string file_;
   std::vector<Heading> headings_;
-  std::vector<std::string> cells_;
+  std::string text_;               // all cells of all rows, one after the other
+  std::vector<std::size_t> ends_;  // end of each cell in text_, row by row, padded to the header's width
   std::vector<std::size_t> lines_;
 };
 
