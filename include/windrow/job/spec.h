@@ -1,6 +1,7 @@
 // The validated job: what one invocation is to do. Made from the job file by parse_job(); paths are absolute.
 #pragma once
 #include <array>
+#include <cstddef>
 #include <map>
 #include <optional>
 #include <string>
@@ -126,5 +127,15 @@ std::string template_text(const std::string& kind);
 /// Every setting with its value, defaults included, one "key = value" a line, in job-file order. Result-changing keys
 /// only when `result_only`; used for the ledger and the staleness key.
 std::vector<std::pair<std::string, std::string>> settings(const JobSpec& job, bool result_only);
+
+/// What a setting changes: a product's values or attributes; only how the file stores them (compression, level, tile);
+/// nothing of the file (threads, memory, folders).
+enum class Effect { result, encoding, none };
+
+/// The settings one product depends on, without list indices ("field.units", "run.name", "anchor.files"), so that
+/// another run or field added to the job does not touch it: those whose effect is `least` or stronger. Stations and
+/// reach only for an adjusted field; the anchor run's where it is another run.
+std::vector<std::pair<std::string, std::string>> product_settings(const JobSpec& job, std::size_t field, std::size_t run,
+                                                                  Effect least);
 
 }  // namespace windrow::job

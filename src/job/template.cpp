@@ -1,0 +1,112 @@
+// The commented job file to start from. Every key of this version is in it; tests check that against the key lists.
+#include "windrow/job/spec.h"
+
+namespace windrow::job {
+namespace {
+
+// Lines that begin with '#' and a space explain; lines that begin with '#' alone are settings left out.
+constexpr const char* kGrid = R"toml(# A windrow job: which model files, which variables, onto which mesh.
+# Paths are relative to this file; ~ and ${NAME} are filled in. Lines that begin with "# " explain. Settings that are
+# left out begin with "#" alone and show their default, or an example where there is none. Check with `windrow plan`.
+
+[job]
+#title     = "Daily climate of Kelder, 1981-2010"   # kept in the products
+#workspace = "work"           # linear maps, transfers, journal; safe to delete
+#memory    = "4 GiB"          # ceiling for the whole process; default: 80 % of what there is
+#threads   = 0                # 0: the processors this process may use
+#settle    = "0 min"          # input files younger than this are waited for
+#version   = "1"              # product version, kept in the product and as {version}
+
+# One [[run]] for each model run.
+[[run]]
+#name     = "run"             # needed when there are several
+#family   = "run"             # runs that share one calibration; default: the run's name
+#anchor   = true              # the family is calibrated on this run; exactly one in a family of several
+#forcing  = "all forcings"    # free text, kept in the product
+files    = ["in/tas_*.nc"]
+#land_fraction = "in/sftlf.nc"    # only that fraction of each cell counts
+
+# One [[field]] for each variable.
+[[field]]
+variable = "tas"              # name in the model files
+#name     = "tas"             # name in the product; default: the same
+#units    = "degC"            # default: the source's; converted with UDUNITS
+#method   = "conservative-1"  # the means over model cells are kept
+#quantity = "mean"            # mean (a cell average: temperature, flux density) | total (a cell sum: mass, population)
+#min_cover = 0.5              # a mesh cell with less cover by cells that have a value is missing
+#min_land  = 0.0              # with land_fraction: a mesh cell with a smaller land share is missing
+#fill     = "none"            # none | nearest: what a cell below min_cover gets
+#range    = [-90, 60]         # physical range in output units; what falls outside is clamped and counted
+
+# Bias adjustment to stations; leave it out for regridding only. Needs [stations].
+#[field.adjust]
+#method   = "quantile-mapping"    # none | mean-shift | mean-ratio | quantile-mapping
+#form     = "additive"        # additive | multiplicative (mean-ratio)
+#observed = "tas"             # station column; default: the field's name. Two are averaged: ["tmin", "tmax"]
+#period   = ["1981-01-01", "2010-12-31"]   # calibration period; default: all of the anchor run
+#season   = "31 days"         # "31 days" (moving window, default for daily data) | month (for monthly data) | year
+#day_step = 5                 # days between the centres of those windows
+#quantiles = 100              # of quantile-mapping
+#max_ratio = 10               # cap of a mean-ratio correction
+#tails    = "constant"        # beyond the calibrated range: the correction of the outermost quantile
+#carry    = "target"          # target | correction: what is carried from stations to cells
+#period_mismatch = "refuse"   # refuse | accept: station and model years that cannot be matched
+
+# Height adjustment before the transfer. Needs [mesh] height.
+#[field.terrain]
+#lapse    = "-6.5 K/km"       # or 12 monthly values
+#model_height = "in/orog.nc"
+
+[mesh]
+#name     = "mesh"
+#kind     = "latlon"          # latlon | projected
+lon      = { from = -10, to = 30, step = 0.25 }    # cell edges in degrees
+lat      = { from = 35, to = 60, step = 0.25 }
+# For kind = "projected" take these instead of lon and lat (cell edges in the projection's units):
+#   crs  = "EPSG:3035"        # any PROJ definition
+#   x    = { from = 4000000, to = 4500000, step = 5000 }
+#   y    = { from = 2500000, to = 3000000, step = 5000 }
+#height   = "in/relief.tif"   # a raster or CF NetCDF; averaged conservatively onto the mesh
+#earth    = "sphere"          # sphere | ellipsoid: what areas are measured on
+
+#[stations]
+#sites    = "in/sites.csv"    # station,longitude,latitude,elevation,name
+#daily    = "in/daily.csv"    # station,date,tas [degC]        (or monthly = ..., instead of it)
+# monthly = "in/monthly.csv"  # station,year,month,tas [degC]
+#normals  = "in/normals.csv"  # station,month,tas [degC]       (instead of, or beside the series)
+#columns  = { station = "id", elevation = "elev_m" }    # when a file's headings differ
+#units    = { tmin_degC = "degC" }                      # when a heading carries no [unit]
+#normals_period = [1981, 2010]
+#min_years = 10               # a station with fewer complete years is left out, and said so
+#day      = { ends = "24:00", zone = "UTC", label = "end" }   # the hours a station day covers; kept in the product
+#undercatch = "none"
+
+# How a station's correction reaches the cells between stations.
+#[reach]
+#method   = "inverse-distance"    # nearest | inverse-distance
+#radius   = "300 km"
+#power    = 2                 # of the distance
+#beyond   = "taper"           # cells farther from any station: taper (to the mean correction) | raw | missing
+#neighbours = 32              # up to 500 stations all are used
+
+[output]
+#directory = "out"
+#name      = "{field}_{run}_{mesh}.nc"   # {field} {run} {mesh} {version}; {year} splits by year
+#calendar  = "source"         # the model's own calendar
+#compression = "deflate"      # deflate | none
+#level     = 1                # 0 to 9
+#digits    = 0                # 1 to 7: keep that many significant digits
+#tile      = "auto"           # or [time, y, x]
+#attributes = { institution = "Kelder Weather Office (invented)" }
+)toml";
+
+}  // namespace
+
+std::string template_text(const std::string& kind) {
+  if (kind == "grid") return kGrid;
+  if (kind == "catchments" || kind == "towns")
+    throw Error(Failure::usage, "new", "'" + kind + "' is not in this version; expected grid");
+  throw Error(Failure::usage, "new", "unknown kind of job '" + kind + "'; expected grid");
+}
+
+}  // namespace windrow::job
