@@ -34,7 +34,7 @@ Weights make_weights(const LinearMap& map, std::span<const double> fraction) {
     }
     if (!fraction.empty()) {
       out.row_fraction[row] = shares > 0 ? std::min(1.0, weighted / shares) : 0.0;
-      if (weighted == 0) {
+      if (weighted == 0 && shares > 0) {
         out.all_surface[row] = 1;
         for (auto k = map.row_start[row]; k < map.row_start[row + 1]; ++k) out.weight[k] = map.share[k];
         weighted = shares;
