@@ -37,7 +37,7 @@ class NodeRow {
     const double* base = nodes_.data();
     for (std::size_t length = nodes_.size(); length > 1;) {
       const std::size_t half = length / 2;
-      base += base[half - 1] <= x ? half : 0;
+      base += half * static_cast<std::size_t>(base[half - 1] <= x);  // a product, so that no branch is guessed wrong
       length -= half;
     }
     return static_cast<std::size_t>(base - nodes_.data()) + (*base <= x ? 1 : 0);
