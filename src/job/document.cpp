@@ -6,8 +6,7 @@
 namespace windrow::job {
 namespace {
 
-constexpr std::size_t kWindow = 100;       // characters of a long line that are shown
-constexpr std::size_t kLongestQuote = 80;  // bytes of a user's word that a message repeats
+constexpr std::size_t kWindow = 100;  // characters of a long line that are shown
 
 // Length of the UTF-8 sequence at `at`, 0 when it is broken.
 std::size_t sequence_length(std::string_view text, std::size_t at) {
@@ -39,10 +38,10 @@ std::vector<std::string> characters(std::string_view text) {
 
 }  // namespace
 
-std::string printable(std::string_view text) {
+std::string printable(std::string_view text, std::size_t longest) {
   std::string out;
   for (const std::string& character : characters(text)) {
-    if (out.size() + character.size() > kLongestQuote) return out + "...";
+    if (out.size() + character.size() > longest) return out + "...";
     out += character == "\t" ? " " : character;
   }
   return out;
@@ -52,7 +51,7 @@ Document::Document(std::string name, std::string text, std::vector<std::string> 
     : name_(std::move(name)), text_(std::move(text)), overrides_(std::move(overrides)) {}
 
 std::string Document::place(Position at) const {
-  if (at.origin > 0) return "--set " + printable(overrides_[static_cast<std::size_t>(at.origin - 1)]);
+  if (at.origin > 0) return "--set " + printable(overrides_[static_cast<std::size_t>(at.origin - 1)], 200);
   if (at.line <= 0) return name_;
   return name_ + ":" + std::to_string(at.line) + ":" + std::to_string(at.column);
 }

@@ -38,7 +38,7 @@ class Document {
 };
 
 /// Text from a file made fit for one line of a message: control characters and broken UTF-8 become '?', long texts are
-/// cut.
-std::string printable(std::string_view text);
+/// cut to `longest` bytes.
+std::string printable(std::string_view text, std::size_t longest = 80);
 
 }  // namespace windrow::job

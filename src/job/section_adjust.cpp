@@ -120,7 +120,8 @@ std::array<double, 12> lapse(const Table& table, const FieldSpec& field) {
     if (written.kind == Value::Kind::text) {
       if (written.text == "fit")
         table.document().fail(written.at, "'fit' is not in this version; expected a lapse such as \"-6.5 K/km\"");
-      if (const auto quantity = text::parse_quantity(written.text))
+      const auto quantity = text::parse_quantity(written.text);
+      if (quantity && !quantity->second.empty())
         return lapse_per_metre(table, quantity->first, quantity->second, field, written.at);
     }
     const std::string found =

@@ -12,6 +12,7 @@ const Keys kMeshKeys{{"name", "kind", "crs", "x", "y", "lon", "lat", "height", "
 
 namespace {
 
+const std::vector<std::string> kKindsToCome{"raster", "file", "catchments", "towns", "faces"};
 constexpr double kMostCells = 1e9;
 // A step such as 0.0083333333333 is meant as 1/120: the number of cells may be off a whole number by this share, and
 // the edges are then computed from the ends and that number.
@@ -62,13 +63,20 @@ std::vector<double> AxisSpec::edges() const {
   return out;
 }
 
+void refuse_later_kind(const Document& document, const Value& mesh) {
+  for (const Member& member : mesh.members) {
+    if (member.key != "kind" || member.value.kind != Value::Kind::text) continue;
+    for (const std::string& kind : kKindsToCome)
+      if (kind == member.value.text)
+        document.fail(member.value.at, fmt::format("'{}' is not in this version; expected latlon or projected", kind));
+  }
+}
+
 MeshSpec read_mesh(const Table& table) {
   MeshSpec mesh;
   mesh.name = table.text("name", "mesh");
   check_name(table, "name", mesh.name);
-  mesh.kind = table.word<MeshKind>("kind",
-                                   {{{"latlon", MeshKind::latlon}, {"projected", MeshKind::projected}},
-                                    {"raster", "file", "catchments", "towns", "faces"}},
+  mesh.kind = table.word<MeshKind>("kind", {{{"latlon", MeshKind::latlon}, {"projected", MeshKind::projected}}, {}},
                                    MeshKind::latlon);
   if (mesh.kind == MeshKind::latlon) {
     if (!table.has("kind") && table.has("x"))

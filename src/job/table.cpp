@@ -27,15 +27,17 @@ Table::Table(const Document& document, const Value& value, std::string title, co
     : document_(&document), value_(&value), title_(std::move(title)) {
   for (const Member& member : value.members) {
     if (contains(keys.known, member.key)) continue;
+    const bool is_table = member.value.kind == Value::Kind::table || member.value.table_array;
     if (contains(keys.later, member.key))
-      document.fail(member.at, fmt::format("'{}' is not in this version; leave it out", member.key));
+      document.fail(member.at,
+                    fmt::format("{}'{}' is not in this version; leave it out", is_table ? "table " : "", member.key));
+    const std::string unknown =
+        fmt::format("unknown {} '{}' in {}", is_table ? "table" : "key", printable(member.key), title_);
     // A near miss of a key to come is told as such, rather than as a near miss of something else.
     const std::string later = text::nearest_word(member.key, keys.later);
     if (!later.empty() && text::nearest_word(member.key, keys.known).empty())
-      document.fail(member.at, fmt::format("unknown key '{}' in {}; '{}' is not in this version; leave it out",
-                                           printable(member.key), title_, later));
-    document.fail(member.at, fmt::format("unknown key '{}' in {}{}", printable(member.key), title_,
-                                         suggestion(member.key, keys.known)));
+      document.fail(member.at, fmt::format("{}; '{}' is not in this version; leave it out", unknown, later));
+    document.fail(member.at, unknown + suggestion(member.key, keys.known));
   }
 }
 

@@ -87,7 +87,10 @@ Value read_toml(const Document& document) {
   try {
     return converted_table(toml::parse(document.text()), 0);
   } catch (const toml::parse_error& error) {
-    document.fail(position(error.source(), 0), "not valid TOML: " + printable(error.description()));
+    constexpr std::string_view kOpening = "Error while parsing ";
+    std::string_view description = error.description();
+    if (description.starts_with(kOpening)) description.remove_prefix(kOpening.size());
+    document.fail(position(error.source(), 0), "not valid TOML: " + printable(description, 300));
   }
 }
 
