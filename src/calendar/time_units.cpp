@@ -173,7 +173,7 @@ Instant counted(double value, std::int64_t unit_us) {
   const auto exact = static_cast<std::int64_t>(whole) * unit_us + std::llround((value - whole) * unit);
   const double last_place =
       (std::nextafter(std::fabs(value), std::numeric_limits<double>::infinity()) - std::fabs(value)) * unit;
-  if (last_place < 1) return exact;
+  if (value == whole || last_place < 1) return exact;
   for (const std::int64_t step : {kSecond, kMillisecond}) {
     const std::int64_t round = floor_div(exact + step / 2, step) * step;
     if (static_cast<double>(std::abs(round - exact)) <= last_place) return round;

@@ -6,8 +6,8 @@
 
 namespace windrow::calendar {
 
-/// Units of one time axis in one calendar. Counting is exact: values are rounded to the microsecond. Where the value
-/// itself is coarser than that (730000.1 days is known to 10 us), decode takes the whole second, else the whole
+/// Units of one time axis in one calendar. Counting is exact: values are rounded to the microsecond. Where a
+/// fraction is coarser than that (730000.1 days is known to 10 us), decode takes the whole second, else the whole
 /// millisecond, within one unit in the value's last place, if there is one: 01:00:00 never becomes 00:59:59.999996.
 /// In `utc` the 27 leap seconds of 1972-2016 count (days before 1972 count 86 400 s, told through `odd`); an instant in
 /// a leap second decodes to the last microsecond of its day. `tai` has none.

@@ -12,8 +12,8 @@ using namespace windrow;
 using namespace windrow::stats;
 
 TEST_CASE("the nine quantile types give the values of the public NumPy test suite") {
-  // NumPy, numpy/lib/tests/test_function_base.py, TestQuantile.test_quantile_method_4/5 example {15,20,35,40,50}, p =
-  // 0.4; the other two rows were computed with numpy.quantile (methods in the order of Hyndman & Fan 1996).
+  // First row: NumPy 1.24, numpy/lib/tests/test_function_base.py, TestPercentile.test_linear_interpolation. The others
+  // were computed with numpy.quantile 1.24 (its methods in the order of Hyndman & Fan 1996).
   struct Row {
     std::vector<double> sample;
     double p, expected[9];
