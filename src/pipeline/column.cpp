@@ -19,15 +19,16 @@ std::array<double, 12> shifts(const std::array<double, 12>& lapse, double height
 }
 
 WINDROW_CLONES
-void add_terms(const double* weighted, const std::uint8_t* kept, double area, const BinnedSum::Bins& bins,
+void add_terms(const double* weighted, const std::uint8_t* kept, double area, const double* m1, const double* m2,
                std::size_t count, TileStats& stats) {
   double* kept_high = stats.high[kKept].data();
   double* kept_low = stats.low[kKept].data();
   double* below_high = stats.high[kBelow].data();
   double* below_low = stats.low[kBelow].data();
   for (std::size_t t = 0; t < count; ++t) {
-    double high, low;
-    bins.split(weighted[t] * area, high, low);
+    const double term = weighted[t] * area;
+    const double high = (term + m1[t]) - m1[t];
+    const double low = ((term - high) + m2[t]) - m2[t];
     kept_high[t] += kept[t] != 0 ? high : 0.0;
     kept_low[t] += kept[t] != 0 ? low : 0.0;
     below_high[t] += kept[t] != 0 ? 0.0 : high;
@@ -126,7 +127,8 @@ void ColumnWorker::State::count_cell(std::size_t mesh_row, std::size_t cell, boo
                                      TileStats& tile) {
   const std::size_t t0 = piece.t0, count = piece.t1 - piece.t0;
   const double area = input.weights->all_surface[mesh_row] != 0 ? 0.0 : input.weights->map->row_area[mesh_row];
-  add_terms(row.weighted.data() + t0, row.kept.data() + t0, area, input.source_bins, count, tile);
+  add_terms(row.weighted.data() + t0, row.kept.data() + t0, area, input.bins.m1.data() + t0,
+            input.bins.m2.data() + t0, count, tile);
   const bool land_ok = input.weights->row_fraction[mesh_row] >= input.field.min_land;
   std::uint8_t flags = adjusted ? kAdjusted : 0;
   if (!land_ok) flags |= kTooLittleLand;
@@ -216,7 +218,7 @@ void ColumnWorker::State::write(const plan::Piece& piece, TileStats& tile, std::
                                 const linear_map::SourceBlock& run) {
   const Block block = block_of(input, block_index);
   const TileId id{input.products[piece.product].key, kDataVariable, chunk_index(input, piece, block_index)};
-  if (input.cover_varies) write_cover(piece, block, id, run);
+  if (input.products[piece.product].cover_varies) write_cover(piece, block, id, run);
   float* chunk = data.begin_chunk();
   const std::size_t plane = input.chunk.y * input.chunk.x, width = block.x1 - block.x0;
   for (std::size_t cell = 0; cell < block.cells(); ++cell) {

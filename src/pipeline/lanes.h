@@ -16,8 +16,9 @@ namespace windrow::pipeline {
 
 using linear_map::kLanes;
 
-/// Exact two-bin sums of kLanes steps.
+/// Exact two-bin sums of kLanes steps, each with its own rounding constants.
 struct LaneSums {
+  double m1[kLanes] = {}, m2[kLanes] = {};
   double high[kIntegrals][kLanes] = {};
   double low[kIntegrals][kLanes] = {};
 };
@@ -33,7 +34,6 @@ struct LaneOutcome {
 /// Keeps or drops each lane (cover, land), adds its integrals (value * weight * area, area in steradians; 0: the row is
 /// outside the balance), converts units, clamps to the range and rounds to float32.
 void finish_lanes(const linear_map::RowLanes& row, const FieldMath& field, double area, bool land_ok,
-                  const BinnedSum::Bins& source_bins, const BinnedSum::Bins& stored_bins, LaneSums& sums,
-                  LaneOutcome& out);
+                  LaneSums& sums, LaneOutcome& out);
 
 }  // namespace windrow::pipeline

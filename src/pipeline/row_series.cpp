@@ -58,8 +58,8 @@ std::string row_key(const StageInput& input, std::size_t row) {
   const bool land_ok = weights.row_fraction[row] >= input.field.min_land;
   add(&land_ok, sizeof land_ok);
   // Filled values come from the row's own nearest source cells.
-  if (!input.fill.empty() && (input.cover_varies || weights.row_cover[row] < input.field.min_cover)) {
-    add(&row, sizeof row);
+  for (std::size_t k = 0; !input.fill.empty() && k < FillCandidates::kPerRow; ++k) {
+    add(&input.fill.column[row * FillCandidates::kPerRow + k], sizeof(std::uint32_t));
   }
   return key;
 }

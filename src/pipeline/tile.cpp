@@ -14,6 +14,7 @@ struct TileTask {
   const linear_map::SourceBlock& source;
   Block block;
   std::size_t s0, s1;  ///< steps of the source block
+  std::size_t run_t0;  ///< the source block's first step on the run's axis
   float* out;          ///< data chunk
   float* cover;        ///< cover chunk or null
   TileStats& stats;
@@ -37,7 +38,7 @@ void handle_exceptions(TileTask& task, std::size_t row, std::size_t cell, std::s
         if (field.has_range) u = std::clamp(u, field.low, field.high);
         lanes.value[lane] = static_cast<float>(u);
         double high, low;
-        task.input.source_bins.split(x * task.input.weights->map->row_area[row], high, low);
+        task.input.bins.at(task.run_t0 + step0 + lane).split(x * task.input.weights->map->row_area[row], high, low);
         sums.high[kFilledIntegral][lane] += high;
         sums.low[kFilledIntegral][lane] += low;
         task.stats.flags[cell] |= kFilled;
@@ -57,6 +58,10 @@ void make_lane_block(TileTask& task, std::size_t lane_block) {
   std::uint32_t valid = 0;
   for (std::size_t s = first; s < last; ++s) valid |= 1U << (s - step0);
   LaneSums sums;
+  for (std::size_t s = first; s < last; ++s) {
+    sums.m1[s - step0] = input.bins.m1[task.run_t0 + s];
+    sums.m2[s - step0] = input.bins.m2[task.run_t0 + s];
+  }
   linear_map::RowLanes row_lanes;
   LaneOutcome lanes;
   for (std::size_t y = task.block.y0; y < task.block.y1; ++y) {
@@ -67,7 +72,7 @@ void make_lane_block(TileTask& task, std::size_t lane_block) {
       linear_map::apply_row(weights, row, task.source, lane_block, row_lanes);
       const bool land_ok = weights.row_fraction[row] >= input.field.min_land;
       const double area = weights.all_surface[row] != 0 ? 0.0 : weights.map->row_area[row];
-      finish_lanes(row_lanes, input.field, area, land_ok, input.source_bins, input.stored_bins, sums, lanes);
+      finish_lanes(row_lanes, input.field, area, land_ok, sums, lanes);
       if ((valid & ~lanes.kept) != 0 || ((lanes.low | lanes.high) & valid) != 0) {
         handle_exceptions(task, row, cell, step0, valid, land_ok, lanes, sums);
       }
@@ -107,8 +112,9 @@ void make_tile(const StageInput& input, const plan::Unit& unit, const linear_map
   TileStats stats;
   stats.resize(piece.t1 - piece.t0, block.cells());
   float* out = data.begin_chunk();
-  float* cover_out = input.cover_varies ? cover.begin_chunk() : nullptr;
-  TileTask task{input, source, block, piece.t0 - source_t0, piece.t1 - source_t0, out, cover_out, stats};
+  float* cover_out = input.products[piece.product].cover_varies ? cover.begin_chunk() : nullptr;
+  TileTask task{input, source, block, piece.t0 - source_t0, piece.t1 - source_t0, source_t0, out, cover_out,
+                stats};
   for (std::size_t b = task.s0 / kLanes; b * kLanes < task.s1; ++b) make_lane_block(task, b);
   mark_fixed_flags(input, block, stats);
   const std::size_t count = input.chunk.time * input.chunk.y * input.chunk.x;

@@ -64,6 +64,14 @@ struct AdjustInput {
 struct StageProduct {
   codec::Digest key;
   plan::ProductSpan span;
+  bool cover_varies = false;  ///< a second variable, cover, for every chunk
+};
+
+/// Rounding constants of the exact integrals, one pair a step of the run: they follow the step's largest value alone, so
+/// that appended months change nothing of earlier sums.
+struct StepBins {
+  std::vector<double> m1, m2;
+  [[nodiscard]] BinnedSum::Bins at(std::size_t step) const { return {m1[step], m2[step]}; }
 };
 
 struct StageInput {
@@ -72,10 +80,8 @@ struct StageInput {
   plan::Chunk chunk;
   FieldMath field;
   FillCandidates fill;
-  bool cover_varies = false;      ///< a second variable, cover, for every chunk
   int level = 1;                  ///< deflate level; 0: stored raw
-  BinnedSum::Bins source_bins;    ///< of integrals in source units
-  BinnedSum::Bins stored_bins;    ///< of integrals in output units
+  StepBins bins;
   const AdjustInput* adjust = nullptr;
   std::vector<StageProduct> products;
 };

@@ -40,7 +40,7 @@ enum Integral : std::size_t {
   kKept,    ///< double results of the map in cells that pass min_cover and min_land
   kBelow,   ///< double results in cells that do not
   kFilledIntegral,  ///< filled values, over the whole cell
-  kStored,  ///< stored float32 values of kept cells (regridding only, before unit conversion is undone: output units)
+  kStored,  ///< stored float32 values of kept cells, units converted back (regridding only)
   kIntegrals
 };
 
