@@ -41,29 +41,37 @@ Error output_error(const std::string& path, int code) {
   return Error(Failure::output, path, fmt::format("cannot be written: {}", reason(code)));
 }
 
+/// Reads until `out` is full or the file ends.
+std::size_t read_full(int file, std::span<std::byte> out, const std::string& path) {
+  std::size_t done = 0;
+  while (done < out.size()) {
+    const ssize_t got = ::read(file, out.data() + done, out.size() - done);
+    if (got < 0 && errno == EINTR) continue;
+    if (got < 0) throw Error(Failure::io, path, fmt::format("cannot be read: {}", reason(errno)));
+    if (got == 0) break;
+    done += static_cast<std::size_t>(got);
+  }
+  return done;
+}
+
+int open_to_read(const std::string& path) {
+  const int file = ::open(path.c_str(), O_RDONLY | O_CLOEXEC);
+  if (file >= 0) return file;
+  const int code = errno;
+  if (code == ENOENT || code == ENOTDIR) throw Error(Failure::missing, path, "no such file");
+  throw Error(Failure::io, path, fmt::format("cannot be read: {}", reason(code)));
+}
+
 template <typename Container>
 Container read_whole(const std::string& path) {
-  const Descriptor file(::open(path.c_str(), O_RDONLY | O_CLOEXEC));
-  if (file.get() < 0) {
-    const int code = errno;
-    if (code == ENOENT || code == ENOTDIR) throw Error(Failure::missing, path, "no such file");
-    throw Error(Failure::io, path, fmt::format("cannot be read: {}", reason(code)));
-  }
+  const Descriptor file(open_to_read(path));
   struct stat info {};
   if (::fstat(file.get(), &info) != 0 || S_ISDIR(info.st_mode)) {
     throw Error(Failure::io, path, "cannot be read: it is a folder");
   }
   Container out;
   out.resize(static_cast<std::size_t>(info.st_size));
-  std::size_t done = 0;
-  while (done < out.size()) {
-    const ssize_t got = ::read(file.get(), reinterpret_cast<char*>(out.data()) + done, out.size() - done);
-    if (got < 0 && errno == EINTR) continue;
-    if (got < 0) throw Error(Failure::io, path, fmt::format("cannot be read: {}", reason(errno)));
-    if (got == 0) break;
-    done += static_cast<std::size_t>(got);
-  }
-  out.resize(done);
+  out.resize(read_full(file.get(), std::as_writable_bytes(std::span(out.data(), out.size())), path));
   return out;
 }
 
@@ -85,6 +93,10 @@ bool is_directory(const std::string& path) {
   struct stat info {};
   return ::stat(path.c_str(), &info) == 0 && S_ISDIR(info.st_mode);
 }
+
+ByteStream::ByteStream(const std::string& path) : path_(path), file_(open_to_read(path)) {}
+ByteStream::~ByteStream() { ::close(file_); }
+std::size_t ByteStream::read(std::span<std::byte> out) { return read_full(file_, out, path_); }
 
 std::string read_text(const std::string& path) { return read_whole<std::string>(path); }
 std::vector<std::byte> read_bytes(const std::string& path) { return read_whole<std::vector<std::byte>>(path); }

@@ -22,6 +22,20 @@ bool is_directory(const std::string& path);
 std::string read_text(const std::string& path);
 std::vector<std::byte> read_bytes(const std::string& path);
 
+/// A file read from front to back in pieces. Error(missing) when absent, Error(io) otherwise.
+class ByteStream {
+ public:
+  explicit ByteStream(const std::string& path);
+  ~ByteStream();
+  ByteStream(const ByteStream&) = delete;
+  ByteStream& operator=(const ByteStream&) = delete;
+  std::size_t read(std::span<std::byte> out);  ///< bytes read; 0 at the end
+
+ private:
+  std::string path_;
+  int file_;
+};
+
 /// Creates the folder and its parents. Error(output) with the reason.
 void make_folder(const std::string& path);
 /// Unique temporary name beside `path` (same folder): `.NAME.PID.N.part`.
