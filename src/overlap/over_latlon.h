@@ -1,0 +1,11 @@
+// Overlaps of any mesh with a latitude-longitude source, by clipping where it cannot be avoided.
+#pragma once
+#include "pairings.h"
+#include "source_block.h"
+
+namespace windrow::overlap {
+
+/// Overlaps of target cells [first, last). Pure: neighbouring runs may be worked on at the same time.
+Rows over_latlon(const SourceBlock& source, const mesh::Mesh& target, std::size_t first, std::size_t last);
+
+}  // namespace windrow::overlap
