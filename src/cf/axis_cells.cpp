@@ -326,8 +326,9 @@ void rotate_at_gap(std::vector<Cell>& cells, double tolerance, Remarks& remarks,
 }
 
 /// Keeps centres within one turn of the usual ranges (0 .. 360, -180 .. 180).
-void shift_turns(std::vector<Cell>& cells) {
-  const double shift = cells.back().centre >= 360 ? -360 : cells.front().centre < -360 ? 360 : 0;
+void shift_turns(const AxisValues& values, std::vector<Cell>& cells) {
+  const bool beyond = values.bounds.empty() ? cells.back().centre >= 360 : cells.back().high > 360 + kEdgeTolerance;
+  const double shift = beyond ? -360 : cells.front().centre < -360 ? 360 : 0;
   for (Cell& cell : cells) {
     cell.centre += shift;
     cell.low += shift;
@@ -389,7 +390,7 @@ AxisCells longitude_cells(AxisValues values, Remarks& remarks) {
   drop_repeated(values, cells, tolerance, remarks);
   rotate_at_gap(cells, tolerance, remarks, values.name);
   if (values.bounds.empty()) refuse_gap(values, cells, tolerance);
-  shift_turns(cells);
+  shift_turns(values, cells);
   AxisCells result = finish(values, cells, tolerance);
   close_circle(values, result, tolerance, remarks);
   return result;

@@ -9,6 +9,13 @@
 
 namespace windrow::cf {
 
+namespace {
+
+/// Coordinates are read whole; a damaged header must not ask for all memory.
+constexpr std::size_t kMostValues = std::size_t{1} << 26;
+
+}  // namespace
+
 const nc::Var* Header::find(const std::string& name) const {
   for (const nc::Var& var : vars)
     if (var.name == name) return &var;
@@ -49,6 +56,8 @@ std::vector<double> coordinate_values(const nc::File& file, const nc::Var& varia
     throw Error(Failure::data, file.path(),
                 fmt::format("coordinate '{}' holds {} values, numbers were expected", variable.name,
                             nc::type_name(variable.type)));
+  if (file.size(variable) > kMostValues)
+    throw Error(Failure::data, file.path(), fmt::format("coordinate '{}' is too large for one", variable.name));
   std::vector<double> values = file.doubles(variable);
   const auto number = [&](const char* name, double otherwise) {
     const nc::Att* att = variable.find(name);

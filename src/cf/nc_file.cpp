@@ -185,7 +185,7 @@ std::vector<Var> File::variables() const {
   return vars;
 }
 
-std::vector<double> File::doubles(const Var& variable) const {
+std::size_t File::size(const Var& variable) const {
   const std::scoped_lock lock(library_mutex());
   std::size_t count = 1;
   for (const int dim : variable.dims) {
@@ -193,8 +193,13 @@ std::vector<double> File::doubles(const Var& variable) const {
     check(nc_inq_dimlen(id_, dim, &length), path_, "variable " + variable.name);
     count *= length;
   }
-  std::vector<double> values(count);
-  if (count > 0) check(nc_get_var_double(id_, variable.id, values.data()), path_, "variable " + variable.name);
+  return count;
+}
+
+std::vector<double> File::doubles(const Var& variable) const {
+  std::vector<double> values(size(variable));
+  const std::scoped_lock lock(library_mutex());
+  if (!values.empty()) check(nc_get_var_double(id_, variable.id, values.data()), path_, "variable " + variable.name);
   return values;
 }
 

@@ -68,7 +68,8 @@ class File {
 
   [[nodiscard]] std::vector<Dim> dimensions() const;
   [[nodiscard]] std::vector<Att> global_attributes() const;
-  [[nodiscard]] std::vector<Var> variables() const;  ///< of the root group, in file order
+  [[nodiscard]] std::vector<Var> variables() const;           ///< of the root group, in file order
+  [[nodiscard]] std::size_t size(const Var& variable) const;  ///< number of values
   /// All values of a numeric variable, converted to double by the library.
   [[nodiscard]] std::vector<double> doubles(const Var& variable) const;
   /// A hyperslab in the variable's own type and native byte order; `out` holds type_size * product(count) bytes.
