@@ -21,7 +21,8 @@ struct Site {
 
 /// How headings and units of a user's file map to windrow's names (job file [stations] columns, units).
 struct Mapping {
-  std::map<std::string, std::string> columns;  ///< windrow's name -> heading in the file ("longitude" -> "lon")
+  std::map<std::string, std::string> columns;  ///< windrow's name -> heading in the file ("longitude" -> "lon"); a file
+                                               ///< without that heading may still use windrow's name
   std::map<std::string, std::string> units;    ///< heading -> units, when the heading carries no [unit]
 };
 
@@ -35,14 +36,14 @@ struct MonthlyValue {
   double value = 0;
 };
 
-/// What is known of one variable at one station after quality rules. Exactly one of the three is filled, or daily and
-/// normals / monthly and normals together (normals win nothing when a series gives the season).
+/// What is known of one variable at one station after quality rules. A series (daily with the months made from it, or
+/// monthly), normals, or both (normals win nothing when a series gives the season).
 struct Record {
   Site site;
   DailySeries daily;                  ///< complete months only (WMO-No. 1203, 4.4)
-  std::vector<MonthlyValue> monthly;  ///< complete months: given, or made from daily
+  std::vector<MonthlyValue> monthly;  ///< complete months, ascending: given, or made from daily
   std::vector<double> normal;         ///< 12, NaN where missing; empty when there are none
-  int complete_years = 0;             ///< most limiting calendar month's number of complete months
+  int complete_years = 0;             ///< of the series: most limiting calendar month's number of complete months
 };
 
 /// Completeness rules of WMO-No. 1203 (2017), section 4.4 as summarised in the secondary source named in the tests.
@@ -51,6 +52,9 @@ enum class Kind { mean, sum };
 bool month_complete(const std::vector<bool>& present, Kind kind);
 /// Valid months needed for a normal over `years` years: 80 % (24 of 30).
 int months_needed(int years);
+/// Normals of first..last (years) from complete monthly values: 12 means over the years, NaN for a calendar month with
+/// less than months_needed of them; empty when no month has enough.
+std::vector<double> normals_of(const std::vector<MonthlyValue>& monthly, int first, int last);
 
 struct Options {
   std::vector<std::string> observed;  ///< station columns; two are averaged (both must be present)
@@ -67,10 +71,18 @@ struct Tables {
   std::vector<text::CsvTable> daily, monthly, normals;
 };
 
-/// Builds the records of one field. Duplicates (same station and date twice, two sites at one position, a site twice),
-/// impossible values, stations without enough complete years and sites without coordinates are left out and told through
-/// `notices` by name. Error(data) names file and line for what cannot be read at all: bad date, bad number, unknown
-/// column (with the near miss), empty table, unknown units.
+/// Builds the records of one field, in the order of the sites; empty when no station is left. A missing value is an empty
+/// cell, NA or NaN. Left out and told through `notices` by name (at most 5 of a kind in detail, then their number): a
+/// station and date twice with different values (the same value: one is kept, and it is said), a site twice with
+/// different coordinates, impossible values, sites without coordinates or with impossible ones, values of stations the
+/// sites table does not have. Told of every station: too few complete years for its series. Said, but used: two sites at
+/// one position, a site without elevation. A daily series with enough complete years goes before a monthly one.
+/// Units: of the heading's [bracket] or the mapping. Per month: divided by the month's true length against a rate (in
+/// normals: its mean length over normals_period, or over 400 Gregorian years); an amount (mm) against a rate is that of
+/// the day, or of the month. Elevations are metres unless units are given.
+/// Error(data) names file and line for what cannot be read at all: bad date, bad number, unknown column (with the near
+/// miss), empty table, unknown or missing units. A series table without any of the observed columns is passed over as long
+/// as another one has them.
 std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, const Options& options, Notices& notices);
 
 }  // namespace windrow::station

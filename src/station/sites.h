@@ -1,0 +1,15 @@
+// The sites table.
+#pragma once
+#include <vector>
+
+#include "windrow/station/station.h"
+
+namespace windrow::station {
+
+/// Sites with coordinates, each once; what is left out is told.
+std::vector<Site> read_sites(const text::CsvTable& table, const Mapping& mapping, Notices& notices);
+
+/// Says which of the sites used stand at one position or have no elevation.
+void tell_oddities(const std::vector<Record>& records, const std::string& file, Notices& notices);
+
+}  // namespace windrow::station
