@@ -1,5 +1,5 @@
-// Pairs of CF standard names: mass of water and its depth. Source: CF standard name table, from memory of its names;
-// only the first two are confirmed by the text of CF 1.13.
+// Pairs of CF standard names: mass of water and its depth. Source: CF standard name table. precipitation_flux and
+// lwe_precipitation_rate were checked against version 83 of the table; the other names are from memory.
 #include "water.h"
 
 #include <string_view>

@@ -17,7 +17,7 @@ std::vector<Calendar> all_calendars() {
        {"standard", "proleptic_gregorian", "julian", "noleap", "all_leap", "360_day", "utc", "tai"}) {
     result.push_back(Calendar::from_cf(name, "test"));
   }
-  // CF 1.13 example 4.6: the calendar of 126 kyr before present.
+  // CF 1.13 example 4.6 (month lengths from memory): the calendar of 126 kyr before present; the second with leap days.
   result.push_back(Calendar::custom({34, 31, 32, 30, 29, 27, 28, 28, 28, 32, 32, 34}, 0, 2));
   result.push_back(Calendar::custom({34, 31, 32, 30, 29, 27, 28, 28, 28, 32, 32, 34}, 3, 7));
   return result;
