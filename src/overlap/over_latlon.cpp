@@ -76,15 +76,18 @@ class CellOverlap {
     for (const std::uint32_t w : candidates_.wedges) {
       const Wedge& wedge = source_.wedge(w);
       bool clipped = false;
-      const Piece* in_wedge = cut(piece, wedge.east_of_west, half_wedge_, clipped);
-      if (in_wedge != nullptr) in_wedge = cut(*in_wedge, wedge.west_of_east, whole_wedge_, clipped);
+      const Piece* in_wedge = cut(piece, outline_, wedge.east_of_west, half_wedge_, clipped);
+      if (in_wedge != nullptr) in_wedge = cut(*in_wedge, outline_, wedge.west_of_east, whole_wedge_, clipped);
       if (in_wedge == nullptr) continue;
+      // A parallel can lie wholly inside a cell around a pole: only the outline of a part within a wedge tells sides.
+      if (clipped) outline_of(*in_wedge, wedge_outline_);
+      const Outline& outline = clipped ? wedge_outline_ : outline_;
       for (std::uint32_t b = candidates_.first_band; b < candidates_.last_band; ++b) {
         const Band& band = source_.band(b);
         bool banded = clipped;
         const Piece* part = in_wedge;
-        if (band.has_south) part = cut(*part, band.north_of_south, half_band_, banded);
-        if (part != nullptr && band.has_north) part = cut(*part, band.south_of_north, whole_band_, banded);
+        if (band.has_south) part = cut(*part, outline, band.north_of_south, half_band_, banded);
+        if (part != nullptr && band.has_north) part = cut(*part, outline, band.south_of_north, whole_band_, banded);
         if (part == nullptr) continue;
         if (!banded) {  // certified inside this one source cell: anything else found is rounding
           found_.resize(before);
@@ -100,10 +103,11 @@ class CellOverlap {
     return candidates_.covered;
   }
 
-  // The part of `piece`, a part of the outlined piece, in the half-space; itself when nothing is cut, null when nothing
-  // is left.
-  const Piece* cut(const Piece& piece, const sphere::Circle& half_space, Piece& out, bool& clipped) const {
-    const Side side = side_of(half_space, outline_);
+  // The part of `piece`, which lies within what is outlined, in the half-space; itself when nothing is cut, null when
+  // nothing is left.
+  static const Piece* cut(const Piece& piece, const Outline& outline, const sphere::Circle& half_space, Piece& out,
+                          bool& clipped) {
+    const Side side = side_of(half_space, outline);
     if (side == Side::inside) return &piece;
     if (side == Side::outside) return nullptr;
     clip(piece, half_space, out);
@@ -125,7 +129,7 @@ class CellOverlap {
   const mesh::Mesh& target_;
   bool hinted_ = false;
   std::uint32_t hint_wedge_ = 0, hint_band_ = 0;
-  Outline outline_;
+  Outline outline_, wedge_outline_;
   Candidates candidates_;
   sphere::Polygon polygon_;
   Piece half_wedge_, whole_wedge_, half_band_, whole_band_;
