@@ -212,14 +212,14 @@ bool Builder::follows(const Edge& e, const std::vector<Vec3>& now, const std::ve
 }
 
 void Builder::split_edges() {
-  std::vector<std::uint64_t> doubtful;
-  for (std::uint64_t k = 0; k < lines_.edges(); ++k) {
-    if (!surely_one_circle(k)) doubtful.push_back(k);
-  }
+  std::vector<std::uint8_t> sure(lines_.edges());
+#pragma omp parallel for schedule(static)
+  for (std::size_t k = 0; k < sure.size(); ++k) sure[k] = surely_one_circle(k) ? 1 : 0;
   off_middle_ = {};
   std::vector<Edge> open;
-  open.reserve(doubtful.size());
-  for (const std::uint64_t k : doubtful) open.push_back(edge(k));
+  for (std::size_t k = 0; k < sure.size(); ++k) {
+    if (!sure[k]) open.push_back(edge(k));
+  }
   for (int level = 0; !open.empty(); ++level) {
     // Level L has 2^L parts and as many middles: 2^(L+1) - 1 inner points.
     const std::size_t inner = (std::size_t{2} << level) - 1;
