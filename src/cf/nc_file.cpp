@@ -1,6 +1,8 @@
 // The library mutex and the thin RAII over netCDF-C. Nothing here knows CF.
 #include "nc_file.h"
 
+#include <hdf5.h>
+
 #include <utility>
 
 namespace windrow::cf {
@@ -11,6 +13,12 @@ std::mutex& library_mutex() {
 }
 
 namespace nc {
+
+LibraryLock::LibraryLock() : lock_(library_mutex()) {
+  // A thread-safe HDF5 keeps its error printing per thread; netCDF turns it off in one thread only.
+  thread_local const bool silenced = H5Eset_auto2(H5E_DEFAULT, nullptr, nullptr) >= 0;
+  static_cast<void>(silenced);
+}
 
 namespace {
 
@@ -102,14 +110,14 @@ std::string type_name(nc_type type) {
 }
 
 File File::open(const std::string& path) {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   int id = -1;
   check(nc_open(path.c_str(), NC_NOWRITE, &id), path, "");
   return {id, path};
 }
 
 File File::create(const std::string& path, int mode) {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   int id = -1;
   check(nc_create(path.c_str(), mode, &id), path, "", Failure::output);
   return {id, path};
@@ -125,18 +133,18 @@ File& File::operator=(File&& other) noexcept {
 
 File::~File() {
   if (id_ < 0) return;
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   nc_close(id_);
 }
 
 void File::close(Failure kind) {
   if (id_ < 0) return;
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   check(nc_close(std::exchange(id_, -1)), path_, "closing", kind);
 }
 
 std::vector<Dim> File::dimensions() const {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   int count = 0;
   check(nc_inq_dimids(id_, &count, nullptr, 0), path_, "dimensions");
   std::vector<int> ids(count);
@@ -159,12 +167,12 @@ std::vector<Dim> File::dimensions() const {
 }
 
 std::vector<Att> File::global_attributes() const {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   return read_attributes(id_, NC_GLOBAL, path_);
 }
 
 std::vector<Var> File::variables() const {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   int count = 0;
   check(nc_inq_varids(id_, &count, nullptr), path_, "variables");
   std::vector<int> ids(count);
@@ -186,7 +194,7 @@ std::vector<Var> File::variables() const {
 }
 
 std::size_t File::size(const Var& variable) const {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   std::size_t count = 1;
   for (const int dim : variable.dims) {
     std::size_t length = 0;
@@ -198,19 +206,19 @@ std::size_t File::size(const Var& variable) const {
 
 std::vector<double> File::doubles(const Var& variable) const {
   std::vector<double> values(size(variable));
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   if (!values.empty()) check(nc_get_var_double(id_, variable.id, values.data()), path_, "variable " + variable.name);
   return values;
 }
 
 void File::raw(const Var& variable, std::span<const std::size_t> start, std::span<const std::size_t> count,
                void* out) const {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   check(nc_get_vara(id_, variable.id, start.data(), count.data(), out), path_, "variable " + variable.name);
 }
 
 std::vector<std::size_t> File::chunking(const Var& variable) const {
-  const std::scoped_lock lock(library_mutex());
+  const LibraryLock lock;
   std::vector<std::size_t> lengths(variable.dims.size());
   int storage = NC_CONTIGUOUS;
   if (lengths.empty()) return {};

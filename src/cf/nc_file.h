@@ -2,7 +2,7 @@
 // Knows the library only: what names and attributes mean (CF) is decided elsewhere in this module.
 // (Named so because a private "netcdf.h" would hide the library's own.)
 // Every method takes library_mutex() itself; never hold it while calling one. For bare nc_* or H5* calls on id(), take
-// it with `std::scoped_lock lock(library_mutex())` in a scope of their own.
+// a LibraryLock in a scope of their own.
 #pragma once
 #include <netcdf.h>
 
@@ -15,6 +15,15 @@
 #include "windrow/cf/dataset.h"
 
 namespace windrow::cf::nc {
+
+/// Holds library_mutex() and keeps HDF5 from printing in this thread. For bare library calls in this module.
+class LibraryLock {
+ public:
+  LibraryLock();
+
+ private:
+  std::scoped_lock<std::mutex> lock_;
+};
 
 /// Throws Error(kind): `place: what: <the library's text>` unless status is NC_NOERR. Needs no lock.
 void check(int status, const std::string& place, const std::string& what, Failure kind = Failure::io);

@@ -16,6 +16,7 @@
 namespace windrow::cf {
 
 std::mutex& library_mutex();
+std::string library_version();  ///< "netCDF 4.9.0, HDF5 1.10.8"
 
 struct Attribute {
   std::string name;
@@ -24,7 +25,7 @@ struct Attribute {
 };
 
 /// One time step. Bounds come from the file; without bounds they are inferred (daily: the day that contains the time;
-/// monthly: the calendar month; else midpoints) and reported.
+/// monthly: the calendar month; else midpoints; a single step of neither kind has begin = end) and reported.
 struct TimeStep {
   calendar::Instant time = 0, begin = 0, end = 0;
 };
@@ -60,8 +61,8 @@ class RunVariable {
   [[nodiscard]] virtual const std::vector<FileSpan>& files() const = 0;
   [[nodiscard]] virtual bool double_precision() const = 0;  ///< values carry more than float32 does
   /// Values of `cells` (mesh cell numbers, ascending) for steps [t0, t1): out[(t - t0) * cells.size() + i], unpacked,
-  /// in the file's units, NaN where missing. Peak extra memory is bounded by `max_bytes` (reads in blocks).
-  /// Error(io) names file and variable.
+  /// in the file's units, NaN where missing. Reads in blocks of at most 64 MiB (or one chunk, where that is larger), in
+  /// the file's chunk order, each chunk once. Error(io) names file and variable.
   virtual void read(std::size_t t0, std::size_t t1, const std::vector<std::uint32_t>& cells, double* out) const = 0;
   virtual void read(std::size_t t0, std::size_t t1, const std::vector<std::uint32_t>& cells, float* out) const = 0;
 };
