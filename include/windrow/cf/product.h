@@ -36,7 +36,7 @@ struct SmallVariable {
   std::vector<std::string> dimensions;  ///< empty: scalar
   std::vector<NamedValue> attributes;
   std::vector<double> values;
-  bool deflate = false;                 ///< large 2-D ones: library's shuffle + deflate, level 1
+  bool deflate = false;  ///< large ones: shuffle + deflate level 1, packed here (the library's is slow)
 };
 
 /// A variable whose chunks are written directly. Float32, shuffle + deflate (level > 0) or raw (level 0), no fill.
@@ -45,7 +45,7 @@ struct ChunkedVariable {
   std::vector<std::string> dimensions;  ///< first is time
   std::vector<std::size_t> chunk;       ///< one a dimension
   int level = 1;
-  float fill_value = 9.96920997e36F;    ///< written as _FillValue
+  float fill_value = 9.96920997e36F;  ///< written as _FillValue
   std::vector<NamedValue> attributes;
 };
 
@@ -56,7 +56,8 @@ struct ProductFile {
   std::vector<NamedValue> global;
 };
 
-/// Bytes of chunk `index` (row-major over the chunk grid) of chunked variable `variable`, as they go to disk.
+/// Bytes of chunk `index` (row-major over the chunk grid) of chunked variable `variable`, as they go to disk: edge
+/// chunks padded to full size, little-endian, shuffled, then deflated (level 0: plain). Called in ascending order.
 using ChunkSource = std::function<std::span<const std::byte>(std::size_t variable, std::size_t index)>;
 
 /// Writes the whole file at `path` (a temporary name of the caller's): defines with netCDF, closes, fills chunks in
@@ -76,7 +77,8 @@ struct ProductReader {
   [[nodiscard]] virtual std::vector<Dimension> dimensions(const std::string& variable) const = 0;
   /// Raw values (no unpacking, fill as stored) of hyperslab; converted to double.
   [[nodiscard]] virtual std::vector<double> values(const std::string& variable) const = 0;
-  virtual void read_steps(const std::string& variable, std::size_t t0, std::size_t t1, std::vector<float>& out) const = 0;
+  virtual void read_steps(const std::string& variable, std::size_t t0, std::size_t t1,
+                          std::vector<float>& out) const = 0;
 };
 std::unique_ptr<ProductReader> open_product(const std::string& path);
 
