@@ -42,8 +42,10 @@ TEST_CASE("a file cut at any byte is refused as truncated, with both lengths onc
     sample.mode = mode;
     const std::string whole = text_of_file(sample.write());
     std::size_t with_lengths = 0;
-    for (std::size_t n = 4; n < whole.size(); ++n) {
-      const std::string text = open_error(Failure::data, write_file("cut.nc", whole.substr(0, n)));
+    const std::string path = write_file("cut.nc", whole);
+    for (std::size_t n = whole.size() - 1; n >= 4; --n) {
+      std::filesystem::resize_file(path, n);
+      const std::string text = open_error(Failure::data, path);
       const std::string start = "cut.nc: the file is truncated: " + std::to_string(n) + " bytes, the header ";
       REQUIRE(text.starts_with(start));
       with_lengths += text == start + "asks for " + std::to_string(whole.size());
@@ -77,18 +79,21 @@ TEST_CASE("a truncated netCDF-4 file is refused with both lengths") {
 
 TEST_CASE("a classic file with any one byte changed is read or refused, never more") {
   const std::string whole = text_of_file(small().write());
+  const std::string path = write_file("flip.nc", whole);
+  std::fstream file(path, std::ios::binary | std::ios::in | std::ios::out);
+  const auto put = [&](std::size_t n, char byte) { file.seekp(std::streamoff(n)).put(byte).flush(); };
   std::size_t refused = 0;
   for (std::size_t n = 0; n < whole.size() - 4 * 4 * 9; ++n) {
-    for (const char flip : {char(0xFF), char(0x01), char(0x80)}) {
-      std::string bytes = whole;
-      bytes[n] = char(bytes[n] ^ flip);
+    for (const char flip : {char(0xFF), char(0x01)}) {
+      put(n, char(whole[n] ^ flip));
       try {
         Notices notices;
-        read_all(*cf::open_run({write_file("flip.nc", bytes)}, "v", notices));
+        read_all(*cf::open_run({path}, "v", notices));
       } catch (const Error&) {
         ++refused;
       }
     }
+    put(n, whole[n]);
   }
   CHECK(refused > 100);
 }
