@@ -60,7 +60,9 @@ void RateMeter::add(const std::string& phase, double done_bytes, double seconds)
 std::string progress_text(const engine::ProgressState& state, double bytes_per_second, int columns) {
   std::string out = state.phase;
   const auto part = [&](const std::string& text) { out += (out.empty() ? "" : ", ") + text; };
-  if (state.products_total > 0) part(fmt::format("{} of {} products", state.products_done, state.products_total));
+  if (state.products_total > 0)
+    part(fmt::format("{} of {} product{}", state.products_done, state.products_total,
+                     state.products_total == 1 ? "" : "s"));
   if (state.total_bytes > 0) {
     const double share = std::clamp(state.done_bytes / state.total_bytes, 0.0, 1.0);
     part(fmt::format("{} of {} ({:.0f} %)", size_text(state.done_bytes), size_text(state.total_bytes),

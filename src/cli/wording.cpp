@@ -63,7 +63,7 @@ std::string vouched_text(const engine::Vouched& vouched) {
                        check.text.empty() ? "" : ", " + check.text);
   if (!vouched.value_digest.empty())
     out += fmt::format("{:<12} {}: digest of the values {}\n", "", vouched.product, vouched.value_digest);
-  return out + fmt::format("{:<12} {}\n", vouched.holds() ? "holds" : "DOES NOT HOLD", vouched.product);
+  return out;
 }
 
 std::string notice_text(const Notice& notice) {

@@ -12,7 +12,7 @@ std::string verdict_word(engine::Verdict verdict);  ///< "passed", "FAILED", "ne
 /// Products that were made or failed, a line each with the reason; the last line counts made, current and failed and
 /// names the failed. `last_line_only` for --quiet.
 std::string summary_text(const engine::Summary& summary, bool last_line_only);
-/// A line a check, then the digest of the values and whether the product holds.
+/// A line a check, then the digest of the values.
 std::string vouched_text(const engine::Vouched& vouched);
 /// `note: place: text`
 std::string notice_text(const Notice& notice);
