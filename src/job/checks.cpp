@@ -5,7 +5,6 @@
 #include <algorithm>
 #include <map>
 
-#include "product_name.h"
 #include "windrow/text/words.h"
 
 namespace windrow::job {

@@ -1,4 +1,5 @@
-#include "product_name.h"
+// The name pattern of products, filled in except for {year}.
+#include "windrow/job/spec.h"
 
 namespace windrow::job {
 

@@ -124,6 +124,9 @@ JobSpec parse_job(const std::string& path, const std::string& text, const std::v
 /// The commented job file that `windrow new` prints (kinds: "grid"). Parses with parse_job once its paths exist.
 std::string template_text(const std::string& kind);
 
+/// The file name of a field's product of one run, from the pattern of [output] name; {year} is left in.
+std::string product_name(const JobSpec& job, const FieldSpec& field, const RunSpec& run);
+
 /// Every setting with its value, defaults included, one "key = value" a line, in job-file order. Result-changing keys
 /// only when `result_only`; used for the ledger and the staleness key.
 std::vector<std::pair<std::string, std::string>> settings(const JobSpec& job, bool result_only);
