@@ -45,11 +45,14 @@ int run(const cli::Arguments& arguments) {
     line = std::make_unique<cli::ProgressLine>(tell, os::monotonic_seconds, *columns);
   os::watch_signals();
 
+  // Never throws: a log that cannot be written must not hide what the run itself has to say.
   const auto finish = [&](int status, const std::string& text) {
     if (line) line->clear();
-    if (!log) return;
+    if (!log) return status;
     log->event({status == cli::kSuccess ? "end" : "failed", fmt::format("exit status {}{}", status, text)});
-    if (!log->complete()) throw Error(Failure::output, arguments.log_json, "the log could not be written in full");
+    if (log->complete()) return status;
+    tell(fmt::format("windrow: {}: the log could not be written in full\n", arguments.log_json));
+    return status == cli::kSuccess ? cli::kCannotCreate : status;
   };
   try {
     const engine::Summary summary = engine::run(
@@ -61,14 +64,13 @@ int run(const cli::Arguments& arguments) {
         [&](const engine::Event& event) {
           if (log) log->event(event);
         });
-    const int status = summary.failure ? cli::exit_status(*summary.failure) : cli::kSuccess;
-    finish(status, "");
+    const int status = finish(summary.failure ? cli::exit_status(*summary.failure) : cli::kSuccess, "");
     if (!arguments.quiet)
       for (const Notice& notice : summary.notices) tell(cli::notice_text(notice) + "\n");
     print(arguments.json ? cli::summary_json(summary) + "\n" : cli::summary_text(summary, arguments.quiet));
     return status;
   } catch (const Error& error) {
-    finish(cli::exit_status(error.kind()), std::string(", ") + error.what());
+    (void)finish(cli::exit_status(error.kind()), std::string(", ") + error.what());
     throw;
   }
 }
