@@ -59,7 +59,7 @@ class LatLonMesh final : public Mesh {
   std::string describe() const override {
     const auto& lon = edges_.lon_deg;
     const auto& lat = edges_.lat_deg;
-    const bool global = lon.back() - lon.front() == 360 && lat.front() == -90 && lat.back() == 90;
+    const bool global = all_round(edges_) && lat.front() == -90 && lat.back() == 90;
     const std::string extent = global ? "global"
                                       : fmt::format("{:.6g} to {:.6g} degrees east, {:.6g} to {:.6g} degrees north",
                                                     lon.front(), lon.back(), lat.front(), lat.back());

@@ -24,12 +24,22 @@ constexpr int kMostLevels = 10;
 constexpr double kLongestChord = 0.5;    // arcs stay well under 90 degrees
 constexpr std::size_t kBatch = 1 << 15;  // points a projection call
 
+constexpr double kNoise = 1e-10;  // rad, 0.6 mm: most that a projection may be off between neighbouring points
+
+// Inner points of the level before: the ends of its parts and their middles.
+std::vector<Vec3> every_second(const std::vector<Vec3>& inner) {
+  std::vector<Vec3> out;
+  for (std::size_t k = 1; k < inner.size(); k += 2) out.push_back(inner[k]);
+  return out;
+}
+
 // An edge in mesh coordinates and on the globe.
 struct Edge {
   std::uint64_t number;
   double x0, y0, x1, y1;
   Vec3 from, to;
-  double cell_area;  // of the smaller neighbour, roughly
+  double cell_area;                                         // of the smaller neighbour, roughly
+  double missed = std::numeric_limits<double>::infinity();  // at the level before
 };
 
 class Builder {
@@ -58,7 +68,7 @@ class Builder {
   void bend_edges();
   [[nodiscard]] bool surely_one_circle(std::uint64_t number) const;
   void split_edges();
-  [[nodiscard]] bool follows(const Edge& e, const std::vector<Vec3>& now, const std::vector<Vec3>& finer) const;
+  [[nodiscard]] static double missed(const Edge& e, const std::vector<Vec3>& now, const std::vector<Vec3>& finer);
   [[noreturn]] void refuse(double x, double y) const {
     throw Error(Failure::data, place_,
                 fmt::format("the mesh reaches beyond its projection: x = {}, y = {} has no place on the globe", x, y));
@@ -192,7 +202,7 @@ bool Builder::surely_one_circle(std::uint64_t number) const {
 }
 
 // `now`: inner points of the edge at one level; `finer`: at the next. The area between them, part by part.
-bool Builder::follows(const Edge& e, const std::vector<Vec3>& now, const std::vector<Vec3>& finer) const {
+double Builder::missed(const Edge& e, const std::vector<Vec3>& now, const std::vector<Vec3>& finer) {
   const auto point = [&](const std::vector<Vec3>& inner, std::size_t k) -> const Vec3& {
     return k == 0 ? e.from : k == inner.size() + 1 ? e.to : inner[k - 1];
   };
@@ -201,14 +211,14 @@ bool Builder::follows(const Edge& e, const std::vector<Vec3>& now, const std::ve
     const sphere::Arc arc = arc_through(a, b, tilt_through(a, m, b));
     return sphere::lens_area(arc.circle, arc.dtheta);
   };
-  double missed = 0;
+  double sum = 0;
   for (std::size_t k = 0; k + 2 <= now.size() + 1; k += 2) {
     const Vec3 &a = point(now, k), &m = point(now, k + 1), &b = point(now, k + 2);
-    if (!(norm(b - a) < kLongestChord)) return false;
+    if (!(norm(b - a) < kLongestChord)) return std::numeric_limits<double>::infinity();
     const double halves = lens(a, point(finer, 2 * k + 1), m) + lens(m, point(finer, 2 * k + 3), b);
-    missed += std::abs(lens(a, m, b) - halves - sphere::triangle_area(a, m, b));
+    sum += std::abs(lens(a, m, b) - halves - sphere::triangle_area(a, m, b));
   }
-  return missed <= kLensTolerance * e.cell_area;
+  return sum;
 }
 
 void Builder::split_edges() {
@@ -235,10 +245,18 @@ void Builder::split_edges() {
       const std::vector<Vec3> finer(first, first + static_cast<std::ptrdiff_t>(next));
       std::vector<Vec3> now;
       for (std::size_t m = 1; m < next; m += 2) now.push_back(finer[m]);
-      if (follows(open[k], now, finer)) {
-        if (level > 0) lines_.split.emplace(open[k].number, std::move(now));
+      const Edge& e = open[k];
+      const double area = missed(e, now, finer);
+      // A smooth line misses ever less; where halving does not help, only the projection's own rounding is left, which
+      // on cells of some metres exceeds the criterion. The level before is as good then.
+      const bool noise = area > 0.5 * e.missed && area <= kNoise * norm(e.to - e.from);
+      if (area <= kLensTolerance * e.cell_area) {
+        if (level > 0) lines_.split.emplace(e.number, std::move(now));
+      } else if (noise) {
+        if (level > 1) lines_.split.emplace(e.number, every_second(now));
       } else {
-        still.push_back(open[k]);
+        still.push_back(e);
+        still.back().missed = area;
       }
     }
     open = std::move(still);

@@ -25,7 +25,7 @@ class OuterRim {
  public:
   explicit OuterRim(const mesh::Mesh& mesh) : ny_(mesh.shape().first), nx_(mesh.shape().second) {
     if (const mesh::LatLonEdges* edges = mesh.latlon()) {
-      west_east_ = edges->lon_deg.back() - edges->lon_deg.front() != 360;
+      west_east_ = !mesh::all_round(*edges);
       south_ = edges->lat_deg.front() != -90;
       north_ = edges->lat_deg.back() != 90;
     }

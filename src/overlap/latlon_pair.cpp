@@ -24,10 +24,11 @@ LatLonPair::LatLonPair(const mesh::Mesh& source, const mesh::Mesh& target)
     : target_(target),
       columns_(target.latlon()->lon_deg.size() - 1),
       source_columns_(source.latlon()->lon_deg.size() - 1),
-      lon_(longitudes(source.latlon()->lon_deg, target.latlon()->lon_deg)),
+      lon_(longitudes(*source.latlon(), target.latlon()->lon_deg)),
       lat_(latitudes(on_sphere(source), on_sphere(target))) {}
 
-LatLonPair::Axis LatLonPair::longitudes(const std::vector<double>& source, const std::vector<double>& target) {
+LatLonPair::Axis LatLonPair::longitudes(const mesh::LatLonEdges& grid, const std::vector<double>& target) {
+  const std::vector<double>& source = grid.lon_deg;
   Axis axis;
   for (std::size_t i = 0; i + 1 < target.size(); ++i) {
     const double west = target[i];
@@ -54,7 +55,7 @@ LatLonPair::Axis LatLonPair::longitudes(const std::vector<double>& source, const
       }
     }
     std::sort(parts.begin(), parts.end(), [](const Part& a, const Part& b) { return a.source < b.source; });
-    bool covered = source.back() - source.front() == 360;
+    bool covered = mesh::all_round(grid);
     for (long turn = first_turn; turn <= last_turn && !covered; ++turn) {
       const double shift = 360.0 * static_cast<double>(turn);
       covered = west >= source.front() + shift && east <= source.back() + shift;

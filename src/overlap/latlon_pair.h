@@ -20,7 +20,7 @@ class LatLonPair {
     std::vector<std::vector<Part>> parts;  // one list a target interval, sources ascending
     std::vector<std::uint8_t> covered;
   };
-  static Axis longitudes(const std::vector<double>& source, const std::vector<double>& target);
+  static Axis longitudes(const mesh::LatLonEdges& source, const std::vector<double>& target);
   static Axis latitudes(const std::vector<double>& source, const std::vector<double>& target);
 
   const mesh::Mesh& target_;

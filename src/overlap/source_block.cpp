@@ -33,6 +33,7 @@ Side side_of(const sphere::Circle& half_space, const Outline& outline) {
 SourceBlock::SourceBlock(const mesh::Mesh& source) {
   const mesh::LatLonEdges& edges = *source.latlon();
   const double e2 = source.earth().e2;
+  all_round_ = mesh::all_round(edges);
   columns_ = static_cast<std::uint32_t>(edges.lon_deg.size() - 1);
   wedge_edges_deg_.push_back(edges.lon_deg.front());
   for (std::uint32_t i = 0; i < columns_; ++i) {
@@ -46,7 +47,8 @@ SourceBlock::SourceBlock(const mesh::Mesh& source) {
       wedge_edges_deg_.push_back(end);
     }
   }
-  all_round_ = edges.lon_deg.back() - edges.lon_deg.front() == 360;
+  // On the seam both ends are the same meridian, to the bit.
+  if (all_round_) wedges_.back().west_of_east = wedges_.front().east_of_west.reversed();
   for (const double phi : edges.lat_deg) band_edges_deg_.push_back(mesh::authalic_latitude_deg(phi, e2));
   for (std::size_t j = 0; j + 1 < band_edges_deg_.size(); ++j) {
     const double south = band_edges_deg_[j];

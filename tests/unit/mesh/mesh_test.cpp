@@ -35,7 +35,7 @@ TEST_CASE("cells of a global grid add up to 4 pi, in closed form and as polygons
   std::vector<mesh::MeshPtr> grids = {regular(0, -90, 5, 5, 36, 72),        regular(-180, -90, 2.5, 2.5, 72, 144),
                                       regular(-1.25, -90, 2.5, 2, 90, 144), regular(0, -90, 360, 180, 1, 1),
                                       regular(-180, -90, 120, 180, 1, 3),   regular(10, -90, 180, 45, 4, 2),
-                                      regular(0, -90, 3.6, 180, 1, 100)};
+                                      regular(0, -90, 3.6, 180, 1, 100),    regular(0.1, -90, 1.2, 1.5, 120, 300)};
   for (const std::size_t n : {32, 40, 64, 96}) {
     grids.push_back(
         mesh::make_latlon({even_edges(-0.9, 180.0 / static_cast<double>(n), 2 * n), mesh::gaussian_edges_deg(n)},
@@ -140,6 +140,30 @@ TEST_CASE("splitting an edge makes area errors fall; unsplit 5 km edges are alre
     if (size == 5000) CHECK(arcs == 4);
     if (size == 1000000) CHECK(arcs > 4);
   }
+}
+
+TEST_CASE("cells of some metres are taken, though their edges show the projection's rounding") {
+  for (const double size : {10.0, 50.0, 200.0}) {
+    const auto m = azimuthal_mesh({97, -61}, 6, 7, size, 100000, -40000);
+    double worst = 0;
+    for (std::size_t k = 0; k < m->size(); ++k) {
+      worst = std::max(worst, std::abs(m->area(k) * kRadius_m * kRadius_m / (size * size) - 1));
+    }
+    CAPTURE(size);
+    // Longitudes of 97 degrees come in steps of 1.6 nm on the ground, a few of which move each corner.
+    CHECK(worst < 4 * 5e-9 / size + 1e-11);
+  }
+}
+
+TEST_CASE("an edge that is no line on the globe is refused") {
+  const auto torn = [](std::vector<double>& x, std::vector<double>& y) {
+    for (std::size_t k = 0; k < x.size(); ++k) {
+      y[k] = (x[k] < 2.3 ? 40 : 40.5) + y[k];
+    }
+  };
+  CHECK_THROWS_WITH_AS(
+      mesh::make_projected(even_edges(0, 1, 5), even_edges(0, 1, 4), torn, torn, Earth::sphere(kRadius_m), "torn", "m"),
+      "m: the cell edge from x = 2, y = 0 to x = 3, y = 0 is no smooth line on the globe", Error);
 }
 
 TEST_CASE("neighbours share the very same arcs") {

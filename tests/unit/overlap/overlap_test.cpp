@@ -76,6 +76,13 @@ TEST_CASE("latitude-longitude grids: every row and column adds up, across turns 
   CHECK(r.map.pairings() == one_degree->size());
   r = checked(*one_degree, *regular(7.3, -90, 360, 180, 1, 1));
   CHECK(r.map.pairings() == one_degree->size());
+  // (start + 360) - start is not 360 in floating point here: still a grid that closes on itself.
+  const auto crooked = regular(0.1, -90, 1.2, 1.5, 120, 300);
+  r = checked(*crooked, *one_degree);
+  CHECK(r.closure.rows_checked == one_degree->size());
+  CHECK(r.closure.columns_checked == crooked->size());
+  r = checked(*one_degree, *crooked);
+  CHECK(r.closure.columns_checked == one_degree->size());
   r = checked(*regular(-30, 30, 2, 2, 10, 20), *regular(350, 35, 0.3, 0.25, 20, 30));  // regional, source west of 0
   CHECK(r.closure.rows_checked == 30 * 20);
 }
