@@ -33,7 +33,7 @@ class ModelMonths {
   /// Position of a month in the run's span of years, for tables of months.
   [[nodiscard]] bool inside(int year) const { return year >= first_year_ && year <= last_year_; }
   [[nodiscard]] std::size_t index(int year, int month) const {
-    return static_cast<std::size_t>((year - first_year_) * 12 + month);
+    return static_cast<std::size_t>(year - first_year_) * 12 + static_cast<std::size_t>(month);
   }
   [[nodiscard]] std::size_t size() const { return mean_.size(); }
 

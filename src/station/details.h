@@ -1,7 +1,5 @@
 // Notices of one kind in detail up to a few, then only their number: a bad file must not bury the rest.
 #pragma once
-#include <fmt/format.h>
-
 #include <string>
 
 #include "windrow/base/notices.h"
@@ -17,7 +15,7 @@ class Details {
   }
   /// Call once at the end.
   void finish(const std::string& place) {
-    if (count_ > kDetailed) notices_.add(place, fmt::format("{} more {}", count_ - kDetailed, rest_));
+    if (count_ > kDetailed) notices_.add(place, std::to_string(count_ - kDetailed) + " more " + rest_);
   }
 
  private:

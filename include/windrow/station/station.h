@@ -60,8 +60,8 @@ struct Options {
   std::vector<std::string> observed;  ///< station columns; two are averaged (both must be present)
   std::string units;                  ///< output units of the field
   Kind kind = Kind::mean;
-  bool per_day_rate = false;          ///< field is a rate (mm/day); monthly sums are divided by the month's length
-  double low = -1e30, high = 1e30;    ///< impossible outside, in output units
+  bool per_day_rate = false;        ///< field is a rate (mm/day); monthly sums are divided by the month's length
+  double low = -1e30, high = 1e30;  ///< impossible outside, in output units
   int min_years = 10;
   int normals_first = 0, normals_last = 0;  ///< normals_period, 0 when not given
 };
@@ -71,18 +71,18 @@ struct Tables {
   std::vector<text::CsvTable> daily, monthly, normals;
 };
 
-/// Builds the records of one field, in the order of the sites; empty when no station is left. A missing value is an empty
-/// cell, NA or NaN. Left out and told through `notices` by name (at most 5 of a kind in detail, then their number): a
-/// station and date twice with different values (the same value: one is kept, and it is said), a site twice with
-/// different coordinates, impossible values, sites without coordinates or with impossible ones, values of stations the
-/// sites table does not have. Told of every station: too few complete years for its series. Said, but used: two sites at
-/// one position, a site without elevation. A daily series with enough complete years goes before a monthly one.
-/// Units: of the heading's [bracket] or the mapping. Per month: divided by the month's true length against a rate (in
-/// normals: its mean length over normals_period, or over 400 Gregorian years); an amount (mm) against a rate is that of
-/// the day, or of the month. Elevations are metres unless units are given.
-/// Error(data) names file and line for what cannot be read at all: bad date, bad number, unknown column (with the near
-/// miss), empty table, unknown or missing units. A series table without any of the observed columns is passed over as long
-/// as another one has them.
-std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, const Options& options, Notices& notices);
+/// Builds the records of one field, in the order of the sites; empty when no station is left. A missing value is an
+/// empty cell, NA or NaN. Left out and told through `notices` by name (at most 5 of a kind in detail, then their
+/// number): a station and date twice with different values (the same value: one is kept, and it is said), a site twice
+/// with different coordinates, impossible values, sites without coordinates or with impossible ones, values of stations
+/// the sites table does not have. Told of every station: too few complete years for its series. Said, but used: two
+/// sites at one position, a site without elevation. A daily series with enough complete years goes before a monthly
+/// one. Units: of the heading's [bracket] or the mapping. Per month: divided by the month's true length against a rate
+/// (in normals: its mean length over normals_period, or over 400 Gregorian years); an amount (mm) against a rate is
+/// that of the day, or of the month. Elevations are metres unless units are given. Error(data) names file and line for
+/// what cannot be read at all: bad date, bad number, unknown column (with the near miss), empty table, unknown or
+/// missing units. A series table without any of the observed columns is passed over as long as another one has them.
+std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, const Options& options,
+                                 Notices& notices);
 
 }  // namespace windrow::station
