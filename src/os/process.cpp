@@ -54,6 +54,13 @@ std::int64_t memory_limit() {
   return limit;
 }
 
+std::int64_t current_memory() {
+  std::ifstream file("/proc/self/statm");
+  std::int64_t total = 0, resident = 0;
+  file >> total >> resident;
+  return resident * ::sysconf(_SC_PAGE_SIZE);
+}
+
 std::int64_t peak_memory() {
   struct rusage usage {};
   ::getrusage(RUSAGE_SELF, &usage);

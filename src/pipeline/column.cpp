@@ -37,7 +37,7 @@ void add_terms(const double* weighted, const std::uint8_t* kept, double area, co
 }
 
 /// out[i] = sum over the row's pairings of share * values[column * width + i].
-void carry(const linear_map::LinearMap& map, std::size_t row, const std::vector<double>& values, std::size_t width,
+void carry(const linear_map::LinearMap& map, std::size_t row, std::span<const double> values, std::size_t width,
            std::vector<double>& out) {
   out.assign(width, 0.0);
   for (auto k = map.row_start[row]; k < map.row_start[row + 1]; ++k) {
@@ -104,20 +104,20 @@ void ColumnWorker::State::prepare_row(std::size_t mesh_row, const linear_map::So
 bool ColumnWorker::State::correct_cell(std::size_t mesh_row) {
   const std::size_t seasons = adjust.seasons();
   adjust::CellTarget target;
-  target.fade_level = adjust.level.fade[mesh_row];
+  target.fade_level = adjust.level->fade[mesh_row];
   if (adjust.missing_beyond) {
     if (target.fade_level <= 0) return false;
     target.fade_level = 1;
   }
-  carry(adjust.level.map, mesh_row, adjust.station_level, seasons, level);
+  carry(adjust.level->map, mesh_row, adjust.station_level, seasons, level);
   target.level = level;
   target.mean_correction_level = adjust.mean_correction_level;
   if (adjust.setup.method == adjust::Method::quantile_mapping) {
-    carry(adjust.shape.map, mesh_row, adjust.station_shape, seasons * static_cast<std::size_t>(adjust.setup.quantiles),
+    carry(adjust.shape->map, mesh_row, adjust.station_shape, seasons * static_cast<std::size_t>(adjust.setup.quantiles),
           shape);
     target.shape = shape;
     target.mean_correction_shape = adjust.mean_correction_shape;
-    target.fade_shape = adjust.shape.fade[mesh_row];
+    target.fade_shape = adjust.shape->fade[mesh_row];
   }
   adjust::make_correction(adjust.setup, climate, target, correction);
   return true;
@@ -126,14 +126,13 @@ bool ColumnWorker::State::correct_cell(std::size_t mesh_row) {
 void ColumnWorker::State::count_cell(std::size_t mesh_row, std::size_t cell, bool adjusted, const plan::Piece& piece,
                                      TileStats& tile) {
   const std::size_t t0 = piece.t0, count = piece.t1 - piece.t0;
-  const double area = input.weights->all_surface[mesh_row] != 0 ? 0.0 : input.weights->map->row_area[mesh_row];
-  add_terms(row.weighted.data() + t0, row.kept.data() + t0, area, input.bins.m1.data() + t0,
+  add_terms(row.weighted.data() + t0, row.kept.data() + t0, balance_factor(input, mesh_row), input.bins.m1.data() + t0,
             input.bins.m2.data() + t0, count, tile);
   const bool land_ok = input.weights->row_fraction[mesh_row] >= input.field.min_land;
   std::uint8_t flags = adjusted ? kAdjusted : 0;
   if (!land_ok) flags |= kTooLittleLand;
   if (input.weights->all_surface[mesh_row] != 0) flags |= kAllSurface;
-  if (adjusted && adjust.level.fade[mesh_row] <= 0) flags |= kBeyondReach;
+  if (adjusted && adjust.level->fade[mesh_row] <= 0) flags |= kBeyondReach;
   const bool ranked = adjusted && !ranks.node.empty();
   const auto nodes = static_cast<std::uint16_t>(adjust.setup.quantiles - 2);
   for (std::size_t t = t0; t < t0 + count; ++t) {

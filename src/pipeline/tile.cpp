@@ -38,7 +38,7 @@ void handle_exceptions(TileTask& task, std::size_t row, std::size_t cell, std::s
         if (field.has_range) u = std::clamp(u, field.low, field.high);
         lanes.value[lane] = static_cast<float>(u);
         double high, low;
-        task.input.bins.at(task.run_t0 + step0 + lane).split(x * task.input.weights->map->row_area[row], high, low);
+        task.input.bins.at(task.run_t0 + step0 + lane).split(x * balance_factor(task.input, row), high, low);
         sums.high[kFilledIntegral][lane] += high;
         sums.low[kFilledIntegral][lane] += low;
         task.stats.flags[cell] |= kFilled;
@@ -71,8 +71,7 @@ void make_lane_block(TileTask& task, std::size_t lane_block) {
     for (std::size_t x = task.block.x0; x < task.block.x1; ++x, ++row, ++at, ++cell) {
       linear_map::apply_row(weights, row, task.source, lane_block, row_lanes);
       const bool land_ok = weights.row_fraction[row] >= input.field.min_land;
-      const double area = weights.all_surface[row] != 0 ? 0.0 : weights.map->row_area[row];
-      finish_lanes(row_lanes, input.field, area, land_ok, sums, lanes);
+      finish_lanes(row_lanes, input.field, balance_factor(input, row), land_ok, sums, lanes);
       if ((valid & ~lanes.kept) != 0 || ((lanes.low | lanes.high) & valid) != 0) {
         handle_exceptions(task, row, cell, step0, valid, land_ok, lanes, sums);
       }

@@ -50,6 +50,12 @@ void ChunkEncoder::append(const TileId& id, const TileStats* stats) {
   }
 }
 
+double balance_factor(const StageInput& input, std::size_t row) {
+  if (input.weights->all_surface[row] != 0) return 0.0;
+  const auto& map = *input.weights->map;
+  return map.quantity == linear_map::Quantity::mean ? map.row_area[row] : 1.0;
+}
+
 void round_bits(float* values, std::size_t count, int bits, float missing) {
   const int drop = 23 - bits;
   const std::uint32_t half = (1U << drop) >> 1, mask = ~((1U << drop) - 1U);

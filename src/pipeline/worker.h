@@ -39,6 +39,10 @@ class ChunkEncoder {
   std::vector<std::byte> shuffled_, packed_;
 };
 
+/// What a row's value * weight is multiplied with in integrals: its area (mean) or 1 (total); 0 for rows outside the
+/// balance, which carry an all-surface value.
+double balance_factor(const StageInput& input, std::size_t row);
+
 /// Keeps `bits` explicit mantissa bits, rounding to nearest even (CF 8.4 "bitround").
 void round_bits(float* values, std::size_t count, int bits, float missing);
 

@@ -10,6 +10,8 @@
 
 namespace windrow::codec {
 
+std::string library_version();  ///< "ISA-L 2.30.0, libdeflate 1.14, zstd 1.5.4, xxHash 0.8.1"
+
 /// HDF5 shuffle filter: bytes regrouped by significance. out.size() == in.size(), a multiple of `width`.
 void shuffle(std::span<const std::byte> in, std::size_t width, std::span<std::byte> out);
 void unshuffle(std::span<const std::byte> in, std::size_t width, std::span<std::byte> out);

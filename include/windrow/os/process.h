@@ -9,6 +9,7 @@ namespace windrow::os {
 
 int usable_cpus();                  ///< affinity respected
 std::int64_t memory_limit();        ///< bytes: the lower of the cgroup's limit and the machine's memory
+std::int64_t current_memory();      ///< bytes resident now
 std::int64_t peak_memory();         ///< bytes, of this process (VmHWM)
 std::string host_name();
 std::string utc_now();              ///< 2026-01-31T12:00:00Z

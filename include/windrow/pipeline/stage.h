@@ -4,6 +4,7 @@
 #include <array>
 #include <cstdint>
 #include <functional>
+#include <span>
 #include <vector>
 
 #include "windrow/adjust/transfer.h"
@@ -47,11 +48,12 @@ struct AdjustInput {
   adjust::Setup setup;
   adjust::Steps anchor_steps, run_steps;
   bool run_is_anchor = true;
-  reach::ReachMap level, shape;              ///< shape.map has no rows without shapes
-  std::vector<double> station_level;         ///< [level station * seasons]: targets (or corrections)
-  std::vector<double> station_shape;         ///< [shape station * seasons * quantiles]
-  std::vector<double> mean_correction_level; ///< [seasons], for cells beyond reach
-  std::vector<double> mean_correction_shape; ///< [seasons * quantiles]
+  const reach::ReachMap* level = nullptr;
+  const reach::ReachMap* shape = nullptr;        ///< quantile-mapping only
+  std::span<const double> station_level;         ///< [level station * seasons]: targets (or corrections)
+  std::span<const double> station_shape;         ///< [shape station * seasons * quantiles]
+  std::span<const double> mean_correction_level; ///< [seasons], for cells beyond reach
+  std::span<const double> mean_correction_shape; ///< [seasons * quantiles]
   bool missing_beyond = false;               ///< cells beyond reach become missing
   bool terrain = false;
   std::array<double, 12> lapse{};            ///< output units per metre

@@ -1,0 +1,227 @@
+// `windrow run`: stages in job order, one field of one run at a time.
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <mutex>
+
+#include "make_deps.h"
+#include "stage_setup.h"
+#include "windrow/os/process.h"
+
+namespace windrow::engine {
+namespace {
+
+/// Adds up bytes from all workers and hands them on, one call at a time.
+class Progress {
+ public:
+  explicit Progress(const ProgressSink& sink) : sink_(sink) {}
+  void total(double bytes, std::size_t products) {
+    state_.total_bytes = bytes;
+    state_.products_total = products;
+  }
+  void phase(const std::string& name) {
+    const std::lock_guard lock(mutex_);
+    state_.phase = name;
+    if (sink_) sink_(state_);
+  }
+  void bytes(std::int64_t count) {
+    const std::lock_guard lock(mutex_);
+    state_.done_bytes += static_cast<double>(count);
+    if (sink_) sink_(state_);
+  }
+  void product() {
+    const std::lock_guard lock(mutex_);
+    ++state_.products_done;
+    if (sink_) sink_(state_);
+  }
+
+ private:
+  const ProgressSink& sink_;
+  std::mutex mutex_;
+  ProgressState state_;
+};
+
+double product_bytes(const Session& session, const Product& product) {
+  const auto cells = static_cast<double>(session.job.mesh.x.edges().size() - 1) *
+                     static_cast<double>(session.job.mesh.y.edges().size() - 1);
+  return cells * static_cast<double>(product.span.t1 - product.span.t0) * sizeof(float);
+}
+
+struct StageJob {
+  std::size_t field, run;
+  std::vector<Product> products;
+};
+
+class Runner {
+ public:
+  Runner(Session& session, const ProgressSink& progress, const EventSink& events)
+      : session_(session), progress_(progress), events_(events) {}
+
+  Summary run();
+
+ private:
+  void collect();
+  void check_space();
+  void make(StageJob& stage);
+  void make_unguarded(StageJob& stage);
+  void fail(const StageJob& stage, const Error& error);
+  void event(const std::string& kind, const std::string& text) {
+    const std::lock_guard lock(events_mutex_);
+    if (events_) events_({kind, text});
+  }
+  [[nodiscard]] std::size_t index_of(const std::string& path) const;
+
+  Session& session_;
+  Progress progress_;
+  const EventSink& events_;
+  std::mutex events_mutex_;
+  SharedFits fits_;
+  std::vector<StageJob> stages_;
+  Notices notices_;
+  Summary summary_;
+};
+
+std::size_t Runner::index_of(const std::string& path) const {
+  std::size_t i = 0;
+  while (summary_.products[i].path != path) ++i;
+  return i;
+}
+
+/// Lists all products of all fields and runs; a field whose inputs cannot be read fails without stopping the others.
+void Runner::collect() {
+  for (std::size_t field = 0; field < session_.job.fields.size(); ++field) {
+    for (std::size_t run = 0; run < session_.job.runs.size(); ++run) {
+      StageJob stage{field, run, {}};
+      try {
+        stage.products = session_.products(field, run);
+      } catch (const Error& error) {
+        if (error.kind() == Failure::interrupted) throw;
+        const auto name = fmt::format("{} of {}", session_.job.fields[field].name, session_.job.runs[run].name);
+        summary_.products.push_back({name, State::failed, error.what()});
+        if (!summary_.failure) summary_.failure = error.kind();
+        continue;
+      }
+      for (const auto& product : stage.products) {
+        const bool current = product.stale.empty();
+        summary_.products.push_back({product.path, current ? State::current : State::failed,
+                                     current ? "up to date" : "not reached"});
+      }
+      stages_.push_back(std::move(stage));
+    }
+  }
+}
+
+/// Refuses what cannot fit at all: a deflated product is never below a twentieth of its values, and spool and product
+/// stand side by side.
+void Runner::check_space() {
+  double bytes = 0;
+  std::size_t wanted = 0;
+  for (const auto& stage : stages_) {
+    for (const auto& product : stage.products) {
+      if (product.stale.empty()) continue;
+      bytes += product_bytes(session_, product);
+      ++wanted;
+    }
+  }
+  progress_.total(bytes, wanted);
+  if (wanted == 0) return;
+  os::make_folder(session_.job.output.directory);
+  os::sweep_temporaries(session_.job.output.directory);
+  constexpr double kLeastShare = 0.05;
+  const auto free = static_cast<double>(os::free_bytes(session_.job.output.directory));
+  if (bytes * kLeastShare * 2 > free) {
+    throw Error(Failure::output, session_.job.output.directory,
+                fmt::format("too little space: {:.1f} MB are free, the products hold {:.1f} MB before compression",
+                            free / 1e6, bytes / 1e6));
+  }
+}
+
+void Runner::fail(const StageJob& stage, const Error& error) {
+  if (!summary_.failure) summary_.failure = error.kind();
+  for (const auto& product : stage.products) {
+    auto& status = summary_.products[index_of(product.path)];
+    if (status.state == State::failed) status.reason = error.what();
+  }
+}
+
+void Runner::make(StageJob& stage) {
+  try {
+    make_unguarded(stage);
+  } catch (const Error& error) {
+    if (error.kind() == Failure::interrupted) throw;
+    event("failed", error.what());
+    fail(stage, error);
+  }
+}
+
+void Runner::make_unguarded(StageJob& stage) {
+  const auto& job = session_.job;
+  const std::string name = fmt::format("{}-{}-{}", job.fields[stage.field].name, job.runs[stage.run].name,
+                                       job.mesh.name);
+  progress_.phase(fmt::format("{} of {}", job.fields[stage.field].name, job.runs[stage.run].name));
+  const auto setup = set_up(session_, fits_, stage.field, stage.run, stage.products);
+  auto& context = *setup->context;
+  for (const auto& notice : context.notices) notices_.add(notice.place, notice.text);
+  pipeline::Spool spool(fmt::format("{}/{}.spool", job.workspace, name));
+  pipeline::StageHooks hooks;
+  hooks.progress = [this](std::int64_t bytes) { progress_.bytes(bytes); };
+  hooks.stop = os::stop_requested;
+  hooks.finish = [&](std::size_t index) {
+    assemble(context, index, spool);
+    const auto& product = context.products[index];
+    {
+      const std::lock_guard lock(events_mutex_);
+      auto& status = summary_.products[index_of(product.path)];
+      status = {product.path, State::made, product.stale};
+      summary_.output_bytes += product_bytes(session_, product);
+    }
+    progress_.product();
+    event("made", fmt::format("{} ({})", product.path, product.stale));
+  };
+  const RunReader run(*context.source.variable);
+  std::unique_ptr<RunReader> anchor;
+  if (setup->anchor != nullptr) anchor = std::make_unique<RunReader>(*setup->anchor->variable);
+  pipeline::run_stage(context.input, setup->stage, run, anchor.get(), spool, hooks);
+  spool.remove();
+}
+
+Summary Runner::run() {
+  const double start = os::monotonic_seconds();
+  collect();
+  const bool wanted = std::any_of(stages_.begin(), stages_.end(), [](const StageJob& stage) {
+    return std::any_of(stage.products.begin(), stage.products.end(), [](const Product& p) { return !p.stale.empty(); });
+  });
+  if (!session_.options.make_deps.empty()) {
+    std::vector<Product> all;
+    for (const auto& stage : stages_) all.insert(all.end(), stage.products.begin(), stage.products.end());
+    write_make_deps(session_.options.make_deps, all, session_.job.path);
+  }
+  if (wanted) {
+    os::make_folder(session_.job.workspace);
+    const os::Lease lease(session_.job.workspace, session_.options.wait_s);
+    session_.digests().save();
+    check_space();
+    for (auto& stage : stages_) {
+      const bool any = std::any_of(stage.products.begin(), stage.products.end(),
+                                   [](const Product& p) { return !p.stale.empty(); });
+      if (!any) continue;
+      lease.confirm();
+      make(stage);
+    }
+    session_.digests().save();
+  }
+  summary_.notices = notices_.list();
+  summary_.seconds = os::monotonic_seconds() - start;
+  summary_.peak_memory = os::peak_memory();
+  return summary_;
+}
+
+}  // namespace
+
+Summary run(const std::string& job_file, const Options& options, const ProgressSink& progress,
+            const EventSink& events) {
+  Session session(job_file, options);
+  return Runner(session, progress, events).run();
+}
+
+}  // namespace windrow::engine
