@@ -114,6 +114,8 @@ void Describer::add_positions() {
 
 void Describer::add_grid_mapping() {
   std::vector<NamedValue> attributes;
+  const std::string& mapping = target_.crs.grid_mapping.name;
+  if (!mapping.empty()) attributes.push_back({"grid_mapping_name", mapping});
   for (const auto& [name, value] : target_.crs.grid_mapping.attributes) {
     std::visit([&, &key = name](const auto& given) { attributes.push_back({key, given}); }, value);
   }
