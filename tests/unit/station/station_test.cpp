@@ -5,6 +5,7 @@
 
 #include <cmath>
 #include <fstream>
+#include <random>
 #include <sstream>
 
 #include "windrow/base/error.h"
@@ -380,6 +381,47 @@ TEST_CASE("a table without the field is passed over when another one has it") {
   const auto with = table(daily_rows("station,date,tas [degC]", "a1", 2001, 2001, "7"), "tas.csv");
   Notices notices;
   CHECK(read({table(kSites, "s.csv"), {without, with}, {}, {}}, tas(), notices).size() == 1);
+}
+
+TEST_CASE("damaged tables are read or refused with an error, never worse") {
+  const std::string good[] = {kSites, daily_rows("station,date,tas [degC]", "a1", 2001, 2001, "7").substr(0, 700),
+                              monthly_rows("station,year,month,tas [degC]", {"a1", "b2"}, 2001, 2001, "6"),
+                              "station,month,tas [degC]\na1,1,5\na1,2,NaN\n"};
+  std::mt19937_64 random(77);
+  const std::string bytes = "0123456789-.,;\"\n\r\t ean[]\xff";
+  int refused = 0;
+  constexpr int kRounds = 3000;
+  for (int round = 0; round < kRounds; ++round) {
+    std::string bad[] = {good[0], good[1], good[2], good[3]};
+    for (int change = 0; change < 3; ++change) {
+      std::string& text = bad[random() % 4];
+      const auto at = static_cast<std::ptrdiff_t>(random() % text.size());
+      const char byte = bytes[random() % bytes.size()];
+      switch (random() % 3) {
+        case 0:
+          text[static_cast<std::size_t>(at)] = byte;
+          break;
+        case 1:
+          text.insert(text.begin() + at, byte);
+          break;
+        default:
+          text.erase(text.begin() + at);
+      }
+    }
+    Notices notices;
+    Options options = tas();
+    options.min_years = static_cast<int>(random() % 2);
+    try {
+      const Tables tables{table(bad[0], "s"), {table(bad[1], "d")}, {table(bad[2], "m")}, {table(bad[3], "n")}};
+      for (const Record& r : read_records(tables, {}, options, notices)) CHECK(!r.site.id.empty());
+    } catch (const Error& e) {
+      ++refused;
+      CHECK(e.kind() == Failure::data);
+      CHECK(std::string(e.what()).size() > 10);
+    }
+  }
+  CHECK(refused > kRounds / 10);
+  CHECK(refused < kRounds);
 }
 
 }  // namespace windrow::station
