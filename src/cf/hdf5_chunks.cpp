@@ -4,12 +4,11 @@
 #include <hdf5.h>
 
 #include <cerrno>
-#include <mutex>
 #include <utility>
 
+#include "nc_file.h"
 #include "product_define.h"
 #include "windrow/base/error.h"
-#include "windrow/cf/dataset.h"
 
 namespace windrow::cf {
 namespace {
@@ -32,13 +31,15 @@ class Id {
   herr_t (*close_)(hid_t);
 };
 
-/// The mutex, a clean errno, and HDF5's own error printing off (a setting of the calling thread).
+/// A file that a full disk kept from being closed stays on HDF5's list, and its clean-up at exit crashes on it
+/// (1.10.8): the exit status would be lost. Every file is closed explicitly, so that clean-up is not needed. This must
+/// precede every other call of the library, hence a static object.
+[[maybe_unused]] const bool kNoCleanUpAtExit = H5dont_atexit() >= 0;
+
+/// The library to itself, and a clean errno.
 struct Call {
-  std::scoped_lock<std::mutex> lock{library_mutex()};
-  Call() {
-    H5Eset_auto2(H5E_DEFAULT, nullptr, nullptr);
-    errno = 0;
-  }
+  nc::LibraryLock lock;
+  Call() { errno = 0; }
 };
 
 }  // namespace

