@@ -67,7 +67,11 @@ std::vector<Att> read_attributes(int file, int variable, const std::string& path
 
 void check(int status, const std::string& place, const std::string& what, Failure kind) {
   if (status == NC_NOERR) return;
-  throw Error(kind, place, (what.empty() ? std::string() : what + ": ") + nc_strerror(status));
+  const std::string named = what.empty() ? std::string() : what + ": ";
+  // Of a chunk that does not unpack or an object that is not where the file says, HDF5 tells no more.
+  if (kind == Failure::io && (status == NC_EHDFERR || status == NC_EFILTER))
+    throw Error(Failure::data, place, named + "the file is damaged: HDF5 cannot read it");
+  throw Error(kind, place, named + nc_strerror(status));
 }
 
 const Att* Var::find(const std::string& wanted) const {

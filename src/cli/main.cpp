@@ -67,6 +67,7 @@ int run(const cli::Arguments& arguments) {
     const int status = finish(summary.failure ? cli::exit_status(*summary.failure) : cli::kSuccess, "");
     if (!arguments.quiet)
       for (const Notice& notice : summary.notices) tell(cli::notice_text(notice) + "\n");
+    tell(cli::failures_text(summary));
     print(arguments.json ? cli::summary_json(summary) + "\n" : cli::summary_text(summary, arguments.quiet));
     return status;
   } catch (const Error& error) {

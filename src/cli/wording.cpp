@@ -39,7 +39,7 @@ std::string summary_text(const engine::Summary& summary, bool last_line_only) {
     current += product.state == engine::State::current;
     failed += product.state == engine::State::failed;
     if (product.state == engine::State::failed) failed_names += (failed_names.empty() ? "" : ", ") + product.path;
-    if (product.state == engine::State::current || last_line_only) continue;
+    if (product.state != engine::State::made || last_line_only) continue;
     out += fmt::format("{:<7} {}{}\n", state_word(product.state), product.path,
                        product.reason.empty() ? "" : ": " + product.reason);
   }
@@ -53,6 +53,16 @@ std::string summary_text(const engine::Summary& summary, bool last_line_only) {
   if (summary.peak_memory > 0) took += ", peak memory " + text::bytes_text(summary.peak_memory);
   out += fmt::format("{} made, {} current, {} failed{} [{}]\n", made, current, failed,
                      failed_names.empty() ? "" : ": " + failed_names, took);
+  return out;
+}
+
+std::string failures_text(const engine::Summary& summary) {
+  std::string out;
+  for (const engine::ProductStatus& product : summary.products) {
+    if (product.state != engine::State::failed || product.reason.empty()) continue;
+    const std::string line = fmt::format("windrow: {}\n", product.reason);
+    if (out.find(line) == std::string::npos) out += line;
+  }
   return out;
 }
 

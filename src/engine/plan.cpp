@@ -82,7 +82,8 @@ Report plan(const std::string& job_file, const Options& options) {
       add_products(products, session.folder(), fact, totals);
       const bool wanted = std::any_of(products.begin(), products.end(), [](const Product& p) { return p.span.wanted; });
       if (!wanted) continue;
-      const auto setup = set_up(session, fits, field, run, products);
+      Notices notices;
+      const auto setup = set_up(session, fits, field, run, products, notices);
       add_stage(session, *setup, fact, totals);
       for (const auto& notice : setup->context->notices) {
         fact.add({"note", fmt::format("{}: {}", told_path(notice.place, session.folder()), notice.text)});

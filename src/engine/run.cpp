@@ -63,7 +63,7 @@ class Runner {
   void collect();
   void check_space();
   void make(StageJob& stage);
-  void make_unguarded(StageJob& stage);
+  void make_unguarded(StageJob& stage, Notices& notices);
   void fail(const StageJob& stage, const Error& error);
   void event(const std::string& kind, const std::string& text) {
     const std::lock_guard lock(events_mutex_);
@@ -145,23 +145,26 @@ void Runner::fail(const StageJob& stage, const Error& error) {
 }
 
 void Runner::make(StageJob& stage) {
+  Notices notices;
   try {
-    make_unguarded(stage);
+    make_unguarded(stage, notices);
   } catch (const Error& error) {
     if (error.kind() == Failure::interrupted) throw;
     event("failed", error.what());
     fail(stage, error);
   }
+  // Of a stage that failed they may say why.
+  for (const auto& notice : session_.notices(stage.field, stage.run)) notices_.add(notice.place, notice.text);
+  for (const auto& notice : notices.list()) notices_.add(notice.place, notice.text);
 }
 
-void Runner::make_unguarded(StageJob& stage) {
+void Runner::make_unguarded(StageJob& stage, Notices& notices) {
   const auto& job = session_.job;
   const std::string name = fmt::format("{}-{}-{}", job.fields[stage.field].name, job.runs[stage.run].name,
                                        job.mesh.name);
   progress_.phase(fmt::format("{} of {}", job.fields[stage.field].name, job.runs[stage.run].name));
-  const auto setup = set_up(session_, fits_, stage.field, stage.run, stage.products);
+  const auto setup = set_up(session_, fits_, stage.field, stage.run, stage.products, notices);
   auto& context = *setup->context;
-  for (const auto& notice : context.notices) notices_.add(notice.place, notice.text);
   pipeline::Spool spool(fmt::format("{}/{}.spool", job.workspace, name));
   pipeline::StageHooks hooks;
   hooks.progress = [this](std::int64_t bytes) { progress_.bytes(bytes); };
@@ -197,6 +200,7 @@ Summary Runner::run() {
     write_make_deps(session_.options.make_deps, all, session_.job.path);
   }
   if (wanted) {
+    (void)session_.target();  // without its mesh nothing of the job can be made
     os::make_folder(session_.job.workspace);
     const os::Lease lease(session_.job.workspace, session_.options.wait_s);
     session_.digests().save();

@@ -59,7 +59,7 @@ Session::Session(const std::string& job_file, const Options& given)
 void Session::write_nothing() { maps_ = std::make_unique<MapStore>(""); }
 
 const Target& Session::target() {
-  if (!target_) target_ = make_target(job.mesh, job.path);
+  if (!target_) target_ = make_target(job.mesh);
   return *target_;
 }
 

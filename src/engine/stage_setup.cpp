@@ -148,7 +148,7 @@ pipeline::FieldMath field_math(const job::JobSpec& job, const job::FieldSpec& fi
 void set_adjustment(Session& session, SharedFits& fits, std::size_t field, std::size_t run, const Source& source,
                     StageSetup& out, Notices& notices) {
   const std::size_t anchor = session.anchor_of(run);
-  const auto& fit = fits.fit(session, field, anchor);
+  const auto& fit = fits.fit(session, field, anchor, notices);
   for (const auto& notice : fit.notices) notices.add(notice.place, notice.text);
   out.calibration = &fit.calibration;
   auto& adjust = out.adjust;
@@ -239,7 +239,7 @@ std::string output_units(Session& session, std::size_t field, std::size_t run) {
   return asked.empty() ? units::repaired(session.variable(field, run).info().units, nullptr) : asked;
 }
 
-const SharedFits::Fit& SharedFits::fit(Session& session, std::size_t field, std::size_t anchor) {
+const SharedFits::Fit& SharedFits::fit(Session& session, std::size_t field, std::size_t anchor, Notices& told) {
   if (const auto found = fits_.find({field, anchor}); found != fits_.end()) return found->second;
   Notices notices;
   const Source& source = session.source(field, anchor);
@@ -251,9 +251,14 @@ const SharedFits::Fit& SharedFits::fit(Session& session, std::size_t field, std:
     height = read_height(session.height_path(field, anchor), session.target().earth, notices);
   }
   Fit made;
-  made.calibration = calibrate({session.job, session.job.fields[field], session.target(), source,
-                                session.job.runs[anchor].name, conversion, units, height ? &*height : nullptr},
-                               notices);
+  try {
+    made.calibration = calibrate({session.job, session.job.fields[field], session.target(), source,
+                                  session.job.runs[anchor].name, conversion, units, height ? &*height : nullptr},
+                                 notices);
+  } catch (const Error&) {
+    for (const auto& notice : notices.list()) told.add(notice.place, notice.text);
+    throw;
+  }
   made.notices = session.notices(field, anchor);
   for (const auto& notice : notices.list()) made.notices.push_back(notice);
   return fits_[{field, anchor}] = std::move(made);
@@ -269,13 +274,12 @@ const std::vector<double>& SharedFits::cell_height(Session& session) {
 }
 
 std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size_t field, std::size_t run,
-                                   std::vector<Product> products) {
+                                   std::vector<Product> products, Notices& notices) {
   const std::string place = place_of(session, field, run);
   const auto& spec = session.job.fields[field];
   auto out = std::make_unique<StageSetup>();
   const Source& source = session.source(field, run);
   const Target& target = session.target();
-  Notices notices;
   const std::string units = output_units(session, field, run);
   const auto& info = source.variable->info();
   const auto conversion = units::conversion(info.units, units, info.standard_name, place);
@@ -288,7 +292,7 @@ std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size
   out->fraction = land_fraction(session, run, source, notices);
   out->weights = linear_map::make_weights(*out->map, out->fraction);
   out->context = std::make_unique<StageContext>(StageContext{session, field, run, source, target, out->weights,
-                                                             out->scan, nullptr, nullptr, {}, conversion, units,
+                                                             out->scan, nullptr, {}, conversion, units,
                                                              std::move(products), {}});
   auto& context = *out->context;
   auto& input = context.input;

@@ -20,7 +20,8 @@ class SharedFits {
     Calibration calibration;
     std::vector<Notice> notices;
   };
-  const Fit& fit(Session& session, std::size_t field, std::size_t anchor);
+  /// Notices of a calibration that fails go to `told`; otherwise they are the fit's.
+  const Fit& fit(Session& session, std::size_t field, std::size_t anchor, Notices& told);
   const std::vector<double>& cell_height(Session& session);
 
  private:
@@ -41,9 +42,10 @@ struct StageSetup {
   const Source* anchor = nullptr;            ///< when it is another run
 };
 
-/// Error(data) when mesh and source do not meet, units do not convert, grids of fixed fields differ...
+/// Error(data) when mesh and source do not meet, units do not convert, grids of fixed fields differ... `notices` takes
+/// what is to be told, of a stage that fails too.
 std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size_t field, std::size_t run,
-                                   std::vector<Product> products);
+                                   std::vector<Product> products, Notices& notices);
 
 /// Output units of a field for a run: the job's, or the source's in UDUNITS' spelling.
 std::string output_units(Session& session, std::size_t field, std::size_t run);

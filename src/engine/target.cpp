@@ -18,10 +18,8 @@ mesh::Earth earth_of(const job::MeshSpec& spec, const geo::Crs& crs) {
   return mesh::Earth::sphere(crs.inverse_flattening == 0 ? crs.semi_major_m : kEarthRadius_m);
 }
 
-}  // namespace
-
-Target make_target(const job::MeshSpec& spec, const std::string& job_file) {
-  const std::string place = fmt::format("{}: [mesh]", job_file);
+Target make(const job::MeshSpec& spec) {
+  const std::string& place = spec.place;
   Target out;
   out.x_edges = spec.x.edges();
   out.y_edges = spec.y.edges();
@@ -47,6 +45,18 @@ Target make_target(const job::MeshSpec& spec, const std::string& job_file) {
   out.earth = earth_of(spec, out.crs);
   out.mesh = mesh::make_latlon({out.x_edges, out.y_edges}, out.earth, place);
   return out;
+}
+
+}  // namespace
+
+Target make_target(const job::MeshSpec& spec) {
+  try {
+    return make(spec);
+  } catch (const Error& error) {
+    if (error.kind() == Failure::defect) throw;
+    // The mesh is the job's own: what is wrong with it is wrong in the job file.
+    throw Error(Failure::job, "", error.what(), spec.excerpt);
+  }
 }
 
 }  // namespace windrow::engine

@@ -21,6 +21,6 @@ struct Target {
 };
 
 /// Error(job) for a CRS that is not known or cells that do not exist there.
-Target make_target(const job::MeshSpec& spec, const std::string& job_file);
+Target make_target(const job::MeshSpec& spec);
 
 }  // namespace windrow::engine

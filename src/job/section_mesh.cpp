@@ -100,6 +100,8 @@ MeshSpec read_mesh(const Table& table) {
     table.document().fail(table.at(),
                           fmt::format("the mesh has {:.3g} cells; expected at most {:g}", cells, kMostCells));
   mesh.height = table.path("height");
+  mesh.place = table.document().place(table.at("crs"));
+  mesh.excerpt = table.document().excerpt(table.at("crs"));
   mesh.ellipsoid = table.word<bool>("earth", {{{"sphere", false}, {"ellipsoid", true}}, {}}, false);
   return mesh;
 }

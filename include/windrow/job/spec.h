@@ -67,6 +67,7 @@ struct MeshSpec {
   AxisSpec x, y;     ///< lon, lat on latlon meshes
   std::string crs;
   std::string height;          ///< path or empty
+  std::string place, excerpt;  ///< where the job file says so, for errors of the geometry: place, line with a caret
   bool ellipsoid = false;      ///< [mesh] earth = "ellipsoid"
 };
 

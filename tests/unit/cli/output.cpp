@@ -37,8 +37,6 @@ engine::Vouched vouched(Verdict verdict) {
 TEST_CASE("a summary's last line counts made, current and failed and names the failed") {
   CHECK(cli::summary_text(summary(), false) ==
         "made    out/a.nc: new\n"
-        "failed  out/c.nc: in/c.nc: no variable 'tas'\n"
-        "failed  out/d.nc\n"
         "1 made, 1 current, 2 failed: out/c.nc, out/d.nc [2.0 s, 64.0 MiB of values (32.0 MiB/s), peak memory 512.0 MiB]\n");
   CHECK(cli::summary_text(summary(), true) ==
         "1 made, 1 current, 2 failed: out/c.nc, out/d.nc [2.0 s, 64.0 MiB of values (32.0 MiB/s), peak memory 512.0 MiB]\n");
@@ -46,6 +44,15 @@ TEST_CASE("a summary's last line counts made, current and failed and names the f
   nothing.products = {{"out/a.nc", State::current, ""}};
   nothing.seconds = 0.04;
   CHECK(cli::summary_text(nothing, false) == "0 made, 1 current, 0 failed [0.0 s]\n");
+}
+
+TEST_CASE("each reason of failed products is told once, as an error") {
+  engine::Summary both = summary();
+  both.products[3].reason = both.products[2].reason;
+  CHECK(cli::failures_text(both) == "windrow: in/c.nc: no variable 'tas'\n");
+  both.products[3].reason = "in/d.nc: no such file";
+  CHECK(cli::failures_text(both) == "windrow: in/c.nc: no variable 'tas'\nwindrow: in/d.nc: no such file\n");
+  CHECK(cli::failures_text({}).empty());
 }
 
 TEST_CASE("a product's checks are told a line each") {
