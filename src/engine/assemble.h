@@ -22,7 +22,6 @@ struct StageContext {
   const linear_map::Weights& weights;
   const Scan& scan;
   const Calibration* calibration;            ///< null: regridding only
-  const std::vector<double>* cell_height;    ///< null without terrain
   std::vector<Notice> notices;               ///< of this field and run: files, stations
   units::Conversion conversion;
   std::string output_units;

@@ -40,6 +40,7 @@ class Describer {
   void add_positions();
   void add_grid_mapping();
   void add_cell_area();
+  void add_height();
   void add_cover();
   void add_status();
   void add_quantization();
@@ -129,6 +130,19 @@ void Describer::add_cell_area() {
   for (std::size_t i = 0; i < area.size(); ++i) area[i] = target_.mesh->area(i) * scale;
   add("cell_area", Type::float64, horizontal(), std::move(area),
       {{"standard_name", "cell_area"}, {"long_name", "area of the mesh cell"}, {"units", "m2"}}, true);
+}
+
+void Describer::add_height() {
+  if (context_.input.adjust == nullptr || !context_.input.adjust->terrain) return;
+  std::vector<double> height = context_.input.adjust->cell_height;
+  const auto missing = static_cast<double>(context_.input.field.missing);
+  for (double& x : height) x = std::isnan(x) ? missing : x;
+  add("height", Type::float32, horizontal(), std::move(height),
+      {{"_FillValue", context_.input.field.missing},
+       {"standard_name", "surface_altitude"},
+       {"long_name", "mean height of the mesh cell, to which values were brought"},
+       {"units", "m"},
+       {"grid_mapping", "crs"}}, true);
 }
 
 std::vector<NamedValue> cover_attributes() {
@@ -320,6 +334,7 @@ cf::ProductFile Describer::describe(const report::Balance& balance) {
   add_positions();
   add_grid_mapping();
   add_cell_area();
+  add_height();
   add_status();
   add_quantization();
   add_data();
