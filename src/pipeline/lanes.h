@@ -31,9 +31,9 @@ struct LaneOutcome {
   std::uint32_t low = 0, high = 0;  ///< clamped lanes
 };
 
-/// Keeps or drops each lane (cover, land), adds its integrals (value * weight * area, area in steradians; 0: the row is
-/// outside the balance), converts units, clamps to the range and rounds to float32.
-void finish_lanes(const linear_map::RowLanes& row, const FieldMath& field, double area, bool land_ok,
-                  LaneSums& sums, LaneOutcome& out);
+/// Keeps or drops each lane, adds its integrals (value * weight * factor, see balance_factor), converts units, clamps to
+/// the range and rounds to float32. `need`: least cover, see least_cover.
+void finish_lanes(const linear_map::RowLanes& row, const FieldMath& field, double factor, double need, LaneSums& sums,
+                  LaneOutcome& out);
 
 }  // namespace windrow::pipeline

@@ -18,8 +18,7 @@ void make_row_series(const StageInput& input, std::size_t row, const linear_map:
   out.kept.assign(steps, 0);
   out.filled.assign(steps, 0);
   out.low_cover = 0;
-  const bool land_ok = input.weights->row_fraction[row] >= input.field.min_land;
-  const double need = input.field.min_cover - kCoverTolerance;
+  const double need = least_cover(input, row);
   linear_map::RowLanes lanes;
   for (std::size_t block = 0; block < source.blocks(); ++block) {
     linear_map::apply_row(*input.weights, row, source, block, lanes);
@@ -28,7 +27,7 @@ void make_row_series(const StageInput& input, std::size_t row, const linear_map:
       const std::size_t t = t0 + lane;
       const double v = lanes.value[lane];
       const bool has = v == v;
-      const bool keep = has && land_ok && lanes.cover[lane] >= need;
+      const bool keep = has && lanes.cover[lane] >= need;
       out.weighted[t] = has ? v * lanes.weight[lane] : 0.0;
       out.kept[t] = keep ? 1 : 0;
       if (keep) {
@@ -36,7 +35,7 @@ void make_row_series(const StageInput& input, std::size_t row, const linear_map:
         continue;
       }
       if (has) ++out.low_cover;
-      if (!land_ok || input.fill.empty()) continue;
+      if (need > 1.0 || input.fill.empty()) continue;
       out.reduced[t] = fill_value(input, row, source, t);
       out.filled[t] = std::isnan(out.reduced[t]) ? 0 : 1;
     }

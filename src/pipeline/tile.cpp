@@ -18,6 +18,7 @@ struct TileTask {
   float* out;          ///< data chunk
   float* cover;        ///< cover chunk or null
   TileStats& stats;
+  std::vector<double> factor, need;  ///< one a cell of the block: balance_factor, least_cover
 };
 
 /// Missing, filled and clamped lanes of one row: rare, so apart from the fast loop.
@@ -70,10 +71,10 @@ void make_lane_block(TileTask& task, std::size_t lane_block) {
     std::size_t cell = (y - task.block.y0) * (task.block.x1 - task.block.x0);
     for (std::size_t x = task.block.x0; x < task.block.x1; ++x, ++row, ++at, ++cell) {
       linear_map::apply_row(weights, row, task.source, lane_block, row_lanes);
-      const bool land_ok = weights.row_fraction[row] >= input.field.min_land;
-      finish_lanes(row_lanes, input.field, balance_factor(input, row), land_ok, sums, lanes);
+      const double need = task.need[cell];
+      finish_lanes(row_lanes, input.field, task.factor[cell], need, sums, lanes);
       if ((valid & ~lanes.kept) != 0 || ((lanes.low | lanes.high) & valid) != 0) {
-        handle_exceptions(task, row, cell, step0, valid, land_ok, lanes, sums);
+        handle_exceptions(task, row, cell, step0, valid, need <= 1.0, lanes, sums);
       }
       for (std::size_t s = first; s < last; ++s) task.out[(s - task.s0) * plane + at] = lanes.value[s - step0];
       if (task.cover == nullptr) continue;
@@ -113,7 +114,13 @@ void make_tile(const StageInput& input, const plan::Unit& unit, const linear_map
   float* out = data.begin_chunk();
   float* cover_out = input.products[piece.product].cover_varies ? cover.begin_chunk() : nullptr;
   TileTask task{input, source, block, piece.t0 - source_t0, piece.t1 - source_t0, source_t0, out, cover_out,
-                stats};
+                stats, {}, {}};
+  for (std::size_t y = block.y0; y < block.y1; ++y) {
+    for (std::size_t x = block.x0; x < block.x1; ++x) {
+      task.factor.push_back(balance_factor(input, y * input.nx + x));
+      task.need.push_back(least_cover(input, y * input.nx + x));
+    }
+  }
   for (std::size_t b = task.s0 / kLanes; b * kLanes < task.s1; ++b) make_lane_block(task, b);
   mark_fixed_flags(input, block, stats);
   const std::size_t count = input.chunk.time * input.chunk.y * input.chunk.x;

@@ -56,6 +56,11 @@ double balance_factor(const StageInput& input, std::size_t row) {
   return map.quantity == linear_map::Quantity::mean ? map.row_area[row] : 1.0;
 }
 
+double least_cover(const StageInput& input, std::size_t row) {
+  constexpr double kNever = 2.0;  // no cover reaches it
+  return input.weights->row_fraction[row] >= input.field.min_land ? input.field.min_cover - kCoverTolerance : kNever;
+}
+
 void round_bits(float* values, std::size_t count, int bits, float missing) {
   const int drop = 23 - bits;
   const std::uint32_t half = (1U << drop) >> 1, mask = ~((1U << drop) - 1U);

@@ -43,6 +43,9 @@ class ChunkEncoder {
 /// balance, which carry an all-surface value.
 double balance_factor(const StageInput& input, std::size_t row);
 
+/// Cover that a row's values need to be kept; out of reach where its land share is below min_land.
+double least_cover(const StageInput& input, std::size_t row);
+
 /// Keeps `bits` explicit mantissa bits, rounding to nearest even (CF 8.4 "bitround").
 void round_bits(float* values, std::size_t count, int bits, float missing);
 
