@@ -116,7 +116,10 @@ std::string type_name(nc_type type) {
 File File::open(const std::string& path) {
   const LibraryLock lock;
   int id = -1;
-  check(nc_open(path.c_str(), NC_NOWRITE, &id), path, "");
+  const int status = nc_open(path.c_str(), NC_NOWRITE, &id);
+  if (status == NC_EHDFERR)
+    throw Error(Failure::io, path, "cannot be opened: the file is damaged, or another process has it open for writing");
+  check(status, path, "");
   return {id, path};
 }
 
