@@ -12,8 +12,9 @@ constexpr char kMagic[8] = {'w', 'r', 'm', 'a', 'p', '0', '0', '1'};
 
 template <typename T>
 void put(std::vector<std::byte>& out, const T* data, std::size_t count) {
-  const auto* bytes = reinterpret_cast<const std::byte*>(data);
-  out.insert(out.end(), bytes, bytes + count * sizeof(T));
+  const std::size_t at = out.size();
+  out.resize(at + count * sizeof(T));
+  if (count > 0) std::memcpy(out.data() + at, data, count * sizeof(T));
 }
 
 template <typename T>

@@ -100,10 +100,10 @@ void Spool::append(const TileId& id, const codec::Digest& values, std::span<cons
   header.payload = payload.size();
   header.aux = aux.size();
   header.crc = record_crc(header, body_crc(payload, aux));
-  std::vector<std::byte> record(sizeof header + payload.size() + aux.size());
-  std::memcpy(record.data(), &header, sizeof header);
-  std::copy(payload.begin(), payload.end(), record.begin() + sizeof header);
-  std::copy(aux.begin(), aux.end(), record.begin() + static_cast<std::ptrdiff_t>(sizeof header + payload.size()));
+  std::vector<std::byte> record;
+  record.reserve(sizeof header + payload.size() + aux.size());
+  const auto head = std::as_bytes(std::span(&header, 1));
+  for (const auto part : {head, payload, aux}) record.insert(record.end(), part.begin(), part.end());
   const std::lock_guard lock(mutex_);
   if (places_.contains(id)) return;
   std::size_t done = 0;

@@ -10,8 +10,9 @@ namespace {
 
 template <typename T>
 void put(std::vector<std::byte>& out, const T* data, std::size_t count) {
-  const auto* bytes = reinterpret_cast<const std::byte*>(data);
-  out.insert(out.end(), bytes, bytes + count * sizeof(T));
+  const std::size_t at = out.size();
+  out.resize(at + count * sizeof(T));
+  if (count > 0) std::memcpy(out.data() + at, data, count * sizeof(T));
 }
 
 template <typename T>
