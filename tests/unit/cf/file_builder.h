@@ -17,10 +17,13 @@ namespace windrow::cftest {
 /// A folder of this process that goes when it ends.
 inline std::string scratch(const std::string& name) {
   struct Folder {
+    pid_t owner = ::getpid();
     std::filesystem::path path =
         std::filesystem::temp_directory_path() / ("windrow-cf-test-" + std::to_string(::getpid()));
     Folder() { std::filesystem::create_directories(path); }
-    ~Folder() { std::filesystem::remove_all(path); }
+    ~Folder() {
+      if (::getpid() == owner) std::filesystem::remove_all(path);  // a forked child leaves it alone
+    }
   };
   static const Folder folder;
   return (folder.path / name).string();
