@@ -79,6 +79,7 @@ StationFit fit_station(const Setup& setup, const Steps& steps, std::span<const d
     }
   } else if (series && matched.months == 0) {
     fit.left_out = "no month in common with the run";
+    if (!accept_mismatch) fit.left_out += "; period_mismatch = \"accept\" uses it all the same";
     return fit;
   }
   const auto seasons = static_cast<std::size_t>(setup.seasons.count());

@@ -125,11 +125,18 @@ void assemble(const StageContext& context, std::size_t index, const pipeline::Sp
   os::make_folder(os::folder_of(product.path));
   const std::string temporary = os::temporary_beside(product.path);
   std::vector<std::byte> chunk;
-  cf::write_product(temporary, file, [&](std::size_t variable, std::size_t at) -> std::span<const std::byte> {
-    spool.payload({context.input.products[index].key, static_cast<std::uint32_t>(variable),
-                   static_cast<std::uint32_t>(at)}, chunk);
-    return chunk;
-  });
+  try {
+    cf::write_product(temporary, file, [&](std::size_t variable, std::size_t at) -> std::span<const std::byte> {
+      spool.payload({context.input.products[index].key, static_cast<std::uint32_t>(variable),
+                     static_cast<std::uint32_t>(at)}, chunk);
+      return chunk;
+    });
+  } catch (const Error& error) {
+    // Users know the product's name, not that of its temporary.
+    std::string what = error.what();
+    if (what.starts_with(temporary)) what.replace(0, temporary.size(), product.path);
+    throw Error(error.kind(), "", what);
+  }
   auto ledger = ledger_of(context, product, stats, balance);
   ledger.product_bytes = file_size(temporary);
   ledger.product_digest = digest_file(temporary).hex();

@@ -187,7 +187,7 @@ void carry_over(const CalibrationNeeds& needs, const std::vector<Fitted>& fitted
 }
 
 [[noreturn]] void no_station(const CalibrationNeeds& needs, const std::vector<report::StationRecord>& outcomes) {
-  std::string why = outcomes.empty() ? "the tables give none" : outcomes.front().outcome;
+  std::string why = outcomes.empty() ? "of those in the tables none can be used; the notes say why" : outcomes.front().outcome;
   for (const auto& outcome : outcomes) {
     if (outcome.outcome != why) {
       why = fmt::format("{}: {}, ...", outcomes.front().id, outcomes.front().outcome);

@@ -104,8 +104,9 @@ Crs make_crs(const std::string& definition, const std::string& place) {
   const Pj crs = create_crs(c, complete);
   if (!crs)
     throw Error(Failure::job, place,
-                fmt::format("PROJ does not know the coordinate reference system '{}' ({})", definition,
-                            proj_context_errno_string(c, proj_context_errno(c))));
+                fmt::format("PROJ does not know the coordinate reference system '{}'; expected a code such as "
+                            "\"EPSG:3035\", a PROJ string with +proj=, or WKT",
+                            definition));
   const PJ_TYPE type = proj_get_type(crs.get());
   const bool projected = type == PJ_TYPE_PROJECTED_CRS;
   if (!projected && type != PJ_TYPE_GEOGRAPHIC_2D_CRS)

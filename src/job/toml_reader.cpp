@@ -94,6 +94,9 @@ Value read_toml(const Document& document) {
     constexpr std::string_view kOpening = "Error while parsing ";
     std::string_view description = error.description();
     if (description.starts_with(kOpening)) description.remove_prefix(kOpening.size());
+    // The end of the line is the control character that is met in practice.
+    if (description.starts_with("string: unescaped control character"))
+      description = "string: expected the closing quote on the same line";
     document.fail(position(error.source(), 0), "not valid TOML: " + printable(description, 300));
   }
 }

@@ -105,7 +105,9 @@ void make_folder(const std::string& path) {
   std::error_code code;
   std::filesystem::create_directories(path, code);
   if (code) {
-    throw Error(Failure::output, path, fmt::format("the folder cannot be made: {}", reason(code.value())));
+    const std::string why = code.value() == ENOTDIR || code.value() == EEXIST ? "a part of the path is a file"
+                                                                              : reason(code.value());
+    throw Error(Failure::output, path, fmt::format("the folder cannot be made: {}", why));
   }
   if (::access(path.c_str(), W_OK | X_OK) != 0) throw output_error(path, errno);
 }

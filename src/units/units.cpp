@@ -54,7 +54,8 @@ Conversion conversion(const std::string& from, const std::string& to, const std:
   };
   Library::Unit source = parsed(from_text, from), target = parsed(to_text, to);
   const Error failure(Failure::data, place,
-                      fmt::format("units '{}' cannot be converted to '{}'", shown(from), shown(to)));
+                      from_text.empty() ? fmt::format("no units are given; expected some that convert to '{}'", shown(to))
+                                        : fmt::format("units '{}' cannot be converted to '{}'", shown(from), shown(to)));
 
   Conversion result;
   result.standard_name = standard_name;
