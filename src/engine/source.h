@@ -5,10 +5,12 @@
 #include <string>
 #include <vector>
 
+#include "windrow/base/error.h"
 #include "windrow/base/notices.h"
 #include "windrow/cf/dataset.h"
 #include "windrow/linear_map/linear_map.h"
 #include "windrow/mesh/mesh.h"
+#include "windrow/os/process.h"
 #include "windrow/pipeline/stage.h"
 
 namespace windrow::engine {
@@ -40,6 +42,8 @@ class RunReader : public pipeline::SourceReader {
  public:
   explicit RunReader(const cf::RunVariable& variable) : variable_(variable) {}
   void read(const std::vector<std::uint32_t>& columns, std::size_t t0, std::size_t t1, double* out) const override {
+    // A first pass over a long run takes longer than a user waits who asked to stop.
+    if (os::stop_requested()) throw Error(Failure::interrupted, "", "interrupted; run again to go on from here");
     variable_.read(t0, t1, columns, out);
   }
 

@@ -79,9 +79,10 @@ def spooled(folder, bytes_):
 
 
 def check_signals(folder, whole, expected):
-    for how in (signal.SIGTERM, signal.SIGINT):
+    at_once, midway = (lambda: os.path.exists(folder("work/lease"))), spooled(folder, 0.3 * whole)
+    for how, when in ((signal.SIGTERM, at_once), (signal.SIGTERM, midway), (signal.SIGINT, midway)):
         forget(folder)
-        status, seconds = stop(folder, spooled(folder, 0.3 * whole), how)
+        status, seconds = stop(folder, when, how)
         assert status == 75 and seconds < STOP_S, (how, status, seconds)
         assert folder.left() == [], folder.left()
         assert "work/lease" not in folder.left("work")
