@@ -5,9 +5,11 @@
 #include <algorithm>
 #include <chrono>
 #include <sstream>
+#include <thread>
 
 #include "windrow/base/error.h"
 #include "windrow/codec/codec.h"
+#include "windrow/os/process.h"
 
 namespace windrow::engine {
 namespace {
@@ -86,6 +88,22 @@ std::vector<std::string> run_files(const job::RunSpec& run) {
   std::sort(out.begin(), out.end());
   out.erase(std::unique(out.begin(), out.end()), out.end());
   return out;
+}
+
+void wait_until_settled(const std::vector<std::vector<std::string>>& files, double settle_s) {
+  const auto youngest_s = [&files] {
+    std::int64_t newest = 0;
+    for (const auto& run : files) {
+      for (const auto& path : run) {
+        if (const auto state = os::state(path)) newest = std::max(newest, state->mtime_ns);
+      }
+    }
+    return 1e-9 * static_cast<double>(now_ns() - newest);
+  };
+  while (settle_s > 0 && youngest_s() < settle_s) {
+    if (os::stop_requested()) throw Error(Failure::interrupted, "", "interrupted; run again to go on from here");
+    std::this_thread::sleep_for(std::chrono::milliseconds(200));
+  }
 }
 
 std::string told_path(const std::string& path, const std::string& job_folder) {

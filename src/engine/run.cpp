@@ -225,6 +225,7 @@ Summary Runner::run() {
 Summary run(const std::string& job_file, const Options& options, const ProgressSink& progress,
             const EventSink& events) {
   Session session(job_file, options);
+  session.wait_until_settled();
   return Runner(session, progress, events).run();
 }
 

@@ -52,6 +52,7 @@ class Session {
   [[nodiscard]] bool adjusted(std::size_t field) const {
     return job.fields[field].adjust.method != job::Adjustment::none;
   }
+  void wait_until_settled() const { engine::wait_until_settled(files_, job.settle_s); }
   /// Keeps workspace objects in memory only: `plan` writes nothing.
   void write_nothing();
 

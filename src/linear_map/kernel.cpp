@@ -18,32 +18,26 @@ Weights make_weights(const LinearMap& map, std::span<const double> fraction) {
   Weights out;
   out.map = &map;
   out.weight = map.share;
+  out.cover = map.share;
   const std::size_t rows = map.rows();
-  out.row_weight.resize(rows);
-  out.row_cover.resize(rows);
   out.row_fraction.assign(rows, 1.0);
   out.all_surface.assign(rows, 0);
   for (std::size_t row = 0; row < rows; ++row) {
+    const auto first = map.row_start[row], last = map.row_start[row + 1];
     double shares = 0, weighted = 0;
-    for (auto k = map.row_start[row]; k < map.row_start[row + 1]; ++k) {
+    for (auto k = first; k < last; ++k) {
+      if (map.quantity == Quantity::total) out.cover[k] *= map.column_area[map.column[k]] / map.row_area[row];
       shares += map.share[k];
       if (fraction.empty()) continue;
       const double part = fraction[map.column[k]];
       out.weight[k] = std::isnan(part) ? 0.0 : map.share[k] * part;
       weighted += out.weight[k];
     }
-    if (!fraction.empty()) {
-      out.row_fraction[row] = shares > 0 ? std::min(1.0, weighted / shares) : 0.0;
-      if (weighted == 0 && shares > 0) {
-        out.all_surface[row] = 1;
-        for (auto k = map.row_start[row]; k < map.row_start[row + 1]; ++k) out.weight[k] = map.share[k];
-        weighted = shares;
-      }
-    } else {
-      weighted = shares;
+    if (!fraction.empty()) out.row_fraction[row] = shares > 0 ? std::min(1.0, weighted / shares) : 0.0;
+    if (!fraction.empty() && weighted == 0 && shares > 0) {
+      out.all_surface[row] = 1;
+      for (auto k = first; k < last; ++k) out.weight[k] = map.share[k];
     }
-    out.row_weight[row] = weighted;
-    out.row_cover[row] = map.quantity == Quantity::mean ? std::min(1.0, shares) : shares;
   }
   return out;
 }
@@ -72,7 +66,7 @@ WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const Sou
   const bool mean = map.quantity == Quantity::mean;
   if (mean && last - first == 1) {
     const double* v = values + static_cast<std::size_t>(source.slot[map.column[first]]) * kLanes;
-    const double w = weights.weight[first], share = std::min(1.0, map.share[first]);
+    const double w = weights.weight[first], share = std::min(1.0, weights.cover[first]);
     for (std::size_t lane = 0; lane < kLanes; ++lane) {
       const double x = v[lane];
       out.value[lane] = x;
@@ -84,7 +78,7 @@ WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const Sou
   double sum[kLanes] = {}, present[kLanes] = {}, cover[kLanes] = {};
   for (auto k = first; k < last; ++k) {
     const double* v = values + static_cast<std::size_t>(source.slot[map.column[k]]) * kLanes;
-    const double w = weights.weight[k], share = map.share[k];
+    const double w = weights.weight[k], share = weights.cover[k];
     for (std::size_t lane = 0; lane < kLanes; ++lane) {
       // A missing value is a NaN; it enters with weight zero. Adding zero changes no bit of the other terms.
       const double x = v[lane];
@@ -98,7 +92,7 @@ WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const Sou
     const double nan = std::numeric_limits<double>::quiet_NaN();
     const double value = mean ? sum[lane] / present[lane] : sum[lane];
     out.value[lane] = present[lane] > 0 ? value : nan;
-    out.cover[lane] = mean && cover[lane] > 1.0 ? 1.0 : cover[lane];
+    out.cover[lane] = cover[lane] > 1.0 ? 1.0 : cover[lane];
     out.weight[lane] = mean ? present[lane] : 1.0;
   }
 }

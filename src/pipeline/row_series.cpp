@@ -52,7 +52,7 @@ std::string row_key(const StageInput& input, std::size_t row) {
   for (auto k = weights.map->row_start[row]; k < weights.map->row_start[row + 1]; ++k) {
     add(&weights.map->column[k], sizeof(std::uint32_t));
     add(&weights.weight[k], sizeof(double));
-    add(&weights.map->share[k], sizeof(double));
+    add(&weights.cover[k], sizeof(double));
   }
   const bool land_ok = weights.row_fraction[row] >= input.field.min_land;
   add(&land_ok, sizeof land_ok);

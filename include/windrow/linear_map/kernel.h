@@ -14,12 +14,12 @@ namespace windrow::linear_map {
 inline constexpr std::size_t kLanes = 8;
 
 /// Weights of one map together with an optional fraction of each column (land), ready to apply.
-/// weight = share * fraction; a row without any weight uses plain shares (all-surface value) and is flagged.
+/// weight = share * fraction; a row without any weight uses plain shares (all-surface value) and is flagged. Totals need
+/// the map's row and column areas.
 struct Weights {
   const LinearMap* map = nullptr;
   std::vector<double> weight;      ///< one a pairing
-  std::vector<double> row_weight;  ///< sum of a row's weights in pairing order
-  std::vector<double> row_cover;   ///< sum of a row's shares in pairing order (mean), capped at 1
+  std::vector<double> cover;       ///< one a pairing: overlap / row-cell area, whatever the quantity
   std::vector<double> row_fraction;  ///< row_weight / row share sum (land share); 1 without fractions
   std::vector<std::uint8_t> all_surface;  ///< row fell back to plain shares
 };

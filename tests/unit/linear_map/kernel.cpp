@@ -167,6 +167,7 @@ TEST_CASE("totals are split by the share of the source cell and never renormalis
   apply_row(weights, 0, source, 0, a);
   apply_row(weights, 1, source, 0, b);
   CHECK(a.value[0] == 25);
+  CHECK(a.cover[0] == 1);
   CHECK(b.value[0] == 75);
   CHECK(column_overlap(map)[0] == doctest::Approx(4).epsilon(1e-15));
 }
