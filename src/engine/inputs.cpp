@@ -111,13 +111,15 @@ std::string told_path(const std::string& path, const std::string& job_folder) {
   return path.starts_with(prefix) ? path.substr(prefix.size()) : path;
 }
 
-std::string for_run(std::string text, const job::RunSpec& run) {
-  for (const auto& [name, value] : {std::pair<std::string, std::string>{"{run}", run.name}, {"{family}", run.family}}) {
-    for (std::size_t at = 0; (at = text.find(name, at)) != std::string::npos; at += value.size()) {
-      text.replace(at, name.size(), value);
-    }
+std::string with_value(std::string text, const std::string& mark, const std::string& value) {
+  for (std::size_t at = 0; (at = text.find(mark, at)) != std::string::npos; at += value.size()) {
+    text.replace(at, mark.size(), value);
   }
   return text;
+}
+
+std::string for_run(std::string text, const job::RunSpec& run) {
+  return with_value(with_value(std::move(text), "{run}", run.name), "{family}", run.family);
 }
 
 }  // namespace windrow::engine

@@ -45,6 +45,9 @@ void wait_until_settled(const std::vector<std::vector<std::string>>& files, doub
 /// Path as the ledger tells it: relative to the job file's folder when below it.
 std::string told_path(const std::string& path, const std::string& job_folder);
 
+/// Text with every `mark` replaced by `value`.
+std::string with_value(std::string text, const std::string& mark, const std::string& value);
+
 /// Text with {run} and {family} replaced.
 std::string for_run(std::string text, const job::RunSpec& run);
 

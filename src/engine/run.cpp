@@ -166,6 +166,9 @@ void Runner::make_unguarded(StageJob& stage, Notices& notices) {
   const auto setup = set_up(session_, fits_, stage.field, stage.run, stage.products, notices);
   auto& context = *setup->context;
   pipeline::Spool spool(fmt::format("{}/{}.spool", job.workspace, name));
+  std::vector<codec::Digest> keys;
+  for (const auto& product : context.products) keys.push_back(product.key_digest);
+  spool.keep_for(keys);
   pipeline::StageHooks hooks;
   hooks.progress = [this](std::int64_t bytes) { progress_.bytes(bytes); };
   hooks.stop = os::stop_requested;

@@ -15,12 +15,6 @@ namespace {
 // Raised whenever the same job and inputs give other values or another file layout.
 constexpr const char* kProductFormat = "windrow product, format 1, version " WINDROW_VERSION;
 
-void replace_all(std::string& text, const std::string& name, const std::string& value) {
-  for (std::size_t at = 0; (at = text.find(name, at)) != std::string::npos; at += value.size()) {
-    text.replace(at, name.size(), value);
-  }
-}
-
 plan::Found find_product(const Product& product) {
   plan::Found found;
   const auto state = os::state(product.path);
@@ -100,13 +94,8 @@ std::string Session::height_path(std::size_t field, std::size_t run) const {
 }
 
 std::string Session::product_path(std::size_t field, std::size_t run, int year) const {
-  std::string name = job.output.name;
-  replace_all(name, "{field}", job.fields[field].name);
-  replace_all(name, "{run}", job.runs[run].name);
-  replace_all(name, "{mesh}", job.mesh.name);
-  replace_all(name, "{version}", job.version);
-  replace_all(name, "{year}", fmt::format("{:04d}", year));
-  return job.output.directory + "/" + name;
+  const std::string name = job::product_name(job, job.fields[field], job.runs[run]);
+  return job.output.directory + "/" + with_value(name, "{year}", fmt::format("{:04d}", year));
 }
 
 plan::Key Session::key_of(std::size_t field, std::size_t run, const plan::ProductSpan& span,

@@ -154,7 +154,7 @@ void Voucher::check_balance() {
   check("conservation", all.relative <= kBalanceBound,
         fmt::format("largest residual of a step {:.2e} of the integral, bound {:.0e}, as the ledger states", all.relative,
                     kBalanceBound));
-  out_.checks.push_back({"conservation anew", Verdict::needs_inputs, "the source integral needs the model files: run again with --reread"});
+  out_.checks.push_back({"conservation anew", Verdict::needs_inputs, "the source integral needs the model files"});
   out_.checks.push_back({"inputs", Verdict::needs_inputs, fmt::format("{} digests are in the ledger", ledger_->inputs.size())});
 }
 

@@ -90,6 +90,19 @@ std::size_t Spool::size() const {
   return places_.size();
 }
 
+void Spool::keep_for(const std::vector<codec::Digest>& products) {
+  const std::lock_guard lock(mutex_);
+  for (const auto& product : products) {
+    const auto first = places_.lower_bound({product, 0, 0});
+    if (first != places_.end() && first->first.product == product) return;
+  }
+  places_.clear();
+  end_ = 0;
+  if (::ftruncate(file_, 0) != 0) {
+    throw Error(Failure::output, path_, fmt::format("cannot be written: {}", std::strerror(errno)));
+  }
+}
+
 void Spool::append(const TileId& id, const codec::Digest& values, std::span<const std::byte> payload,
                    std::span<const std::byte> aux) {
   Header header;

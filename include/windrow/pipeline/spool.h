@@ -34,6 +34,9 @@ class Spool {
 
   [[nodiscard]] bool has(const TileId& id) const;
   [[nodiscard]] std::size_t size() const;
+  /// Forgets all tiles and empties the file unless it holds a tile of one of these products: what was left by a job with
+  /// other settings or inputs is of no use.
+  void keep_for(const std::vector<codec::Digest>& products);
   /// A tile that is there already is left alone. Error(output) when the disk is full: the spool stays valid.
   void append(const TileId& id, const codec::Digest& values, std::span<const std::byte> payload,
               std::span<const std::byte> aux);

@@ -82,6 +82,20 @@ TEST_CASE("a spool cut or damaged at any byte keeps every record before it and g
   }
 }
 
+TEST_CASE("a spool of other products is emptied, one that holds a wanted tile is kept whole") {
+  const Folder folder;
+  const std::string path = folder.path + "/a.spool";
+  Spool spool(path);
+  spool.append(id(1), {}, bytes(20, 1), {});
+  spool.keep_for({codec::digest(std::string("other")), id(1).product});
+  CHECK(spool.has(id(1)));
+  spool.keep_for({codec::digest(std::string("other"))});
+  CHECK(spool.size() == 0);
+  CHECK(std::filesystem::file_size(path) == 0);
+  spool.append(id(2), {}, bytes(20, 2), {});
+  CHECK(Spool(path).has(id(2)));
+}
+
 TEST_CASE("statistics of a tile survive the spool; cut ones are noticed") {
   pipeline::TileStats stats;
   stats.resize(3, 6);
