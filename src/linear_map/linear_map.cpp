@@ -2,6 +2,7 @@
 
 #include <cstring>
 
+#include "windrow/base/byte_record.h"
 #include "windrow/base/exact_sum.h"
 #include "windrow/codec/codec.h"
 
@@ -11,42 +12,19 @@ namespace {
 constexpr char kMagic[8] = {'w', 'r', 'm', 'a', 'p', '0', '0', '1'};
 
 template <typename T>
-void put(std::vector<std::byte>& out, const T* data, std::size_t count) {
-  const std::size_t at = out.size();
-  out.resize(at + count * sizeof(T));
-  if (count > 0) std::memcpy(out.data() + at, data, count * sizeof(T));
+void put_vector(std::vector<std::byte>& out, const std::vector<T>& values) {
+  const std::uint64_t count = values.size();
+  put_values(out, &count, 1);
+  put_values(out, values.data(), values.size());
 }
 
 template <typename T>
-void put_vector(std::vector<std::byte>& out, const std::vector<T>& values) {
-  const std::uint64_t count = values.size();
-  put(out, &count, 1);
-  put(out, values.data(), values.size());
+bool get_vector(RecordReader& reader, std::vector<T>& values) {
+  std::uint64_t count = 0;
+  if (!reader.get(&count, 1) || count > reader.rest().size() / sizeof(T)) return false;
+  values.resize(count);
+  return reader.get(values.data(), count);
 }
-
-/// Reads from a span; every read checks what is left, so damaged lengths end the parse.
-class Reader {
- public:
-  explicit Reader(std::span<const std::byte> bytes) : rest_(bytes) {}
-  template <typename T>
-  bool get(T* data, std::size_t count) {
-    if (count > rest_.size() / sizeof(T)) return false;
-    if (count > 0) std::memcpy(data, rest_.data(), count * sizeof(T));
-    rest_ = rest_.subspan(count * sizeof(T));
-    return true;
-  }
-  template <typename T>
-  bool get_vector(std::vector<T>& values) {
-    std::uint64_t count = 0;
-    if (!get(&count, 1) || count > rest_.size() / sizeof(T)) return false;
-    values.resize(count);
-    return get(values.data(), count);
-  }
-  [[nodiscard]] bool empty() const { return rest_.empty(); }
-
- private:
-  std::span<const std::byte> rest_;
-};
 
 bool consistent(const LinearMap& map) {
   if (map.row_start.empty() || map.row_start.front() != 0 || map.row_start.back() != map.column.size()) return false;
@@ -83,11 +61,11 @@ std::vector<double> column_overlap(const LinearMap& map) {
 
 std::vector<std::byte> serialise(const LinearMap& map) {
   std::vector<std::byte> out;
-  put(out, kMagic, sizeof kMagic);
+  put_values(out, kMagic, sizeof kMagic);
   const auto quantity = static_cast<std::uint64_t>(map.quantity);
   const std::uint64_t columns = map.columns;
-  put(out, &quantity, 1);
-  put(out, &columns, 1);
+  put_values(out, &quantity, 1);
+  put_values(out, &columns, 1);
   put_vector(out, map.row_start);
   put_vector(out, map.column);
   put_vector(out, map.share);
@@ -95,7 +73,7 @@ std::vector<std::byte> serialise(const LinearMap& map) {
   put_vector(out, map.column_area);
   put_vector(out, std::vector<char>(map.provenance.begin(), map.provenance.end()));
   const auto digest = codec::digest(out);
-  put(out, digest.bytes.data(), digest.bytes.size());
+  put_values(out, digest.bytes.data(), digest.bytes.size());
   return out;
 }
 
@@ -104,13 +82,13 @@ bool parse(std::span<const std::byte> bytes, LinearMap& map) {
   if (bytes.size() < sizeof kMagic + kDigest || std::memcmp(bytes.data(), kMagic, sizeof kMagic) != 0) return false;
   const auto body = bytes.first(bytes.size() - kDigest);
   if (std::memcmp(codec::digest(body).bytes.data(), bytes.data() + body.size(), kDigest) != 0) return false;
-  Reader reader(body.subspan(sizeof kMagic));
+  RecordReader reader(body.subspan(sizeof kMagic));
   std::uint64_t quantity = 0, columns = 0;
   std::vector<char> provenance;
   LinearMap found;
-  if (!reader.get(&quantity, 1) || quantity > 1 || !reader.get(&columns, 1) || !reader.get_vector(found.row_start) ||
-      !reader.get_vector(found.column) || !reader.get_vector(found.share) || !reader.get_vector(found.row_area) ||
-      !reader.get_vector(found.column_area) || !reader.get_vector(provenance) || !reader.empty()) {
+  if (!reader.get(&quantity, 1) || quantity > 1 || !reader.get(&columns, 1) || !get_vector(reader, found.row_start) ||
+      !get_vector(reader, found.column) || !get_vector(reader, found.share) || !get_vector(reader, found.row_area) ||
+      !get_vector(reader, found.column_area) || !get_vector(reader, provenance) || !reader.rest().empty()) {
     return false;
   }
   found.quantity = static_cast<Quantity>(quantity);
