@@ -154,5 +154,10 @@ def job(run='files = ["in/tas*.nc"]\n', field='variable = "tas"\n', mesh=MESH, r
     return f"{general}[[run]]\n{run}[[field]]\n{field}{mesh}{rest}"
 
 
-ADJUST = 'variable = "tas"\nunits = "degC"\n[field.adjust]\nmethod = "quantile-mapping"\nquantiles = 20\n'
+ADJUST = """variable = "tas"
+units = "degC"
+[field.adjust]
+method = "quantile-mapping"
+quantiles = 20
+"""
 STATIONS = '[stations]\nsites = "in/sites.csv"\ndaily = "in/daily.csv"\nmin_years = 1\n'

@@ -199,7 +199,7 @@ PLAIN = '[output]\ncompression = "none"\ntile = [73, 40, 40]\n'
 
 
 @case("disk full under workspace and output", 73,
-      "windrow: FOLDER/disk/work/tas-run-mesh.spool: cannot be written: No space left on device\n")
+      "windrow: FOLDER/disk/work" "/tas-run-mesh.spool: cannot be written: No space left on device\n")
 def _(folder):
     folder.mount("disk", 2 << 20)
     regrid(folder, mesh=LARGE, general='[job]\nworkspace = "disk/work"\n',

@@ -184,10 +184,10 @@ TEST_CASE("~ and ${NAME} are expanded in paths and nowhere else") {
   ::setenv("WINDROW_TEST_DATA", "/data/heron", 1);
   std::string text = job_texts::kShortest;
   text.replace(text.find("tas_*.nc"), 8, "${WINDROW_TEST_DATA}/tas_*.nc");
-  text.insert(0, "[job]\ntitle = \"~ ${WINDROW_TEST_DATA}\"\nworkspace = \"~/work/\"\n");
+  text.insert(0, "[job]\ntitle = \"~ ${WINDROW_TEST_DATA}\"\nworkspace = \"~/scratch/\"\n");
   const JobSpec job = parse_job("/proj/job.toml", text, {});
   CHECK(job.runs[0].patterns[0] == "/data/heron/tas_*.nc");
-  CHECK(job.workspace == "/home/kelder/work");
+  CHECK(job.workspace == "/home/kelder/scratch");
   CHECK(job.title == "~ ${WINDROW_TEST_DATA}");
 }
 
