@@ -320,7 +320,7 @@ void rotate_at_gap(std::vector<Cell>& cells, double tolerance, Remarks& remarks,
     cells[i].low -= 360;
     cells[i].high -= 360;
   }
-  std::ranges::rotate(cells, cells.begin() + std::ptrdiff_t(found[0]));
+  std::rotate(cells.begin(), cells.begin() + std::ptrdiff_t(found[0]), cells.end());
   remarks.push_back(fmt::format("'{}' crosses the end of its array; columns from position {} on come first", name,
                                 cells.front().index));
 }

@@ -34,7 +34,6 @@ LatLonPair::Axis LatLonPair::longitudes(const mesh::LatLonEdges& grid, const std
     const double west = target[i];
     const double east = target[i + 1];
     std::vector<Part> parts;
-    double sum = 0;
     const auto first_turn = static_cast<long>(std::floor((west - source.back()) / 360));
     const auto last_turn = static_cast<long>(std::ceil((east - source.front()) / 360));
     for (long turn = first_turn; turn <= last_turn; ++turn) {
@@ -44,7 +43,6 @@ LatLonPair::Axis LatLonPair::longitudes(const mesh::LatLonEdges& grid, const std
       for (; k + 1 < source.size() && source[k] + shift < east; ++k) {
         const double overlap = std::min(east, source[k + 1] + shift) - std::max(west, source[k] + shift);
         if (overlap <= kSameEdge_deg) continue;
-        sum += overlap;
         const auto column = static_cast<std::uint32_t>(k);
         const auto same = std::find_if(parts.begin(), parts.end(), [&](const Part& p) { return p.source == column; });
         if (same != parts.end()) {

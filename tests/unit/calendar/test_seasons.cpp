@@ -43,8 +43,9 @@ TEST_CASE("there is a window for every step of the year") {
 
 TEST_CASE("a day is evaluated with the nearest centre and is in that season's fitting sample") {
   for (const Calendar& calendar : calendars()) {
-    for (const auto& [width, step] :
+    for (const auto& window :
          {std::pair{31, 5}, {31, 1}, {30, 30}, {31, 31}, {7, 7}, {1, 1}, {91, 10}, {366, 5}}) {
+      const int width = window.first, step = window.second;
       const Seasons seasons = Seasons::moving(width, step);
       for (const int year : {1999, 2000}) {
         each_day(calendar, year, [&](Date date) {

@@ -93,7 +93,7 @@ TEST_CASE("each file keeps its own packing, type, dimension order and direction"
   c.mode = NC_NETCDF4;
   c.lon = steps(-175, 10, 36);
   c.chunks = {1, 2, 5};
-  std::ranges::rotate(c.lon, c.lon.begin() + 18);  // 5 .. 175, -175 .. -5
+  std::rotate(c.lon.begin(), c.lon.begin() + 18, c.lon.end());  // 5 .. 175, -175 .. -5
   Notices notices;
   const auto run = cf::open_run({a.write(), b.write(), c.write()}, "v", notices);
   CHECK(run->double_precision());

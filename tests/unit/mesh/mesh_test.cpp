@@ -115,7 +115,9 @@ TEST_CASE("gaussian latitudes are the published ones and edges carry the weights
 TEST_CASE("an equal-area mesh has equal areas on the sphere") {
   const std::vector<std::pair<Azimuthal, double>> places = {{{-28, 48}, 5000}, {{180, -17}, 5000},  {{40, 90}, 5000},
                                                             {{10, 50}, 25000}, {{10, -88}, 100000}, {{0, 0}, 500000}};
-  for (const auto& [projection, size] : places) {
+  for (const auto& place : places) {
+    const auto& projection = place.first;
+    const double size = place.second;
     const auto m = azimuthal_mesh(projection, 12, 16, size, 3 * size, -0.25 * size);
     const double expected = size * size / (kRadius_m * kRadius_m);
     double worst = 0;
@@ -123,8 +125,7 @@ TEST_CASE("an equal-area mesh has equal areas on the sphere") {
       worst = std::max(worst, std::abs(m->area(k) / expected - 1));
       CHECK(sphere::area(m->cell(k)) == m->area(k));
     }
-    CAPTURE(size);
-    CAPTURE(projection.phi1_deg);
+    INFO("cells of " << size << " m about latitude " << projection.phi1_deg);
     // Four edges, each within 1e-11 of its halves (whose own error is an eighth or less), and rounding of the corners.
     const double rounding = 8 * 2.2e-16 * 4 * kRadius_m / size;
     CHECK(worst < 4e-11 * 8 / 7 + rounding);
