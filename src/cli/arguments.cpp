@@ -145,7 +145,7 @@ double wait_seconds(const std::string& typed) {
 }
 
 void take_file(const CLI::App& chosen, const std::string& word, Arguments& arguments) {
-  const std::string name = chosen.get_name();
+  const std::string& name = chosen.get_name();
   if (name == "inspect" || name == "vouch")
     arguments.files.push_back(word);
   else if (name != "new" && arguments.job.empty())
@@ -155,7 +155,7 @@ void take_file(const CLI::App& chosen, const std::string& word, Arguments& argum
 }
 
 void check_files(const CLI::App& chosen, const Arguments& arguments) {
-  const std::string name = chosen.get_name();
+  const std::string& name = chosen.get_name();
   if (name == "new") return;
   if (name == "inspect" || name == "vouch") {
     if (arguments.files.empty())

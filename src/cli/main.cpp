@@ -20,7 +20,13 @@
 
 namespace {
 
-using namespace windrow;
+namespace cli = windrow::cli;
+namespace engine = windrow::engine;
+namespace job = windrow::job;
+namespace os = windrow::os;
+using windrow::Error;
+using windrow::Failure;
+using windrow::Notice;
 
 void print(const std::string& text) { std::fwrite(text.data(), 1, text.size(), stdout); }
 void tell(const std::string& text) {

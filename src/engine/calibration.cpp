@@ -45,6 +45,7 @@ std::pair<double, double> possible_range(const job::FieldSpec& field, const std:
 
 std::vector<text::CsvTable> tables(const std::vector<std::string>& paths) {
   std::vector<text::CsvTable> out;
+  out.reserve(paths.size());
   for (const auto& path : paths) out.push_back(text::CsvTable::parse(os::read_text(path), path));
   return out;
 }
@@ -113,6 +114,7 @@ std::vector<Placed> place(const CalibrationNeeds& needs, const std::vector<stati
 std::vector<std::vector<double>> model_series(const CalibrationNeeds& needs, const std::vector<Placed>& placed,
                                               const adjust::Steps& steps, const std::array<double, 12>& lapse) {
   std::vector<std::uint32_t> columns;
+  columns.reserve(placed.size());
   for (const auto& place : placed) columns.push_back(place.column);
   std::sort(columns.begin(), columns.end());
   columns.erase(std::unique(columns.begin(), columns.end()), columns.end());

@@ -71,6 +71,7 @@ pipeline::FillCandidates fill_candidates(const mesh::Mesh& source, const mesh::M
   pipeline::FillCandidates out;
   out.column.assign(target.size() * kPerRow, linear_map::SourceBlock::kNotHeld);
   std::vector<GeoPoint> centres;
+  centres.reserve(columns.size());
   for (const auto c : columns) centres.push_back(source.centre(c));
   std::vector<std::pair<double, std::uint32_t>> near(columns.size());
   for (std::size_t row = 0; row < target.size(); ++row) {

@@ -116,10 +116,10 @@ void add_terrain(List& list, const std::string& prefix, const TerrainSpec& terra
   std::string lapse;
   bool constant = true;
   for (const double value : terrain.lapse_per_m) {
-    lapse += fmt::format("{}{}", lapse.empty() ? "" : ", ", value);
+    lapse += fmt::format("{}{:.12g}", lapse.empty() ? "" : ", ", value);
     constant = constant && value == terrain.lapse_per_m[0];
   }
-  list.add(prefix + "lapse", (constant ? fmt::format("{}", terrain.lapse_per_m[0]) : lapse) + " per metre");
+  list.add(prefix + "lapse", (constant ? fmt::format("{:.12g}", terrain.lapse_per_m[0]) : lapse) + " per metre");
   list.add_path(prefix + "model_height", terrain.model_height);
 }
 

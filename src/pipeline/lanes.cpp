@@ -39,8 +39,9 @@ WINDROW_INLINE double finish_some(const linear_map::RowLanes& row, const FieldMa
   load(sums.m1 + at, m1);
   load(sums.m2 + at, m2);
   weight *= factor;
-  const Wide has = v == v ? one : zero;
-  const Wide x = v == v ? v : zero;
+  // A missing value is a NaN, which equals nothing.
+  const Wide has = v == v ? one : zero;  // NOLINT(misc-redundant-expression)
+  const Wide x = v == v ? v : zero;      // NOLINT(misc-redundant-expression)
   const Wide keep = cover >= zero + need ? has : zero;
   const Wide term = x * weight;
   add_term(sums.high[kKept] + at, sums.low[kKept] + at, m1, m2, keep * term);

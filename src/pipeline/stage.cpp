@@ -133,6 +133,7 @@ class StageRun {
       std::unique_ptr<ColumnWorker> column;
       if (input_.adjust != nullptr) column = std::make_unique<ColumnWorker>(input_, data, cover);
 #pragma omp for schedule(dynamic, 1)
+      // NOLINTNEXTLINE(modernize-loop-convert): OpenMP wants the counted form
       for (std::size_t i = 0; i < units.size(); ++i) {
         if (error_.set()) continue;
         try {
