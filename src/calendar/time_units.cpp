@@ -268,7 +268,8 @@ double TimeUnits::encode(Instant instant) const {
     if (to.day != 1 || floor_mod(instant, kDay) != floor_mod(reference_, kDay) || months % months_per_unit_ != 0) {
       throw Error(Failure::data, place_, fmt::format("{} is no whole number of steps of '{}'", to_string(to), text_));
     }
-    return static_cast<double>(months / months_per_unit_);
+    const std::int64_t steps = months / months_per_unit_;
+    return static_cast<double>(steps);
   }
   const bool utc = calendar_.kind() == Calendar::Kind::utc;
   const Instant past = utc ? utc_elapsed(instant) - utc_elapsed(reference_) : instant - reference_;
