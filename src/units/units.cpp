@@ -83,7 +83,7 @@ Conversion conversion(const std::string& from, const std::string& to, const std:
   };
   const bool to_depth = source_depth && is_depth(target) && library.convertible(source_depth, target);
   const bool to_mass = target_depth && is_depth(source) && library.convertible(source, target_depth);
-  if (!to_depth && !to_mass) throw failure;
+  if (!to_depth && !to_mass) throw Error(failure);
   const auto name = water_name(standard_name, to_depth);
   if (!name) {
     throw Error(Failure::data, place,
