@@ -13,11 +13,11 @@ namespace {
 
 using report::Fact;
 
-// Rough shares of deflated size and rates of one thread, for the estimates; measured with tools/bench on two cores of a
-// 2.4 GHz server. They decide nothing.
+// Rough share of deflated size, and rates of one thread: half of what tools/bench showed with two threads (274 and 84 MB/s,
+// the latter quantile mapping by month on a busy machine). They are told to people and decide nothing.
 constexpr double kDeflatedShare = 0.6;
-constexpr double kTileBytesPerSecond = 250e6;
-constexpr double kColumnBytesPerSecond = 90e6;
+constexpr double kTileBytesPerSecond = 137e6;
+constexpr double kColumnBytesPerSecond = 42e6;
 
 struct Totals {
   double bytes = 0, seconds = 0;
