@@ -1,4 +1,5 @@
 // Geodetic to authalic latitude, so that areas on the unit sphere are areas of the ellipsoid.
+#include <algorithm>
 #include <cmath>
 #include <numbers>
 
@@ -43,6 +44,17 @@ double authalic_latitude_deg(double geodetic_deg, double e2) {
     beta = 90 - Angle::radians(2 * std::asin(std::sqrt(0.5 * lack / q_pole))).degrees();
   }
   return std::copysign(beta, geodetic_deg);
+}
+
+double geodetic_latitude_deg(double authalic_deg, double e2) {
+  // The two differ by about e2 / 2 sin(2 phi) at most: each step gains some two digits.
+  double phi = authalic_deg;
+  for (int step = 0; step < 60 && e2 != 0; ++step) {
+    const double miss = authalic_deg - authalic_latitude_deg(phi, e2);
+    phi = std::clamp(phi + miss, -90.0, 90.0);
+    if (std::abs(miss) < 1e-14) break;
+  }
+  return phi;
 }
 
 }  // namespace windrow::mesh

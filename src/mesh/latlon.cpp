@@ -48,6 +48,11 @@ class LatLonMesh final : public Mesh {
   }
   std::optional<std::size_t> find(GeoPoint point) const override;
   const LatLonEdges* latlon() const override { return &edges_; }
+  bool on_rim(std::size_t index) const override;
+  std::optional<sphere::Vec3> x_direction(std::size_t index) const override {
+    const sphere::SinCos lambda = sphere::sincos_degrees(centre(index).longitude.degrees());
+    return sphere::Vec3{-lambda.sin, lambda.cos, 0};
+  }
   Earth earth() const override { return earth_; }
   codec::Digest digest() const override {
     codec::Hasher hasher;
@@ -111,6 +116,14 @@ void LatLonMesh::cell_into(std::size_t index, sphere::Polygon& out) const {
     box(w, e, south, rows == 1 ? north : middle, out.pieces[k * rows]);
     if (rows == 2) box(w, e, middle, north, out.pieces[k * rows + 1]);
   }
+}
+
+bool LatLonMesh::on_rim(std::size_t index) const {
+  const std::size_t i = index % nx(), j = index / nx();
+  const bool west_or_east = (i == 0 || i + 1 == nx()) && !all_round(edges_);
+  const bool south = j == 0 && edges_.lat_deg.front() > -90;
+  const bool north = j + 1 == ny() && edges_.lat_deg.back() < 90;
+  return west_or_east || south || north;
 }
 
 // Degrees that went through radians and back are off by a few 1e-14 * 360: a point this near an edge is on it.

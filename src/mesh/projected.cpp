@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "projected_edges.h"
+#include "surface.h"
 #include "windrow/base/error.h"
 #include "windrow/codec/codec.h"
 #include "windrow/sphere/area.h"
@@ -53,6 +54,11 @@ class ProjectedMesh final : public Mesh {
     return {Angle::degrees(x[0]), Angle::degrees(y[0])};
   }
   std::optional<std::size_t> find(GeoPoint point) const override;
+  bool on_rim(std::size_t index) const override {
+    const std::size_t j = index / lines_.nx, i = index % lines_.nx;
+    return i == 0 || j == 0 || i + 1 == lines_.nx || j + 1 == lines_.ny;
+  }
+  std::optional<Vec3> x_direction(std::size_t index) const override;
   Earth earth() const override { return earth_; }
   codec::Digest digest() const override {
     codec::Hasher hasher;
@@ -75,6 +81,17 @@ class ProjectedMesh final : public Mesh {
   Earth earth_;
   std::string crs_key_;
 };
+
+std::optional<Vec3> ProjectedMesh::x_direction(std::size_t index) const {
+  const std::size_t j = index / lines_.nx, i = index % lines_.nx;
+  const double middle = 0.5 * (x_[i] + x_[i + 1]);
+  const double step = (x_[i + 1] - x_[i]) / 512;  // bends add the square of this part of a cell, rounding its inverse
+  std::vector<double> x{middle - step, middle, middle + step};
+  std::vector<double> y(3, 0.5 * (y_[j] + y_[j + 1]));
+  to_geographic_(x, y);
+  const auto place = [&](std::size_t k) { return GeoPoint{Angle::degrees(x[k]), Angle::degrees(y[k])}; };
+  return tangent_between(place(0), place(2), place(1), earth_);
+}
 
 void reverse_from(sphere::Loop& loop, std::size_t first) {
   std::reverse(loop.begin() + static_cast<std::ptrdiff_t>(first), loop.end());

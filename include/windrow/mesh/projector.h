@@ -19,5 +19,7 @@ struct Earth {
   static Earth ellipsoid(double semi_major_m, double inverse_flattening);
 };
 double authalic_latitude_deg(double geodetic_deg, double e2);
+/// The way back, within a few eps * 90 degrees.
+double geodetic_latitude_deg(double authalic_deg, double e2);
 
 }  // namespace windrow::mesh
