@@ -20,26 +20,6 @@ struct Sum {
   }
 };
 
-// Cells beyond which the mesh ends. A mesh that closes on itself has no rim there.
-class OuterRim {
- public:
-  explicit OuterRim(const mesh::Mesh& mesh) : ny_(mesh.shape().first), nx_(mesh.shape().second) {
-    if (const mesh::LatLonEdges* edges = mesh.latlon()) {
-      west_east_ = !mesh::all_round(*edges);
-      south_ = edges->lat_deg.front() != -90;
-      north_ = edges->lat_deg.back() != 90;
-    }
-  }
-  [[nodiscard]] bool has(std::size_t index) const {
-    const std::size_t j = index / nx_, i = index % nx_;
-    return (west_east_ && (i == 0 || i == nx_ - 1)) || (south_ && j == 0) || (north_ && j == ny_ - 1);
-  }
-
- private:
-  std::size_t ny_, nx_;
-  bool west_east_ = true, south_ = true, north_ = true;
-};
-
 void note(double residual, double bound, double& worst, double& worst_bound, bool& holds, const char* what,
           std::size_t index) {
   if (residual > worst || worst_bound == 0) {
@@ -58,14 +38,13 @@ void note(double residual, double bound, double& worst, double& worst_bound, boo
 
 Closure check_closure(const std::vector<Rows>& blocks, const mesh::Mesh& source, const mesh::Mesh& target) {
   Closure closure;
-  const OuterRim rim(target);
   std::vector<Sum> column(source.size());
   std::vector<std::uint8_t> open(source.size(), 0);
   std::size_t row = 0;
   for (const Rows& block : blocks) {
     std::size_t p = 0;
     for (std::size_t k = 0; k < block.count.size(); ++k, ++row) {
-      const bool on_rim = rim.has(row);
+      const bool on_rim = target.on_rim(row);
       Sum sum;
       for (std::uint32_t n = 0; n < block.count[k]; ++n, ++p) {
         const Pairing& pairing = block.pairings[p];

@@ -1,96 +1,92 @@
-// From overlaps to a LinearMap: runs of target cells in parallel, put together in order.
+// From overlaps to a LinearMap.
 #include <fmt/format.h>
 
-#include <algorithm>
-#include <exception>
-
 #include "closure.h"
-#include "latlon_pair.h"
-#include "over_latlon.h"
+#include "overlaps.h"
 #include "windrow/base/error.h"
 
 namespace windrow::overlap {
 namespace {
 
-constexpr std::size_t kRun = 2048;  // target cells a task; results do not depend on it
+using linear_map::LinearMap;
+using linear_map::Quantity;
 
-std::vector<Rows> all_rows(std::size_t cells, const auto& rows_of) {
-  std::vector<Rows> blocks((cells + kRun - 1) / kRun);
-  std::vector<std::exception_ptr> failures(blocks.size());
-#pragma omp parallel for schedule(dynamic)
-  for (std::size_t b = 0; b < blocks.size(); ++b) {
-    try {
-      blocks[b] = rows_of(b * kRun, std::min(cells, (b + 1) * kRun));
-    } catch (...) {
-      failures[b] = std::current_exception();
-    }
-  }
-  for (const std::exception_ptr& failure : failures) {
-    if (failure) std::rethrow_exception(failure);
-  }
-  return blocks;
-}
-
-linear_map::LinearMap to_map(std::vector<Rows>& blocks, const mesh::Mesh& source, const mesh::Mesh& target,
-                             linear_map::Quantity quantity) {
-  linear_map::LinearMap map;
+LinearMap start(const mesh::Mesh& source, const mesh::Mesh& target, Quantity quantity, const char* method) {
+  LinearMap map;
   map.quantity = quantity;
-  map.columns = source.size();
-  map.provenance =
-      fmt::format("conservative, piecewise constant; from {}; to {}", source.describe(), target.describe());
-  std::size_t pairings = 0;
-  for (const Rows& block : blocks) pairings += block.pairings.size();
-  map.row_start.reserve(target.size() + 1);
-  map.column.reserve(pairings);
-  map.share.reserve(pairings);
+  map.columns = map.value_columns = source.size();
+  map.provenance = fmt::format("{}; from {}; to {}", method, source.describe(), target.describe());
   for (std::size_t k = 0; k < source.size(); ++k) map.column_area.push_back(source.area(k));
   for (std::size_t k = 0; k < target.size(); ++k) map.row_area.push_back(target.area(k));
   map.row_start.push_back(0);
+  return map;
+}
+
+// Shares of one row: overlaps, and with `moments` two more blocks of columns behind the values.
+void add_row(LinearMap& map, const Pairing* pairings, const Moment* moments, std::size_t count) {
+  const double row_area = map.row_area[map.row_start.size() - 1];
+  const auto whole = [&](std::uint32_t column) {
+    return map.quantity == Quantity::mean ? row_area : map.column_area[column];
+  };
+  for (std::size_t n = 0; n < count; ++n) {
+    map.column.push_back(pairings[n].column);
+    map.share.push_back(pairings[n].area / whole(pairings[n].column));
+  }
+  const auto cells = static_cast<std::uint32_t>(map.value_columns);
+  for (std::size_t along = 0; moments != nullptr && along < 2; ++along) {
+    for (std::size_t n = 0; n < count; ++n) {
+      map.column.push_back(pairings[n].column + cells * static_cast<std::uint32_t>(along + 1));
+      map.share.push_back(moments[n][along] / whole(pairings[n].column));
+    }
+  }
+  map.row_start.push_back(map.column.size());
+}
+
+void fill(LinearMap& map, std::vector<Rows>& blocks) {
+  std::size_t pairings = 0;
+  for (const Rows& block : blocks) pairings += block.pairings.size() + 2 * block.moments.size();
+  map.row_start.reserve(map.row_area.size() + 1);
+  map.column.reserve(pairings);
+  map.share.reserve(pairings);
   for (Rows& block : blocks) {
     std::size_t p = 0;
     for (const std::uint32_t count : block.count) {
-      const double row_area = map.row_area[map.row_start.size() - 1];
-      for (std::uint32_t n = 0; n < count; ++n, ++p) {
-        const Pairing& pairing = block.pairings[p];
-        const double whole = quantity == linear_map::Quantity::mean ? row_area : map.column_area[pairing.column];
-        map.column.push_back(pairing.column);
-        map.share.push_back(pairing.area / whole);
-      }
-      map.row_start.push_back(map.column.size());
+      add_row(map, block.pairings.data() + p, block.moments.empty() ? nullptr : block.moments.data() + p, count);
+      p += count;
     }
     block = {};
   }
-  return map;
 }
 
 }  // namespace
 
-Result conservative(const mesh::Mesh& source, const mesh::Mesh& target, linear_map::Quantity quantity) {
-  if (source.latlon() == nullptr) {
-    throw Error(Failure::data, source.describe(),
-                "is no latitude-longitude grid: conservative regridding reads latitude-longitude sources only");
-  }
-  if (source.size() > std::numeric_limits<std::uint32_t>::max()) {
-    throw Error(Failure::data, source.describe(), "has more cells than a linear map can number (2^32)");
-  }
-  std::vector<Rows> blocks;
-  if (target.latlon() != nullptr) {
-    const LatLonPair pair(source, target);
-    blocks = all_rows(target.size(), [&](std::size_t first, std::size_t last) { return pair.rows(first, last); });
-  } else {
-    const SourceBlock block(source);
-    blocks = all_rows(target.size(),
-                      [&](std::size_t first, std::size_t last) { return over_latlon(block, target, first, last); });
-  }
+Result conservative(const mesh::Mesh& source, const mesh::Mesh& target, Quantity quantity) {
+  std::vector<Rows> blocks = overlaps(source, target, nullptr);
   Result result;
   result.closure = check_closure(blocks, source, target);
-  result.map = to_map(blocks, source, target, quantity);
+  result.map = start(source, target, quantity, "conservative, piecewise constant");
+  fill(result.map, blocks);
+  return result;
+}
+
+Result conservative_linear(const mesh::Mesh& source, const mesh::Mesh& target, Quantity quantity) {
+  constexpr std::size_t kMostCells = 0xffffffffU / 3;
+  if (source.size() > kMostCells) {
+    throw Error(Failure::data, source.describe(), "has more cells than a map with gradients can number (2^32 / 3)");
+  }
+  const Centroids centre = centroids(source);
+  std::vector<Rows> blocks = overlaps(source, target, &centre);
+  Result result;
+  result.closure = check_closure(blocks, source, target);
+  result.map = start(source, target, quantity, "conservative, piecewise linear");
+  result.map.columns = 3 * source.size();
+  fill(result.map, blocks);
   return result;
 }
 
 linear_map::LinearMap containing(const mesh::Mesh& source, const std::vector<GeoPoint>& points) {
   linear_map::LinearMap map;
-  map.columns = source.size();
+  map.columns = map.value_columns = source.size();
   map.provenance = fmt::format("containing cell; from {}; to {} points", source.describe(), points.size());
   map.row_start.push_back(0);
   for (const GeoPoint& point : points) {

@@ -18,39 +18,27 @@ bool holds(const Wedge& wedge, const Band& band, const Outline& outline) {
          (!band.has_north || side_of(band.south_of_north, outline) == Side::inside);
 }
 
-void outline_of(const Piece& piece, Outline& out) {
-  out.points.clear();
-  out.margin = 0;
-  for (const sphere::Loop& loop : piece.loops) {
-    for (const sphere::Arc& arc : loop) {
-      out.points.push_back(arc.from);
-      out.margin = std::max(out.margin, arc.circle.radius * arc.dtheta * arc.dtheta / 8);  // >= its sagitta
-    }
-  }
-}
-
 class CellOverlap {
  public:
-  CellOverlap(const SourceBlock& source, const mesh::Mesh& target) : source_(source), target_(target) {}
+  CellOverlap(const SourceBlock& source, const mesh::Mesh& target, const MomentFrame& frame)
+      : source_(source), target_(target), moments_(frame.source != nullptr), found_(frame) {}
 
   void add(std::size_t index, Rows& rows) {
-    if (hinted_ && inside_hint(index)) {
+    if (hinted_ && !moments_ && inside_hint(index)) {
       rows.count.push_back(1);
       rows.pairings.push_back({column(hint_wedge_, hint_band_), target_.area(index)});
       rows.covered.push_back(1);
       rows.bound.push_back(0);  // one pairing, of the cell's own area
       return;
     }
-    found_.clear();
+    row_ = index;
     bool covered = true;
     target_.cell_into(index, polygon_);
     for (const Piece& piece : polygon_.pieces) {
       covered = add_piece(piece, polygon_.pieces.size() == 1 ? target_.area(index) : signed_area(piece)) && covered;
     }
     const double perimeter = sphere::perimeter(polygon_);
-    const std::size_t before = rows.pairings.size();
-    merge(kSliver * perimeter, rows.pairings);
-    rows.count.push_back(static_cast<std::uint32_t>(rows.pairings.size() - before));
+    found_.close_row(kSliver * perimeter, rows);
     rows.covered.push_back(covered ? 1 : 0);
     rows.bound.push_back(closure_bound(perimeter, target_.area(index)));
   }
@@ -90,14 +78,14 @@ class CellOverlap {
         if (part != nullptr && band.has_north) part = cut(*part, outline, band.south_of_north, whole_band_, banded);
         if (part == nullptr) continue;
         if (!banded) {  // certified inside this one source cell: anything else found is rounding
-          found_.resize(before);
-          found_.push_back({column(w, b), area});
+          found_.shrink(before);
+          found_.add(piece, area, row_, column(w, b));
           hinted_ = true;
           hint_wedge_ = w;
           hint_band_ = b;
           return true;
         }
-        found_.push_back({column(w, b), signed_area(*part)});
+        found_.add(*part, signed_area(*part), row_, column(w, b));
       }
     }
     return candidates_.covered;
@@ -115,33 +103,25 @@ class CellOverlap {
     return out.loops.empty() ? nullptr : &out;
   }
 
-  void merge(double sliver, std::vector<Pairing>& out) {
-    std::stable_sort(found_.begin(), found_.end(),
-                     [](const Pairing& a, const Pairing& b) { return a.column < b.column; });
-    for (std::size_t k = 0; k < found_.size();) {
-      Pairing sum = found_[k];
-      for (++k; k < found_.size() && found_[k].column == sum.column; ++k) sum.area += found_[k].area;
-      if (sum.area > sliver) out.push_back(sum);
-    }
-  }
-
   const SourceBlock& source_;
   const mesh::Mesh& target_;
-  bool hinted_ = false;
+  bool moments_, hinted_ = false;
+  std::size_t row_ = 0;
   std::uint32_t hint_wedge_ = 0, hint_band_ = 0;
   Outline outline_, wedge_outline_;
   Candidates candidates_;
   sphere::Polygon polygon_;
   Piece half_wedge_, whole_wedge_, half_band_, whole_band_;
-  std::vector<Pairing> found_;
+  Found found_;
 };
 
 }  // namespace
 
-Rows over_latlon(const SourceBlock& source, const mesh::Mesh& target, std::size_t first, std::size_t last) {
+Rows over_latlon(const SourceBlock& block, const mesh::Mesh& cells, const MomentFrame& frame, std::size_t first,
+                 std::size_t last) {
   Rows rows;
-  CellOverlap cells(source, target);
-  for (std::size_t index = first; index < last; ++index) cells.add(index, rows);
+  CellOverlap overlap(block, cells, frame);
+  for (std::size_t index = first; index < last; ++index) overlap.add(index, rows);
   return rows;
 }
 

@@ -5,7 +5,9 @@
 
 namespace windrow::overlap {
 
-/// Overlaps of target cells [first, last). Pure: neighbouring runs may be worked on at the same time.
-Rows over_latlon(const SourceBlock& source, const mesh::Mesh& target, std::size_t first, std::size_t last);
+/// Overlaps of cells [first, last) of `cells` (rows) with those of `block` (columns). Pure: neighbouring runs may be
+/// worked on at the same time.
+Rows over_latlon(const SourceBlock& block, const mesh::Mesh& cells, const MomentFrame& frame, std::size_t first,
+                 std::size_t last);
 
 }  // namespace windrow::overlap

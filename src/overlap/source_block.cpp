@@ -17,19 +17,6 @@ constexpr double kOutward_deg = 1e-9;
 
 }  // namespace
 
-Side side_of(const sphere::Circle& half_space, const Outline& outline) {
-  double lowest = 4;
-  double highest = -4;
-  for (const Vec3& p : outline.points) {
-    const double h = sphere::height(half_space, p);
-    lowest = std::min(lowest, h);
-    highest = std::max(highest, h);
-  }
-  if (lowest >= outline.margin) return Side::inside;
-  if (highest <= -outline.margin) return Side::outside;
-  return Side::across;
-}
-
 SourceBlock::SourceBlock(const mesh::Mesh& source) {
   const mesh::LatLonEdges& edges = *source.latlon();
   const double e2 = source.earth().e2;

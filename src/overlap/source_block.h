@@ -3,19 +3,10 @@
 #include <cstdint>
 #include <vector>
 
+#include "outline.h"
 #include "windrow/mesh/mesh.h"
 
 namespace windrow::overlap {
-
-/// Points and a margin: a region's boundary is within `margin` of the convex hull of the points.
-struct Outline {
-  std::vector<sphere::Vec3> points;
-  double margin = 0;
-};
-
-/// Where an outline is with respect to a half-space; `across` also when the margin leaves it open.
-enum class Side { inside, outside, across };
-Side side_of(const sphere::Circle& half_space, const Outline& outline);
 
 /// Part of a source column at most 90 degrees wide, as two half-spaces.
 struct Wedge {

@@ -167,7 +167,7 @@ ReachMap make_reach(const std::vector<GeoPoint>& stations, const std::vector<Geo
     }
   }
   ReachMap reach;
-  reach.map.columns = stations.size();
+  reach.map.columns = reach.map.value_columns = stations.size();
   reach.map.provenance = options.method == Method::nearest ? "reach: nearest station" : "reach: inverse distance";
   reach.map.row_start.reserve(cells.size() + 1);
   reach.map.row_start.push_back(0);

@@ -41,6 +41,13 @@ Vec3 fan_apex(const Loop& loop) {
   return norm(sum) > 0 ? unit(sum) : first;
 }
 
+// theta - sin(theta) without loss on short arcs; at 0.5 rad the first term left out is 1e-18 of the result.
+double angle_less_sine(double theta) {
+  if (std::abs(theta) > 0.5) return theta - std::sin(theta);
+  const double t2 = theta * theta;
+  return theta * t2 / 6 * (1 - t2 / 20 * (1 - t2 / 42 * (1 - t2 / 72 * (1 - t2 / 110 * (1 - t2 / 156 * (1 - t2 / 210))))));
+}
+
 double edge_length(const Piece& piece) {
   double length = 0;
   for (const Loop& loop : piece.loops) {
@@ -110,6 +117,17 @@ double area(const Polygon& polygon) {
     total += std::max(0.0, sum);
   }
   return total;
+}
+
+Vec3 moment(const Piece& piece, const Vec3& origin) {
+  Vec3 sum;
+  for (const Loop& loop : piece.loops) {
+    for (const Arc& arc : loop) {
+      const Circle& c = arc.circle;
+      sum = sum + cross(arc.from - origin, arc.to - origin) + (c.radius * c.radius * angle_less_sine(arc.dtheta)) * c.n;
+    }
+  }
+  return 0.5 * sum;
 }
 
 double perimeter(const Polygon& polygon) {

@@ -3,14 +3,17 @@
 #pragma once
 #include <array>
 #include <cstddef>
+#include <cstdint>
 #include <memory>
 #include <mutex>
 #include <optional>
 #include <string>
 #include <vector>
 
+#include "windrow/base/angle.h"
 #include "windrow/base/notices.h"
 #include "windrow/calendar/calendar.h"
+#include "windrow/mesh/cell_records.h"
 #include "windrow/mesh/latlon_edges.h"
 
 namespace windrow::cf {
@@ -36,11 +39,43 @@ struct FileSpan {
   std::size_t first = 0, count = 0;  ///< steps of the run's axis this file holds
 };
 
-/// A horizontal grid as recognised, with the way from mesh cells to array positions.
+enum class GridKind : std::uint8_t {
+  latlon,     ///< `edges`
+  rotated,    ///< `edges` in the frame of `rotation`
+  projected,  ///< `x_edges`, `y_edges` in `axis_units` of the CRS that `mapping` describes
+  cells,      ///< `corners`, `sides`: curvilinear, listed with vertices, reduced
+  faces,      ///< `faces`: UGRID
+  healpix,    ///< `healpix`
+  points      ///< `points`: stations or an area mean without extent; no cells
+};
+
+/// A horizontal grid as recognised: plain records from which a mesh is made. Only what the kind names is filled.
 struct Grid {
-  mesh::LatLonEdges edges;    ///< ascending
-  std::string how;            ///< one line: "Gaussian N48, edges from quadrature weights (no bounds in the file)"
+  GridKind kind = GridKind::latlon;
+  mesh::LatLonEdges edges;              ///< ascending
+  mesh::Rotation rotation;
+  std::vector<double> x_edges, y_edges;  ///< ascending
+  std::string axis_units;                ///< as the file (or the job's hint) says: "m", "km", "radian"
+  std::string crs;                       ///< CRS the job's hint gives instead of a mapping
+  std::vector<Attribute> mapping;        ///< attributes of the grid mapping variable, crs_wkt among them; may be empty
+  mesh::CellCorners corners;
+  mesh::Sides sides = mesh::Sides::great_circles;
+  mesh::FaceNodes faces;
+  std::vector<mesh::HealpixCell> healpix;
+  std::vector<GeoPoint> points;
+  std::vector<std::uint32_t> subset;  ///< the data have only these cells of the grid above, in this order; empty: all
+  std::string how;  ///< one line: "Gaussian N48, edges from quadrature weights (no bounds in the file)"
+  std::string why;  ///< one line: what in the metadata decided: "coordinate variables 'lat' (degrees_north), ..."
   bool gaussian = false;
+};
+
+/// What a job says about a run's grid where its files do not.
+struct GridHints {
+  std::string crs;                            ///< of projected axes without a grid mapping
+  std::optional<std::array<double, 2>> pole;  ///< longitude, latitude of a rotated grid's north pole
+  std::string axis_units;                     ///< of projected axes without units
+  std::string coordinates;                    ///< another file that holds the coordinates (and bounds)
+  std::string sides;                          ///< "great-circles" or "parallels"
 };
 
 struct VariableInfo {
@@ -70,10 +105,11 @@ class RunVariable {
 /// Opens `variable` in `paths` (already globbed) as one run. Files are sorted by their first time. Overlapping files:
 /// identical time stamps are taken once from the file that starts later, and reported; a gap is reported.
 /// Fixed fields (no time axis) need exactly one file. Odd but unambiguous metadata goes to `notices`; what cannot be
-/// understood is Error(data): variable missing (near miss named), no latitude-longitude axes, axis not monotonic,
-/// unknown calendar or units, truncated file (size against header), files on different grids.
+/// understood is Error(data): variable missing (near miss named), a grid that cannot be recognised or cells that cannot
+/// be inferred (naming the key of the job's `grid = {...}` that would settle it), axis not monotonic, unknown calendar or
+/// units, truncated file (size against header), files on different grids.
 std::unique_ptr<RunVariable> open_run(const std::vector<std::string>& paths, const std::string& variable,
-                                      Notices& notices);
+                                      Notices& notices, const GridHints& hints = {});
 
 /// What a file holds, for `inspect`: the names of its data variables (not coordinates, bounds, grid mappings).
 std::vector<std::string> data_variables(const std::string& path);

@@ -35,4 +35,12 @@ struct Crs {
 /// north. Network access is off.
 Crs make_crs(const std::string& definition, const std::string& place);
 
+/// The CRS of a file's grid mapping (CF 1.13 appendix F): from its single attributes, or from `crs_wkt` where those name
+/// no mapping PROJ can express; both given and different is Error(data) naming what differs. Its projectors take
+/// coordinates in `axis_units` ("m", "km", "radian" of a geostationary scan angle, ...). Error(data) at `place`: unknown
+/// mapping, an attribute missing or not a number, no datum where none can be guessed (what to add is said).
+Crs crs_from_mapping(const GridMapping& mapping, const std::string& axis_units, const std::string& place);
+/// The same for a CRS given as text.
+Crs crs_with_units(const std::string& definition, const std::string& axis_units, const std::string& place);
+
 }  // namespace windrow::geo

@@ -13,14 +13,23 @@
 
 namespace windrow::job {
 
+/// `grid = {...}` under [[run]]: what the files do not say about their grid.
+struct GridSpec {
+  std::string crs, axis_units, coordinates, sides;  ///< coordinates: path
+  std::optional<std::array<double, 2>> pole;        ///< longitude, latitude of the rotated north pole
+};
+
 struct RunSpec {
   std::string name, family, forcing;
   bool anchor = false;  ///< exactly one run a family has it (a family of one is its own anchor)
   std::vector<std::string> patterns;  ///< as written, absolute; globbed later
   std::string land_fraction;          ///< path or empty
+  GridSpec grid;
 };
 
-enum class Method { conservative1 };
+enum class Method { conservative_1, conservative_2, conservative_smooth, bilinear, nearest, majority };
+enum class Pair { none, eastward, northward };
+enum class VectorAxes { east_north, mesh };
 enum class Adjustment { none, mean_shift, mean_ratio, quantile_mapping };
 enum class Form { additive, multiplicative };
 enum class Carry { target, correction };
@@ -47,7 +56,9 @@ struct TerrainSpec {
 
 struct FieldSpec {
   std::string variable, name, units;  ///< units empty: the source's
-  Method method = Method::conservative1;
+  Method method = Method::conservative_1;
+  Pair pair = Pair::none;                   ///< component of a tangent vector; its partner is the other field with a pair
+  VectorAxes axes = VectorAxes::east_north;  ///< what the product's components run along
   bool total = false;
   double min_cover = 0.5, min_land = 0;
   bool fill_nearest = false;
@@ -60,13 +71,18 @@ struct AxisSpec {
   double from = 0, to = 0, step = 0;
   [[nodiscard]] std::vector<double> edges() const;  ///< from + i*step computed as (from*(n-i) + to*i)/n
 };
-enum class MeshKind { latlon, projected };
+enum class MeshKind { latlon, projected, raster, file, catchments, towns, faces };
 struct MeshSpec {
   std::string name;  ///< default "mesh"
   MeshKind kind = MeshKind::latlon;
-  AxisSpec x, y;     ///< lon, lat on latlon meshes
+  AxisSpec x, y;     ///< lon, lat on latlon meshes; x, y on projected ones
   std::string crs;
+  std::string source;          ///< template, from, polygons or sites: the file that holds the cells
+  std::string variable;        ///< file: whose grid; empty: the only one
+  std::string layer, id;       ///< catchments
+  std::string topology;        ///< faces: name of the mesh topology variable; empty: the only one
   std::string height;          ///< path or empty
+  std::string mask;            ///< path or empty: polygons or raster; a cell less than half within is missing
   std::string place, excerpt;  ///< where the job file says so, for errors of the geometry: place, line with a caret
   bool ellipsoid = false;      ///< [mesh] earth = "ellipsoid"
 };
@@ -98,6 +114,7 @@ struct OutputSpec {
   int level = 1;
   int digits = 0;
   std::optional<std::array<int, 3>> tile;  ///< nothing: auto
+  bool csv = false;                        ///< also = ["csv"]: catchments and towns
   std::vector<std::pair<std::string, std::string>> attributes;
 };
 

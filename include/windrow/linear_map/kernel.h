@@ -3,6 +3,7 @@
 #include <array>
 #include <cstddef>
 #include <cstdint>
+#include <limits>
 #include <span>
 #include <vector>
 
@@ -18,12 +19,17 @@ inline constexpr std::size_t kLanes = 8;
 /// the map's row and column areas.
 struct Weights {
   const LinearMap* map = nullptr;
-  std::vector<double> weight;      ///< one a pairing
-  std::vector<double> cover;       ///< one a pairing: overlap / row-cell area, whatever the quantity
+  std::vector<double> weight;      ///< one a pairing; normalises
+  std::vector<double> multiplier;  ///< one a pairing: weight * factor; empty where no pairing has a factor
+  std::vector<double> cover;       ///< one a pairing: overlap / row-cell area, whatever the quantity; 0 for increments
+  std::vector<std::uint64_t> values_end;  ///< one a row: where its value pairings end; empty without increments
   std::vector<double> row_fraction;  ///< row_weight / row share sum (land share); 1 without fractions
   std::vector<std::uint8_t> all_surface;  ///< row fell back to plain shares
+  double not_below = -std::numeric_limits<double>::infinity();  ///< results below it become it (non-negative fields)
+  bool categories = false;  ///< the value with the largest share instead of a mean
 };
-/// `fraction`: one a column in 0..1, or empty. NaN fractions count as 0.
+/// `fraction`: one a value column in 0..1, or empty. NaN fractions count as 0. An increment column takes the fraction of
+/// its source cell: columns beyond value_columns repeat the cells in turn.
 Weights make_weights(const LinearMap& map, std::span<const double> fraction);
 
 /// Source values of some columns, interleaved: value[(block * held + slot) * kLanes + lane], step = block * kLanes + lane.
@@ -49,7 +55,8 @@ struct SourceBlock {
 struct RowLanes {
   std::array<double, kLanes> value;   ///< NaN where no value is present
   std::array<double, kLanes> cover;   ///< share of the cell's area covered by cells that have a value
-  std::array<double, kLanes> weight;  ///< sum of present weights: value * weight * row_area is the integral
+  std::array<double, kLanes> weight;  ///< sum of present weights (of cover, where the map has one): value * weight *
+                                      ///< row_area is the integral
 };
 
 /// One row, one block; all columns of the row must be held. A row with a single pairing of a mean hands the source value on unchanged.

@@ -10,7 +10,9 @@
 #include <vector>
 
 #include "windrow/base/angle.h"
+#include "windrow/base/notices.h"
 #include "windrow/codec/digest.h"
+#include "windrow/mesh/cell_records.h"
 #include "windrow/mesh/latlon_edges.h"
 #include "windrow/mesh/projector.h"
 #include "windrow/sphere/polygon.h"
@@ -44,6 +46,18 @@ class Mesh {
   [[nodiscard]] virtual std::optional<std::size_t> find(GeoPoint point) const = 0;
   /// Set when all cells are latitude-longitude rectangles of one block: allows the analytic shortcut.
   [[nodiscard]] virtual const LatLonEdges* latlon() const { return nullptr; }
+  /// Set when latlon() is meant in a frame turned against the geographic one: rotated-pole grids.
+  [[nodiscard]] virtual const Rotation* rotation() const { return nullptr; }
+  /// May the region this mesh covers end at this cell? Cells that are not on the rim are surrounded by others, so what
+  /// overlaps none but those lies wholly within the mesh. Overlapping cells (catchments) are all on the rim.
+  [[nodiscard]] virtual bool on_rim(std::size_t index) const = 0;
+  /// Unit tangent at the cell's centre along growing x of a structured mesh: what grid-relative vectors refer to. Nothing
+  /// where cells have no such direction.
+  [[nodiscard]] virtual std::optional<sphere::Vec3> x_direction(std::size_t /*index*/) const { return {}; }
+  /// True for polygons drawn by hand (catchments): they may overlap each other and have any number of corners.
+  [[nodiscard]] virtual bool cells_may_overlap() const { return false; }
+  /// False for points (towns): cells without area, which conservative methods cannot reach.
+  [[nodiscard]] virtual bool has_area() const { return true; }
   /// How this mesh's latitudes (those of latlon() too) become latitudes of the unit sphere.
   [[nodiscard]] virtual Earth earth() const { return {}; }
   /// Digest of everything that decides geometry; equal digests mean equal linear maps.
@@ -64,6 +78,53 @@ MeshPtr make_latlon(LatLonEdges edges, const Earth& earth, const std::string& pl
 MeshPtr make_projected(std::vector<double> x_edges, std::vector<double> y_edges, const Projector& to_geographic,
                        const Projector& from_geographic, const Earth& earth, const std::string& crs_key,
                        const std::string& place);
+
+/// Cells between parallels and meridians of a rotated frame: circles too, about the rotated pole. On the sphere only
+/// (earth.e2 == 0; on an ellipsoid they are no circles: use make_projected with rotated_projector). Error(data) as for
+/// make_latlon, or a pole outside the globe. A rotation by nothing gives make_latlon's mesh.
+MeshPtr make_rotated(LatLonEdges edges, const Rotation& rotation, const Earth& earth, const std::string& place);
+Projector rotated_projector(const Rotation& rotation);            ///< rotated degrees -> geographic degrees
+Projector geographic_to_rotated_projector(const Rotation& rotation);
+
+/// Cells listed by their corners. Corners that differ by less than the rounding of their file (1e-4 of the shortest side
+/// and at most `corners.rounding_deg`) become one, so that neighbours share edges to the bit. Repeated corners are
+/// dropped; loops that run clockwise are turned round (noted once). With Sides::parallels a side between two corners of
+/// one latitude runs along it, otherwise all sides are great circles. Error(data) naming the first cell: fewer than
+/// three corners, no area, sides over 90 degrees, a loop that crosses itself (not for quadrilaterals that merely are
+/// concave).
+MeshPtr make_cells(CellCorners corners, Sides sides, const Earth& earth, const std::string& place, Notices& notices);
+
+/// Faces of a UGRID mesh, sides are great circles. Errors as make_cells; a node number out of range too.
+MeshPtr make_faces(const FaceNodes& faces, const Earth& earth, const std::string& place, Notices& notices);
+
+/// HEALPix cells (Gorski et al. 2005, ApJ 622, 759; CF 1.13 appendix F), levels may be mixed. Edges follow the exact
+/// boundaries by circle arcs, split until every cell's area is 4 pi / (12 * 4^level) within 1e-9. The latitude is
+/// authalic: `e2_of_file` (0: sphere) turns it into a geodetic one before `earth` turns that back; equal ones cancel.
+MeshPtr make_healpix(std::vector<HealpixCell> cells, double e2_of_file, const Earth& earth, const std::string& place);
+/// Numbering of CF 1.13 appendix F. Error(data) for a number out of range.
+HealpixCell healpix_from_ring(int level, std::uint64_t ring, const std::string& place);
+HealpixCell healpix_from_nuniq(std::uint64_t nuniq, const std::string& place);
+HealpixCell healpix_from_zuniq(std::uint64_t zuniq, const std::string& place);
+
+/// Polygons with holes and many parts, in coordinates that `to_geographic` understands (degrees: pass an identity); a
+/// straight line of those coordinates becomes circle arcs as for make_projected. Cells may overlap each other. In
+/// geographic coordinates a jump of more than 180 degrees between neighbours means the short way round. Error(data)
+/// names the cell by `names` (one a cell): no area, over half the globe in one part, crosses itself.
+MeshPtr make_polygons(std::vector<PolygonCell> cells, std::vector<std::string> names, const Projector& to_geographic,
+                      const Earth& earth, const std::string& crs_key, const std::string& place);
+
+/// Points without area; has_area() is false, polygons are empty.
+MeshPtr make_points(std::vector<GeoPoint> points, const Earth& earth);
+
+/// Some cells of another mesh, in the order given (gathered grids). All are on the rim unless all their neighbours,
+/// found by `full`'s structure, are among them.
+MeshPtr make_subset(MeshPtr full, std::vector<std::uint32_t> cells);
+
+/// Corners of curvilinear cells from their centres (degrees, ny x nx): inner corners at the mean direction of the four
+/// centres around them, outer ones continued. Error(data) where neighbours are so far apart (over 20 degrees of arc, or
+/// four times the median spacing along that axis) that nothing can be inferred: it names the place and the gap.
+CellCorners infer_corners(const std::vector<double>& centre_lon_deg, const std::vector<double>& centre_lat_deg,
+                          std::size_t ny, std::size_t nx, const std::string& place);
 
 /// Cell edges of a Gaussian grid from its quadrature weights: sin(edge) accumulates weights (standards: weights sum to
 /// 1 per hemisphere). `is_gaussian` compares with the roots of the Legendre polynomial within 2e-4 degrees... callers

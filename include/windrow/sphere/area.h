@@ -25,4 +25,9 @@ double area(const Polygon& polygon);
 /// Length of all edges (rad). Seams between pieces of one polygon count too.
 double perimeter(const Polygon& polygon);
 
+/// First moment: the integral of x dA over the region, from the vector area of its boundary (half the sum of y x dy, y =
+/// x - origin; the gap between an arc and its chord is a plane segment). Along `origin` it is close to the area; across,
+/// it is accurate relative to (extent of the region)³ when `origin` lies in or near it.
+Vec3 moment(const Piece& piece, const Vec3& origin);
+
 }  // namespace windrow::sphere

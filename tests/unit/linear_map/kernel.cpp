@@ -16,7 +16,7 @@ constexpr double kNaN = std::numeric_limits<double>::quiet_NaN();
 
 LinearMap random_map(std::size_t rows, std::size_t columns, std::mt19937_64& random) {
   LinearMap map;
-  map.columns = columns;
+  map.columns = map.value_columns = columns;
   map.row_start = {0};
   for (std::size_t row = 0; row < rows; ++row) {
     const std::size_t count = random() % 5;
@@ -115,7 +115,7 @@ TEST_CASE("a block that holds some columns gives the values of one that holds al
 
 TEST_CASE("missing values are renormalised by the cover: two halves, one missing") {
   LinearMap map;
-  map.columns = 2;
+  map.columns = map.value_columns = 2;
   map.row_start = {0, 2};
   map.column = {0, 1};
   map.share = {0.5, 0.5};
@@ -133,7 +133,7 @@ TEST_CASE("missing values are renormalised by the cover: two halves, one missing
 
 TEST_CASE("a source cell with 5 % land serves its land; without any land the all-surface value stands, flagged") {
   LinearMap map;
-  map.columns = 3;
+  map.columns = map.value_columns = 3;
   map.row_start = {0, 2, 3};
   map.column = {0, 1, 2};
   map.share = {0.5, 0.5, 1.0};
@@ -155,7 +155,7 @@ TEST_CASE("a source cell with 5 % land serves its land; without any land the all
 TEST_CASE("totals are split by the share of the source cell and never renormalised") {
   LinearMap map;
   map.quantity = Quantity::total;
-  map.columns = 1;
+  map.columns = map.value_columns = 1;
   map.row_start = {0, 1, 2};
   map.column = {0, 0};
   map.share = {0.25, 0.75};

@@ -49,7 +49,7 @@ class Memory : public SourceReader {
 linear_map::LinearMap make_map() {
   std::mt19937_64 random(6);
   linear_map::LinearMap map;
-  map.columns = kColumns;
+  map.columns = map.value_columns = kColumns;
   map.row_start = {0};
   for (std::size_t row = 0; row < kNy * kNx; ++row) {
     const auto first = static_cast<std::uint32_t>(random() % (kColumns - 2));

@@ -1,0 +1,25 @@
+// A cell as a signed sum of parts, each the common part of half-spaces: what a region can be clipped by.
+#pragma once
+#include <vector>
+
+#include "outline.h"
+
+namespace windrow::overlap {
+
+/// The points of the cell's neighbourhood that lie in every half-space.
+struct ConvexPart {
+  std::vector<sphere::Circle> sides;
+  double sign = 1;
+};
+
+struct CellParts {
+  std::vector<ConvexPart> parts;
+  std::size_t used = 0;  ///< of `parts`; the rest is memory to be used again
+};
+
+/// A convex piece of one loop is one part. Any other piece, with holes too, is a fan of great-circle triangles about its
+/// first corner (positive or negative as they run) and a lens for each arc that is no great circle: the signs add up to
+/// one inside and to nothing outside. Neighbouring parts share their sides to the bit.
+void convex_parts(const sphere::Polygon& polygon, CellParts& out);
+
+}  // namespace windrow::overlap

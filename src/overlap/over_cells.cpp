@@ -1,0 +1,144 @@
+// One cell after the other against the cells of another mesh near it. Cells of a fine mesh inside the same cell as the
+// one before are certified from their corners alone; only the rest is clipped.
+#include "over_cells.h"
+
+#include <algorithm>
+
+#include "convex.h"
+#include "windrow/sphere/clip.h"
+
+namespace windrow::overlap {
+namespace {
+
+using sphere::Piece;
+
+// Cells of the clipping mesh taken apart, the latest few: neighbours meet the same ones again.
+class PartsStore {
+ public:
+  explicit PartsStore(const mesh::Mesh& mesh) : mesh_(mesh), slots_(kSlots) {}
+  const CellParts& of(std::uint32_t cell) {
+    Slot& slot = slots_[cell % kSlots];
+    if (!slot.held || slot.cell != cell) {
+      mesh_.cell_into(cell, polygon_);
+      convex_parts(polygon_, slot.parts);
+      slot.cell = cell;
+      slot.held = true;
+    }
+    return slot.parts;
+  }
+
+ private:
+  static constexpr std::size_t kSlots = 4096;
+  struct Slot {
+    bool held = false;
+    std::uint32_t cell = 0;
+    CellParts parts;
+  };
+  const mesh::Mesh& mesh_;
+  std::vector<Slot> slots_;
+  sphere::Polygon polygon_;
+};
+
+class CellOverlap {
+ public:
+  CellOverlap(const mesh::Mesh& clip, const mesh::Index& index, const mesh::Mesh& cells, const MomentFrame& frame)
+      : clip_(clip), index_(index), cells_(cells), moments_(frame.source != nullptr), parts_(clip), found_(frame) {}
+
+  void add(std::size_t row, Rows& rows) {
+    if (hinted_ && !moments_ && inside_hint(row)) {
+      rows.count.push_back(1);
+      rows.pairings.push_back({hint_, cells_.area(row)});
+      rows.covered.push_back(1);
+      rows.bound.push_back(0);  // one pairing, of the cell's own area
+      return;
+    }
+    hinted_ = false;
+    cells_.cell_into(row, polygon_);
+    index_.find(mesh::box_of(polygon_), candidates_);
+    const double whole = cells_.area(row);
+    bool covered = polygon_.pieces.size() == 1;  // of several pieces one might lie outside unseen
+    for (const Piece& piece : polygon_.pieces) add_piece(piece, polygon_.pieces.size() == 1 ? whole : 0, row);
+    const double perimeter = sphere::perimeter(polygon_);
+    found_.close_row(kSliver * perimeter, rows);
+    const std::uint32_t count = rows.count.back();
+    for (std::size_t p = rows.pairings.size() - count; p < rows.pairings.size(); ++p) {
+      covered = covered && !clip_.on_rim(rows.pairings[p].column);
+    }
+    rows.covered.push_back(covered && count > 0 ? 1 : 0);
+    rows.bound.push_back(closure_bound(perimeter, whole));
+  }
+
+ private:
+  bool inside_hint(std::size_t row) {
+    const std::optional<mesh::Hull> hull = cells_.hull(row);
+    if (!hull) return false;
+    outline_.points.assign(hull->corner.begin(), hull->corner.end());
+    outline_.margin = hull->margin;
+    const CellParts& parts = parts_.of(hint_);
+    const auto& sides = parts.parts.front().sides;
+    return std::all_of(sides.begin(), sides.end(),
+                       [&](const sphere::Circle& side) { return side_of(side, outline_) == Side::inside; });
+  }
+
+  void add_piece(const Piece& piece, double whole, std::size_t row) {
+    outline_of(piece, outline_);
+    for (const std::uint32_t cell : candidates_) {
+      const CellParts& parts = parts_.of(cell);
+      for (std::size_t k = 0; k < parts.used; ++k) {
+        bool cut = false;
+        const Piece* left = common(piece, parts.parts[k], cut);
+        if (left == nullptr) continue;
+        const double area = cut || whole == 0 ? signed_area(*left) : whole;
+        found_.add(*left, area, row, cell, parts.parts[k].sign);
+        if (cut || parts.used > 1) continue;
+        hinted_ = true;
+        hint_ = cell;
+      }
+    }
+  }
+
+  // The part of the piece within all half-spaces: itself when nothing is cut, null when nothing is left.
+  const Piece* common(const Piece& piece, const ConvexPart& part, bool& cut) {
+    across_.clear();
+    for (const sphere::Circle& side : part.sides) {
+      const Side where = side_of(side, outline_);
+      if (where == Side::outside) return nullptr;
+      if (where == Side::across) across_.push_back(&side);
+    }
+    const Piece* left = &piece;
+    Piece* into = &one_;
+    for (const sphere::Circle* side : across_) {
+      clip(*left, *side, *into);
+      cut = true;
+      if (into->loops.empty()) return nullptr;
+      left = into;
+      into = into == &one_ ? &other_ : &one_;
+    }
+    return left;
+  }
+
+  const mesh::Mesh& clip_;
+  const mesh::Index& index_;
+  const mesh::Mesh& cells_;
+  bool moments_, hinted_ = false;
+  std::uint32_t hint_ = 0;
+  PartsStore parts_;
+  Outline outline_;
+  sphere::Polygon polygon_;
+  std::vector<std::uint32_t> candidates_;
+  std::vector<const sphere::Circle*> across_;
+  Piece one_, other_;
+  Found found_;
+};
+
+}  // namespace
+
+Rows over_cells(const mesh::Mesh& clip, const mesh::Index& index, const mesh::Mesh& cells, const MomentFrame& frame,
+                std::size_t first, std::size_t last) {
+  Rows rows;
+  CellOverlap overlap(clip, index, cells, frame);
+  for (std::size_t row = first; row < last; ++row) overlap.add(row, rows);
+  return rows;
+}
+
+}  // namespace windrow::overlap

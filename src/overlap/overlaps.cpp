@@ -1,0 +1,159 @@
+// Chooses the way: closed form, wedges and bands, or cell against cell; and turns rows into columns where the source's
+// cells were the ones to be clipped.
+#include "overlaps.h"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <exception>
+
+#include "frame_view.h"
+#include "latlon_pair.h"
+#include "over_cells.h"
+#include "over_latlon.h"
+#include "windrow/base/error.h"
+
+namespace windrow::overlap {
+namespace {
+
+constexpr std::size_t kRun = 2048;  // cells a task; results do not depend on it
+
+template <typename RowsOf>
+std::vector<Rows> all_rows(std::size_t cells, const RowsOf& rows_of) {
+  std::vector<Rows> blocks((cells + kRun - 1) / kRun);
+  std::vector<std::exception_ptr> failures(blocks.size());
+#pragma omp parallel for schedule(dynamic)
+  for (std::size_t b = 0; b < blocks.size(); ++b) {
+    try {
+      blocks[b] = rows_of(b * kRun, std::min(cells, (b + 1) * kRun));
+    } catch (...) {
+      failures[b] = std::current_exception();
+    }
+  }
+  for (const std::exception_ptr& failure : failures) {
+    if (failure) std::rethrow_exception(failure);
+  }
+  return blocks;
+}
+
+// Rows of the source's cells become rows of the target's. Sources stay ascending within a row.
+Rows turned(const std::vector<Rows>& blocks, const mesh::Mesh& source, const mesh::Mesh& target) {
+  Rows out;
+  const std::size_t rows = target.size();
+  out.count.assign(rows, 0);
+  for (const Rows& block : blocks) {
+    for (const Pairing& pairing : block.pairings) ++out.count[pairing.column];
+  }
+  std::vector<std::size_t> next(rows, 0);
+  std::size_t all = 0;
+  for (std::size_t row = 0; row < rows; ++row) {
+    next[row] = all;
+    all += out.count[row];
+  }
+  out.pairings.resize(all);
+  out.covered.assign(rows, 1);
+  const bool moments = std::any_of(blocks.begin(), blocks.end(), [](const Rows& b) { return !b.moments.empty(); });
+  if (moments) out.moments.resize(all);
+  std::uint32_t cell = 0;
+  for (const Rows& block : blocks) {
+    std::size_t p = 0;
+    for (const std::uint32_t count : block.count) {
+      const bool open = source.on_rim(cell);
+      for (std::uint32_t n = 0; n < count; ++n, ++p) {
+        const std::uint32_t row = block.pairings[p].column;
+        if (moments) out.moments[next[row]] = block.moments[p];
+        out.pairings[next[row]++] = {cell, block.pairings[p].area};
+        if (open) out.covered[row] = 0;
+      }
+      ++cell;
+    }
+  }
+  for (std::size_t row = 0; row < rows; ++row) {
+    if (out.count[row] == 0) out.covered[row] = 0;
+    out.bound.push_back(closure_bound(target.perimeter(row), target.area(row)));
+  }
+  return out;
+}
+
+bool same_frame(const mesh::Mesh& a, const mesh::Mesh& b) {
+  const mesh::Rotation* ra = a.rotation();
+  const mesh::Rotation* rb = b.rotation();
+  return (ra == nullptr) == (rb == nullptr) && (ra == nullptr || *ra == *rb);
+}
+
+// `cells` against a latitude-longitude block, in the block's own frame.
+std::vector<Rows> against_block(const mesh::Mesh& block, const mesh::Mesh& cells, const MomentFrame& frame) {
+  const SourceBlock wedges(block);
+  if (block.rotation() == nullptr) {
+    return all_rows(cells.size(), [&](std::size_t first, std::size_t last) {
+      return over_latlon(wedges, cells, frame, first, last);
+    });
+  }
+  const FrameView view(cells, *block.rotation());
+  const mesh::Frame into(*block.rotation());
+  Centroids turned_centroids;
+  MomentFrame turned_frame = frame;
+  if (frame.source != nullptr) {
+    for (const auto& v : frame.source->direction) turned_centroids.direction.push_back(into.to_frame(v));
+    for (const auto& v : frame.source->first) turned_centroids.first.push_back(into.to_frame(v));
+    for (const auto& v : frame.source->second) turned_centroids.second.push_back(into.to_frame(v));
+    turned_frame.source = &turned_centroids;
+  }
+  return all_rows(cells.size(), [&](std::size_t first, std::size_t last) {
+    return over_latlon(wedges, view, turned_frame, first, last);
+  });
+}
+
+std::vector<Rows> against_cells(const mesh::Mesh& clip, const mesh::Mesh& cells, const MomentFrame& frame) {
+  const mesh::Index index(clip);
+  return all_rows(cells.size(), [&](std::size_t first, std::size_t last) {
+    return over_cells(clip, index, cells, frame, first, last);
+  });
+}
+
+double mean_area(const mesh::Mesh& mesh) {
+  double sum = 0;
+  const std::size_t step = std::max<std::size_t>(1, mesh.size() / 1000);
+  std::size_t count = 0;
+  for (std::size_t k = 0; k < mesh.size(); k += step, ++count) sum += mesh.area(k);
+  return sum / static_cast<double>(count);
+}
+
+void check(const mesh::Mesh& mesh) {
+  if (!mesh.has_area()) {
+    throw Error(Failure::data, mesh.describe(),
+                "has points without area; expected cells: points take method bilinear or nearest");
+  }
+  if (mesh.size() > std::numeric_limits<std::uint32_t>::max()) {
+    throw Error(Failure::data, mesh.describe(), "has more cells than a linear map can number (2^32)");
+  }
+}
+
+}  // namespace
+
+std::vector<Rows> overlaps(const mesh::Mesh& source, const mesh::Mesh& target, const Centroids* centroids) {
+  check(source);
+  check(target);
+  const bool both = source.latlon() != nullptr && target.latlon() != nullptr;
+  if (both && centroids == nullptr && same_frame(source, target)) {
+    const LatLonPair pair(source, target);
+    return all_rows(target.size(), [&](std::size_t first, std::size_t last) { return pair.rows(first, last); });
+  }
+  // The finer mesh is the one to be clipped: most of its cells lie within one of the other's. Only blocks and convex
+  // cells clip quickly, so polygons of many corners never do.
+  const bool source_finer = mean_area(source) < mean_area(target);
+  const bool target_clips = target.latlon() != nullptr
+                                ? source.latlon() == nullptr || source_finer
+                                : source.latlon() == nullptr && source_finer && !target.cells_may_overlap();
+  const MomentFrame frame{centroids, target_clips};
+  if (!target_clips) {
+    return source.latlon() != nullptr ? against_block(source, target, frame) : against_cells(source, target, frame);
+  }
+  const std::vector<Rows> blocks =
+      target.latlon() != nullptr ? against_block(target, source, frame) : against_cells(target, source, frame);
+  std::vector<Rows> out;
+  out.push_back(turned(blocks, source, target));
+  return out;
+}
+
+}  // namespace windrow::overlap
