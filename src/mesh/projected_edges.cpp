@@ -1,4 +1,4 @@
-// Projecting corners and midpoints, and splitting the edges that one circle does not follow closely enough.
+// Projecting corners and midpoints of a grid; which edges one circle surely follows, and the others split.
 #include "projected_edges.h"
 
 #include <fmt/format.h>
@@ -6,10 +6,9 @@
 #include <algorithm>
 #include <cmath>
 #include <exception>
-#include <limits>
 
+#include "line_arcs.h"
 #include "windrow/base/error.h"
-#include "windrow/sphere/area.h"
 #include "windrow/sphere/clip.h"
 
 namespace windrow::mesh {
@@ -17,29 +16,16 @@ namespace {
 
 using sphere::Vec3;
 
-constexpr double kLensTolerance = 1e-11;  // of a cell's area: design limit for an edge against its halves
 // The estimate that spares most edges the exact test is good to a factor of two or three: leave it ten.
 constexpr double kEstimateTolerance = kLensTolerance / 10;
-constexpr int kMostLevels = 10;
-constexpr double kLongestChord = 0.5;    // arcs stay well under 90 degrees
 constexpr std::size_t kBatch = 1 << 15;  // points a projection call
-
-constexpr double kNoise = 1e-10;  // rad, 0.6 mm: most that a projection may be off between neighbouring points
-
-// Inner points of the level before: the ends of its parts and their middles.
-std::vector<Vec3> every_second(const std::vector<Vec3>& inner) {
-  std::vector<Vec3> out;
-  for (std::size_t k = 1; k < inner.size(); k += 2) out.push_back(inner[k]);
-  return out;
-}
 
 // An edge in mesh coordinates and on the globe.
 struct Edge {
   std::uint64_t number;
   double x0, y0, x1, y1;
   Vec3 from, to;
-  double cell_area;                                         // of the smaller neighbour, roughly
-  double missed = std::numeric_limits<double>::infinity();  // at the level before
+  double cell_area;  // of the smaller neighbour, roughly
 };
 
 class Builder {
@@ -68,7 +54,6 @@ class Builder {
   void bend_edges();
   [[nodiscard]] bool surely_one_circle(std::uint64_t number) const;
   void split_edges();
-  [[nodiscard]] static double missed(const Edge& e, const std::vector<Vec3>& now, const std::vector<Vec3>& finer);
   [[noreturn]] void refuse(double x, double y) const {
     throw Error(Failure::data, place_,
                 fmt::format("the mesh reaches beyond its projection: x = {}, y = {} has no place on the globe", x, y));
@@ -201,70 +186,33 @@ bool Builder::surely_one_circle(std::uint64_t number) const {
   return missed <= kEstimateTolerance * e.cell_area;  // false for NaN
 }
 
-// `now`: inner points of the edge at one level; `finer`: at the next. The area between them, part by part.
-double Builder::missed(const Edge& e, const std::vector<Vec3>& now, const std::vector<Vec3>& finer) {
-  const auto point = [&](const std::vector<Vec3>& inner, std::size_t k) -> const Vec3& {
-    return k == 0 ? e.from : k == inner.size() + 1 ? e.to : inner[k - 1];
-  };
-  const auto lens = [](const Vec3& a, const Vec3& m, const Vec3& b) {
-    if (norm(b - a) <= sphere::kOnCircle) return 0.0;
-    const sphere::Arc arc = arc_through(a, b, tilt_through(a, m, b));
-    return sphere::lens_area(arc.circle, arc.dtheta);
-  };
-  double sum = 0;
-  for (std::size_t k = 0; k + 2 <= now.size() + 1; k += 2) {
-    const Vec3 &a = point(now, k), &m = point(now, k + 1), &b = point(now, k + 2);
-    if (!(norm(b - a) < kLongestChord)) return std::numeric_limits<double>::infinity();
-    const double halves = lens(a, point(finer, 2 * k + 1), m) + lens(m, point(finer, 2 * k + 3), b);
-    sum += std::abs(lens(a, m, b) - halves - sphere::triangle_area(a, m, b));
-  }
-  return sum;
-}
-
 void Builder::split_edges() {
   std::vector<std::uint8_t> sure(lines_.edges());
 #pragma omp parallel for schedule(static)
   for (std::size_t k = 0; k < sure.size(); ++k) sure[k] = surely_one_circle(k) ? 1 : 0;
   off_middle_ = {};
-  std::vector<Edge> open;
+  std::vector<OpenLine> open;
   for (std::size_t k = 0; k < sure.size(); ++k) {
-    if (!sure[k]) open.push_back(edge(k));
+    if (sure[k]) continue;
+    const Edge e = edge(k);
+    open.push_back({k, e.from, e.to, e.cell_area});
   }
-  for (int level = 0; !open.empty(); ++level) {
-    // Level L has 2^L parts and as many middles: 2^(L+1) - 1 inner points.
-    const std::size_t inner = (std::size_t{2} << level) - 1;
-    const std::size_t next = 2 * inner + 1;
-    const std::vector<Vec3> points = project_all(open.size() * next, [&](std::size_t k) {
-      const Edge& e = open[k / next];
-      const double f = static_cast<double>(k % next + 1) / static_cast<double>(next + 1);
+  const auto place = [&](const std::vector<OpenLine>& lines, std::size_t inner) {
+    return project_all(lines.size() * inner, [&](std::size_t k) {
+      const Edge e = edge(lines[k / inner].number);
+      const double f = static_cast<double>(k % inner + 1) / static_cast<double>(inner + 1);
       return std::pair(e.x0 + f * (e.x1 - e.x0), e.y0 + f * (e.y1 - e.y0));
     });
-    std::vector<Edge> still;
-    for (std::size_t k = 0; k < open.size(); ++k) {
-      const auto first = points.begin() + static_cast<std::ptrdiff_t>(k * next);
-      const std::vector<Vec3> finer(first, first + static_cast<std::ptrdiff_t>(next));
-      std::vector<Vec3> now;
-      for (std::size_t m = 1; m < next; m += 2) now.push_back(finer[m]);
-      const Edge& e = open[k];
-      const double area = missed(e, now, finer);
-      // A smooth line misses ever less; where halving does not help, only the projection's own rounding is left, which
-      // on cells of some metres exceeds the criterion. The level before is as good then.
-      const bool noise = area > 0.5 * e.missed && area <= kNoise * norm(e.to - e.from);
-      if (area <= kLensTolerance * e.cell_area) {
-        if (level > 0) lines_.split.emplace(e.number, std::move(now));
-      } else if (noise) {
-        if (level > 1) lines_.split.emplace(e.number, every_second(now));
-      } else {
-        still.push_back(e);
-        still.back().missed = area;
-      }
-    }
-    open = std::move(still);
-    if (level == kMostLevels && !open.empty()) {
-      throw Error(Failure::data, place_,
-                  fmt::format("the cell edge from x = {}, y = {} to x = {}, y = {} is no smooth line on the globe",
-                              open.front().x0, open.front().y0, open.front().x1, open.front().y1));
-    }
+  };
+  const auto take = [&](std::uint64_t number, std::vector<Vec3> inner) {
+    if (inner.size() > 1) lines_.split.emplace(number, std::move(inner));  // else the tilt says it all
+  };
+  const std::vector<OpenLine> rough = split_lines(std::move(open), place, take);
+  if (!rough.empty()) {
+    const Edge e = edge(rough.front().number);
+    throw Error(Failure::data, place_,
+                fmt::format("the cell edge from x = {}, y = {} to x = {}, y = {} is no smooth line on the globe", e.x0,
+                            e.y0, e.x1, e.y1));
   }
 }
 
@@ -279,13 +227,7 @@ void ProjectedLines::arcs(std::uint64_t edge, const Vec3& from, const Vec3& to, 
   if (!split.empty()) {
     const auto found = split.find(edge);
     if (found != split.end()) {
-      const std::vector<Vec3>& inner = found->second;
-      Vec3 a = from;
-      for (std::size_t k = 0; k < inner.size(); k += 2) {
-        const Vec3 b = k + 1 < inner.size() ? inner[k + 1] : to;
-        if (norm(b - a) > sphere::kOnCircle) out.push_back(arc_through(a, b, tilt_through(a, inner[k], b)));
-        a = b;
-      }
+      append_arcs(from, found->second.data(), found->second.size(), to, out);
       return;
     }
   }

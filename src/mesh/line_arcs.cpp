@@ -1,0 +1,85 @@
+// The lens criterion: an arc is compared with the arcs of its halves, and where halving no longer helps, with noise.
+#include "line_arcs.h"
+
+#include <cmath>
+
+#include "windrow/sphere/area.h"
+#include "windrow/sphere/clip.h"
+
+namespace windrow::mesh {
+namespace {
+
+using sphere::Vec3;
+
+constexpr int kMostLevels = 10;
+constexpr double kNoise = 1e-10;  // rad, 0.6 mm: most that a projection may be off between neighbouring points
+
+// Inner points of the level before: the ends of its parts and their middles.
+std::vector<Vec3> every_second(const std::vector<Vec3>& inner) {
+  std::vector<Vec3> out;
+  for (std::size_t k = 1; k < inner.size(); k += 2) out.push_back(inner[k]);
+  return out;
+}
+
+// `now`: inner points of the line at one level; `finer`: at the next. The area between them, part by part.
+double missed_area(const OpenLine& line, const std::vector<Vec3>& now, const std::vector<Vec3>& finer) {
+  const auto point = [&](const std::vector<Vec3>& inner, std::size_t k) -> const Vec3& {
+    return k == 0 ? line.from : k == inner.size() + 1 ? line.to : inner[k - 1];
+  };
+  const auto lens = [](const Vec3& a, const Vec3& m, const Vec3& b) {
+    if (norm(b - a) <= sphere::kOnCircle) return 0.0;
+    const sphere::Arc arc = arc_through(a, b, tilt_through(a, m, b));
+    return sphere::lens_area(arc.circle, arc.dtheta);
+  };
+  double sum = 0;
+  for (std::size_t k = 0; k + 2 <= now.size() + 1; k += 2) {
+    const Vec3 &a = point(now, k), &m = point(now, k + 1), &b = point(now, k + 2);
+    if (!(norm(b - a) < kLongestChord)) return std::numeric_limits<double>::infinity();
+    const double halves = lens(a, point(finer, 2 * k + 1), m) + lens(m, point(finer, 2 * k + 3), b);
+    sum += std::abs(lens(a, m, b) - halves - sphere::triangle_area(a, m, b));
+  }
+  return sum;
+}
+
+}  // namespace
+
+std::vector<OpenLine> split_lines(std::vector<OpenLine> open, const PlacePoints& place, const TakeLine& take) {
+  for (int level = 0; !open.empty() && level <= kMostLevels; ++level) {
+    // Level L has 2^L parts and as many middles: 2^(L+1) - 1 inner points.
+    const std::size_t inner = (std::size_t{2} << level) - 1;
+    const std::size_t next = 2 * inner + 1;
+    const std::vector<Vec3> points = place(open, next);
+    std::vector<OpenLine> still;
+    for (std::size_t k = 0; k < open.size(); ++k) {
+      const auto first = points.begin() + static_cast<std::ptrdiff_t>(k * next);
+      const std::vector<Vec3> finer(first, first + static_cast<std::ptrdiff_t>(next));
+      std::vector<Vec3> now = every_second(finer);
+      const OpenLine& line = open[k];
+      const double area = missed_area(line, now, finer);
+      // A smooth line misses ever less; where halving does not help, only the projection's own rounding is left, which
+      // on cells of some metres exceeds the criterion. The level before is as good then.
+      const bool noise = area > 0.5 * line.missed && area <= kNoise * norm(line.to - line.from);
+      if (area <= kLensTolerance * line.cell_area) {
+        take(line.number, std::move(now));
+      } else if (noise) {
+        take(line.number, every_second(now));
+      } else {
+        still.push_back(line);
+        still.back().missed = area;
+      }
+    }
+    open = std::move(still);
+  }
+  return open;
+}
+
+void append_arcs(const Vec3& from, const Vec3* inner, std::size_t count, const Vec3& to, sphere::Loop& out) {
+  Vec3 a = from;
+  for (std::size_t k = 0; k < count; k += 2) {
+    const Vec3 b = k + 1 < count ? inner[k + 1] : to;
+    if (norm(b - a) > sphere::kOnCircle) out.push_back(arc_through(a, b, tilt_through(a, inner[k], b)));
+    a = b;
+  }
+}
+
+}  // namespace windrow::mesh
