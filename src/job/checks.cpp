@@ -64,7 +64,8 @@ void check_fields(const Tables& tables, const JobSpec& job) {
                    fmt::format("two fields are called '{}'; expected a 'name' of its own for each", field.name));
     if (field.adjust.method != Adjustment::none && !job.stations.given)
       table.fail("adjust", "[field.adjust] needs observations; expected a table [stations]");
-    if (field.terrain && job.mesh.height.empty())
+    // Towns bring the elevations of their table of sites.
+    if (field.terrain && job.mesh.height.empty() && job.mesh.kind != MeshKind::towns)
       table.fail("terrain", "[field.terrain] needs the mesh's heights; expected 'height' in [mesh]");
     const bool land =
         std::any_of(job.runs.begin(), job.runs.end(), [](const RunSpec& run) { return !run.land_fraction.empty(); });

@@ -1,4 +1,5 @@
-// Rules that concern several tables of the job file: names, families, products told apart, what an adjustment needs.
+// Rules that concern several keys or tables of the job file: names, families, products told apart, what an adjustment
+// needs; what a regridding method, a vector pair and a kind of mesh go with (checks_methods.cpp).
 #pragma once
 #include <vector>
 
@@ -17,6 +18,10 @@ struct Tables {
 /// exactly one anchor.
 void settle_runs(const Tables& tables, JobSpec& job);
 void check_fields(const Tables& tables, const JobSpec& job);
+/// Methods against quantity, adjustment and kind of mesh.
+void check_methods(const Tables& tables, const JobSpec& job);
+/// One eastward and one northward field that are regridded alike, or none.
+void check_pairs(const Tables& tables, const JobSpec& job);
 /// Every field of every run has a product name of its own.
 void check_products(const Document& document, const Tables& tables, const JobSpec& job);
 

@@ -50,7 +50,6 @@ JobSpec parse_job(const std::string& path, const std::string& text, const std::v
   for (const Table& table : tables.runs) job.runs.push_back(read_run(table));
   tables.fields = table_list(root, "field", kFieldKeys, "a table [[field]] with 'variable'");
   for (const Table& table : tables.fields) job.fields.push_back(read_field(table));
-  if (const Value* value = root.find("mesh")) refuse_later_kind(document, *value);
   const auto mesh = root.table("mesh", "[mesh]", kMeshKeys);
   if (!mesh) document.fail({}, "the job has no [mesh]; expected a table [mesh] with 'lon' and 'lat'");
   job.mesh = read_mesh(*mesh);
@@ -59,12 +58,14 @@ JobSpec parse_job(const std::string& path, const std::string& text, const std::v
   tables.output = root.table("output", "[output]", kOutputKeys);
   if (tables.output) {
     const std::string directory = job.output.directory;
-    job.output = read_output(*tables.output);
+    job.output = read_output(*tables.output, job.mesh.kind);
     if (job.output.directory.empty()) job.output.directory = directory;
   }
 
   settle_runs(tables, job);
   check_fields(tables, job);
+  check_methods(tables, job);
+  check_pairs(tables, job);
   check_products(document, tables, job);
   return job;
 }

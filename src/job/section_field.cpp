@@ -10,16 +10,24 @@
 
 namespace windrow::job {
 
-const Keys kFieldKeys{
-    {"variable", "name", "units", "method", "quantity", "min_cover", "min_land", "fill", "range", "adjust", "terrain"},
-    {"pair", "axes", "vertical"}};
+const Keys kFieldKeys{{"variable", "name", "units", "method", "quantity", "min_cover", "min_land", "fill", "range",
+                       "pair", "axes", "adjust", "terrain"},
+                      {"vertical"}};
 
 namespace {
 
-// Variables that every product has of its own.
-const std::vector<std::string> kTaken{"time",   "lat",    "lon",       "x",          "y",
-                                      "crs",    "cover",  "cell_area", "lat_bnds",   "lon_bnds",
-                                      "x_bnds", "y_bnds", "time_bnds", "status_flag"};
+const std::vector<std::pair<std::string, Method>> kMethods{{"conservative-1", Method::conservative_1},
+                                                           {"conservative-2", Method::conservative_2},
+                                                           {"conservative-smooth", Method::conservative_smooth},
+                                                           {"bilinear", Method::bilinear},
+                                                           {"nearest", Method::nearest},
+                                                           {"majority", Method::majority}};
+
+// Dimensions and variables that products have of their own.
+const std::vector<std::string> kTaken{"time",      "lat",         "lon",      "x",        "y",         "crs",
+                                      "cover",     "cell_area",   "lat_bnds", "lon_bnds", "x_bnds",    "y_bnds",
+                                      "time_bnds", "status_flag", "rlat",     "rlon",     "rlat_bnds", "rlon_bnds",
+                                      "catchment", "town",        "face",     "mesh"};
 
 void check_variable_name(const Table& table, const FieldSpec& field) {
   const std::string key = table.has("name") ? "name" : "variable";
@@ -32,7 +40,7 @@ void check_variable_name(const Table& table, const FieldSpec& field) {
                                 "and '_', a letter first",
                                 printable(name)));
   if (std::find(kTaken.begin(), kTaken.end(), name) != kTaken.end())
-    table.fail(key, fmt::format("'{}' is a variable that every product has; expected another 'name'", name));
+    table.fail(key, fmt::format("'{}' is a name that products use themselves; expected another 'name'", name));
 }
 
 }  // namespace
@@ -47,6 +55,8 @@ void check_units(const Table& table, const std::string& key) {
                                 printable(*written)));
 }
 
+std::string method_word(Method method) { return kMethods[static_cast<std::size_t>(method)].first; }
+
 FieldSpec read_field(const Table& table) {
   FieldSpec field;
   const std::optional<std::string> variable = table.text("variable");
@@ -58,10 +68,7 @@ FieldSpec read_field(const Table& table) {
   check_variable_name(table, field);
   field.units = table.text("units", "");
   check_units(table, "units");
-  field.method = table.word<Method>("method",
-                                    {{{"conservative-1", Method::conservative1}},
-                                     {"conservative-2", "conservative-smooth", "bilinear", "nearest", "majority"}},
-                                    Method::conservative1);
+  field.method = table.word<Method>("method", {kMethods, {}}, Method::conservative_1);
   field.total = table.word<bool>("quantity", {{{"mean", false}, {"total", true}}, {}}, false);
   field.min_cover = table.number("min_cover", field.min_cover, 0, 1);
   field.min_land = table.number("min_land", field.min_land, 0, 1);
@@ -72,6 +79,10 @@ FieldSpec read_field(const Table& table) {
                  fmt::format("'range' goes from {} to {}; expected the lower end first", (*range)[0], (*range)[1]));
     field.range = {(*range)[0], (*range)[1]};
   }
+  field.pair =
+      table.word<Pair>("pair", {{{"eastward", Pair::eastward}, {"northward", Pair::northward}}, {}}, Pair::none);
+  field.axes = table.word<VectorAxes>(
+      "axes", {{{"east-north", VectorAxes::east_north}, {"mesh", VectorAxes::mesh}}, {}}, VectorAxes::east_north);
   field.adjust = read_adjust(table, field);
   field.terrain = read_terrain(table, field);
   if (field.total && field.adjust.method != Adjustment::none)

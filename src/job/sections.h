@@ -9,15 +9,19 @@ namespace windrow::job {
 void read_job_table(const Table& table, JobSpec& job);  ///< [job]
 RunSpec read_run(const Table& table);                   ///< [[run]]; an absent name or family stays empty
 FieldSpec read_field(const Table& table);               ///< [[field]] with [field.adjust] and [field.terrain]
-/// Before the keys of [mesh] are checked: Error(job) for a kind of mesh that this version does not have, since its keys
-/// tell less than the word.
-void refuse_later_kind(const Document& document, const Value& mesh);
-MeshSpec read_mesh(const Table& table);         ///< [mesh]
-StationSpec read_stations(const Table& table);  ///< [stations]
-ReachSpec read_reach(const Table& table);       ///< [reach]
-OutputSpec read_output(const Table& table);     ///< [output], directory absolute
+MeshSpec read_mesh(const Table& table);                 ///< [mesh]
+StationSpec read_stations(const Table& table);          ///< [stations]
+ReachSpec read_reach(const Table& table);               ///< [reach]
+/// [output], directory absolute. What `tile` and `also` may say depends on the kind of mesh.
+OutputSpec read_output(const Table& table, MeshKind kind);
 
-extern const Keys kRootKeys, kJobKeys, kRunKeys, kFieldKeys, kMeshKeys, kStationKeys, kReachKeys, kOutputKeys;
+extern const Keys kRootKeys, kJobKeys, kRunKeys, kGridKeys, kFieldKeys, kMeshKeys, kStationKeys, kReachKeys,
+    kOutputKeys;
+
+std::string kind_word(MeshKind kind);  ///< as [mesh] kind says it
+/// Cells in rows and columns; `file` may turn out otherwise once the file is read.
+bool is_structured(MeshKind kind);
+std::string method_word(Method method);  ///< as [[field]] method says it
 
 /// A name that becomes part of a file name: letters, digits, '.', '_', '+' and '-', beginning with a letter or digit.
 void check_name(const Table& table, const std::string& key, const std::string& name);

@@ -2,6 +2,7 @@
 // plan's print-out, the ledger and the staleness key, so that none of them can forget a setting.
 #include <fmt/format.h>
 
+#include "sections.h"
 #include "windrow/job/spec.h"
 #include "windrow/os/files.h"
 
@@ -84,6 +85,18 @@ std::string season_text(const AdjustSpec& adjust) {
   return text;
 }
 
+// What is not given is left to the files; five lines that say so would drown the rest.
+void add_grid(List& list, const std::string& prefix, const GridSpec& grid) {
+  const bool given = grid.pole || !(grid.crs + grid.axis_units + grid.coordinates + grid.sides).empty();
+  if (!given) list.add(prefix + "grid", "as the files say");
+  if (!grid.crs.empty()) list.add(prefix + "grid.crs", grid.crs);
+  if (grid.pole)
+    list.add(prefix + "grid.pole", fmt::format("longitude {}, latitude {}", (*grid.pole)[0], (*grid.pole)[1]));
+  if (!grid.axis_units.empty()) list.add(prefix + "grid.units", grid.axis_units);
+  if (!grid.coordinates.empty()) list.add_path(prefix + "grid.coordinates", grid.coordinates);
+  if (!grid.sides.empty()) list.add(prefix + "grid.sides", grid.sides);
+}
+
 void add_run(List& list, const std::string& prefix, const RunSpec& run) {
   list.add(prefix + "name", run.name);
   list.add(prefix + "family", run.family);
@@ -91,6 +104,7 @@ void add_run(List& list, const std::string& prefix, const RunSpec& run) {
   list.add(prefix + "forcing", or_none(run.forcing));
   list.add_paths(prefix + "files", run.patterns);
   list.add_path(prefix + "land_fraction", run.land_fraction);
+  add_grid(list, prefix, run.grid);
 }
 
 void add_adjust(List& list, const std::string& prefix, const AdjustSpec& adjust) {
@@ -123,16 +137,24 @@ void add_terrain(List& list, const std::string& prefix, const TerrainSpec& terra
   list.add_path(prefix + "model_height", terrain.model_height);
 }
 
-void add_field(List& list, const std::string& prefix, const FieldSpec& field) {
+std::string method_text(const FieldSpec& field, MeshKind kind) {
+  const bool cell_value = kind == MeshKind::towns && field.method == Method::conservative_1;
+  return method_word(field.method) + (cell_value ? " (the value of the cell that holds the town)" : "");
+}
+
+void add_field(List& list, const std::string& prefix, const FieldSpec& field, MeshKind kind) {
   list.add(prefix + "variable", field.variable);
   list.add(prefix + "name", field.name);
   list.add(prefix + "units", field.units.empty() ? "source" : field.units);
-  list.add(prefix + "method", "conservative-1");
+  list.add(prefix + "method", method_text(field, kind));
   list.add(prefix + "quantity", field.total ? "total" : "mean");
   list.add(prefix + "min_cover", field.min_cover);
   list.add(prefix + "min_land", field.min_land);
   list.add(prefix + "fill", field.fill_nearest ? "nearest" : "none");
   list.add(prefix + "range", field.range ? fmt::format("{} to {}", field.range->first, field.range->second) : "none");
+  const bool component = field.pair != Pair::none;
+  list.add(prefix + "pair", !component ? "none" : field.pair == Pair::eastward ? "eastward" : "northward");
+  if (component) list.add(prefix + "axes", field.axes == VectorAxes::mesh ? "mesh" : "east-north");
   add_adjust(list, prefix + "adjust.", field.adjust);
   if (field.terrain) add_terrain(list, prefix + "terrain.", *field.terrain);
 }
@@ -142,13 +164,42 @@ void add_axis(List& list, const std::string& key, const AxisSpec& axis) {
 }
 
 void add_mesh(List& list, const MeshSpec& mesh) {
-  const bool latlon = mesh.kind == MeshKind::latlon;
   list.add("mesh.name", mesh.name);
-  list.add("mesh.kind", latlon ? "latlon" : "projected");
-  if (!latlon) list.add("mesh.crs", mesh.crs);
-  add_axis(list, latlon ? "mesh.lon" : "mesh.x", mesh.x);
-  add_axis(list, latlon ? "mesh.lat" : "mesh.y", mesh.y);
-  list.add_path("mesh.height", mesh.height);
+  list.add("mesh.kind", kind_word(mesh.kind));
+  switch (mesh.kind) {
+    case MeshKind::latlon:
+      add_axis(list, "mesh.lon", mesh.x);
+      add_axis(list, "mesh.lat", mesh.y);
+      break;
+    case MeshKind::projected:
+      list.add("mesh.crs", mesh.crs);
+      add_axis(list, "mesh.x", mesh.x);
+      add_axis(list, "mesh.y", mesh.y);
+      break;
+    case MeshKind::raster:
+      list.add_path("mesh.template", mesh.source);
+      break;
+    case MeshKind::file:
+      list.add_path("mesh.from", mesh.source);
+      list.add("mesh.variable", mesh.variable.empty() ? "the only one" : mesh.variable);
+      break;
+    case MeshKind::catchments:
+      list.add_path("mesh.polygons", mesh.source);
+      list.add("mesh.layer", mesh.layer.empty() ? "the only one" : mesh.layer);
+      list.add("mesh.id", mesh.id.empty() ? "numbers from 1" : mesh.id);
+      break;
+    case MeshKind::towns:
+      list.add_path("mesh.sites", mesh.source);
+      break;
+    case MeshKind::faces:
+      list.add_path("mesh.from", mesh.source);
+      list.add("mesh.topology", mesh.topology.empty() ? "the only one" : mesh.topology);
+      break;
+  }
+  if (mesh.kind != MeshKind::towns) {
+    list.add_path("mesh.height", mesh.height);
+    list.add_path("mesh.mask", mesh.mask);
+  }
   list.add("mesh.earth", mesh.ellipsoid ? "ellipsoid" : "sphere");
 }
 
@@ -187,16 +238,21 @@ void add_job(List& list, const JobSpec& job) {
   list.add("job.version", job.version);
 }
 
-void add_output(List& list, const OutputSpec& output) {
+std::string tile_text(const std::array<int, 3>& tile, MeshKind kind) {
+  const bool rows = is_structured(kind);
+  return rows ? fmt::format("{}, {}, {}", tile[0], tile[1], tile[2]) : fmt::format("{}, {}", tile[0], tile[2]);
+}
+
+void add_output(List& list, const OutputSpec& output, MeshKind kind) {
   list.add_path("output.directory", output.directory, Effect::none);
   list.add("output.name", output.name, Effect::none);
   list.add("output.calendar", "source");
   list.add("output.compression", output.deflate ? "deflate" : "none", Effect::encoding);
   list.add("output.level", output.level, Effect::encoding);
   list.add("output.digits", output.digits);
-  list.add("output.tile",
-           output.tile ? fmt::format("{}, {}, {}", (*output.tile)[0], (*output.tile)[1], (*output.tile)[2]) : "auto",
-           Effect::encoding);
+  list.add("output.tile", output.tile ? tile_text(*output.tile, kind) : "auto", Effect::encoding);
+  // Not of the NetCDF file; but a product is whole only with its other form, so asking for one makes both anew.
+  list.add("output.also", output.csv ? "csv" : "none", Effect::encoding);
   for (const auto& [name, value] : output.attributes) list.add("output.attributes." + name, value);
 }
 
@@ -213,11 +269,12 @@ std::vector<std::pair<std::string, std::string>> settings(const JobSpec& job, bo
   List list(job);
   add_job(list, job);
   for (std::size_t i = 0; i < job.runs.size(); ++i) add_run(list, fmt::format("run.{}.", i), job.runs[i]);
-  for (std::size_t i = 0; i < job.fields.size(); ++i) add_field(list, fmt::format("field.{}.", i), job.fields[i]);
+  for (std::size_t i = 0; i < job.fields.size(); ++i)
+    add_field(list, fmt::format("field.{}.", i), job.fields[i], job.mesh.kind);
   add_mesh(list, job.mesh);
   add_stations(list, job.stations);
   if (job.stations.given) add_reach(list, job.reach);
-  add_output(list, job.output);
+  add_output(list, job.output, job.mesh.kind);
   return chosen(list, result_only ? Effect::result : Effect::none);
 }
 
@@ -232,13 +289,17 @@ std::vector<std::pair<std::string, std::string>> product_settings(const JobSpec&
   for (const RunSpec& other : job.runs)
     if (adjusted && other.family == from.family && other.anchor && other.name != from.name)
       add_run(list, "anchor.", other);
-  add_field(list, "field.", made);
+  add_field(list, "field.", made, job.mesh.kind);
+  // A component is turned together with its partner.
+  for (const FieldSpec& other : job.fields)
+    if (made.pair != Pair::none && other.pair != Pair::none && other.pair != made.pair)
+      list.add("partner.variable", other.variable);
   add_mesh(list, job.mesh);
   if (adjusted) {
     add_stations(list, job.stations);
     add_reach(list, job.reach);
   }
-  add_output(list, job.output);
+  add_output(list, job.output, job.mesh.kind);
   return chosen(list, least);
 }
 

@@ -1,11 +1,14 @@
-// The commented job file to start from. Every key of this version is in it; tests check that against the key lists.
+// The commented job files to start from: one of a grid, of catchments, of towns. Every key of this version is in one of
+// them; tests check that against the key lists.
 #include "windrow/job/spec.h"
+#include "windrow/text/words.h"
 
 namespace windrow::job {
 namespace {
 
-// Lines that begin with '#' and a space explain; lines that begin with '#' alone are settings left out.
-constexpr const char* kGrid = R"toml(# A windrow job: which model files, which variables, onto which mesh.
+// Pieces of them, put together with an empty line between. Lines that begin with '#' and a space explain; lines that
+// begin with '#' alone are settings left out.
+constexpr const char* kHead = R"toml(# A windrow job: which model files, which variables, onto which mesh.
 # Paths are relative to this file; ~ and ${NAME} are filled in. Lines that begin with "# " explain. Settings that are
 # left out begin with "#" alone and show their default, or an example where there is none. Check with `windrow plan`.
 
@@ -25,20 +28,43 @@ constexpr const char* kGrid = R"toml(# A windrow job: which model files, which v
 #forcing  = "all forcings"    # free text, kept in the product
 files    = ["in/tas_*.nc"]
 #land_fraction = "in/sftlf.nc"    # only that fraction of each cell counts
+# What the files do not say about their grid; any of these:
+#grid     = { crs = "EPSG:3035", units = "km" }   # of projected x and y without a grid mapping, or without units
+# grid    = { pole = [-162, 39.25] }      # longitude and latitude of a rotated grid's north pole
+# grid    = { coordinates = "in/corners.nc" }   # a file that holds the coordinates and bounds
+# grid    = { sides = "parallels" }       # great-circles | parallels: how the sides of curvilinear cells run
+)toml";
 
-# One [[field]] for each variable.
+constexpr const char* kField = R"toml(# One [[field]] for each variable.
 [[field]]
 variable = "tas"              # name in the model files
 #name     = "tas"             # name in the product; default: the same
 #units    = "degC"            # default: the source's; converted with UDUNITS
-#method   = "conservative-1"  # the means over model cells are kept
+#method   = "conservative-1"  # the means over model cells are kept; conservative-2 (linear within a cell) |
+#                             # conservative-smooth | bilinear | nearest | majority (the largest share, for categories)
 #quantity = "mean"            # mean (a cell average: temperature, flux density) | total (a cell sum: mass, population)
 #min_cover = 0.5              # a mesh cell with less cover by cells that have a value is missing
 #min_land  = 0.0              # with land_fraction: a mesh cell with a smaller land share is missing
 #fill     = "none"            # none | nearest: what a cell below min_cover gets
 #range    = [-90, 60]         # physical range in output units; what falls outside is clamped and counted
+# pair    = "eastward"        # eastward | northward: components of a vector, in two fields, turned together
+# axes    = "east-north"      # east-north | mesh: what the components of the product run along
+)toml";
 
-# Bias adjustment to stations; leave it out for regridding only. Needs [stations].
+constexpr const char* kTownField = R"toml(# One [[field]] for each variable.
+[[field]]
+variable = "tas"              # name in the model files
+#name     = "tas"             # name in the product; default: the same
+#units    = "degC"            # default: the source's; converted with UDUNITS
+#method   = "conservative-1"  # the value of the cell that holds the town | bilinear | nearest
+#quantity = "mean"            # a cell sum has no value at a point
+#min_cover = 0.5              # a town with less of its weight on cells that have a value is missing
+#fill     = "none"            # none | nearest: what a town below min_cover gets
+#range    = [-90, 60]         # physical range in output units; what falls outside is clamped and counted
+)toml";
+
+constexpr const char* kAdjust =
+    R"toml(# Bias adjustment to stations; leave it out for regridding only. Needs [stations].
 #[field.adjust]
 #method   = "quantile-mapping"    # none | mean-shift | mean-ratio | quantile-mapping
 #form     = "additive"        # additive | multiplicative (mean-ratio)
@@ -52,24 +78,51 @@ variable = "tas"              # name in the model files
 #carry    = "target"          # target | correction: what is carried from stations to cells
 #period_mismatch = "refuse"   # refuse | accept: station and model years that cannot be matched
 
-# Height adjustment before the transfer. Needs [mesh] height.
+# Height adjustment before the transfer. Needs [mesh] height; towns bring their own.
 #[field.terrain]
 #lapse    = "-6.5 K/km"       # or 12 monthly values
 #model_height = "in/orog.nc"
+)toml";
 
-[mesh]
+constexpr const char* kGridMesh = R"toml([mesh]
 #name     = "mesh"
-#kind     = "latlon"          # latlon | projected
+#kind     = "latlon"          # latlon | projected | raster | file | faces | catchments | towns
 lon      = { from = -10, to = 30, step = 0.25 }    # cell edges in degrees
 lat      = { from = 35, to = 60, step = 0.25 }
 # For kind = "projected" take these instead of lon and lat (cell edges in the projection's units):
 #   crs  = "EPSG:3035"        # any PROJ definition
 #   x    = { from = 4000000, to = 4500000, step = 5000 }
 #   y    = { from = 2500000, to = 3000000, step = 5000 }
+# For the others take one of these instead of lon and lat (`windrow new --for catchments` and `--for towns` tell more):
+#   template = "in/grid.tif"               # kind = "raster": its cells and CRS
+#   from     = "in/other.nc"               # kind = "file": a CF grid of any kind,
+#   variable = "v"                         # that of this variable
+#   from     = "in/ugrid.nc"               # kind = "faces": a UGRID mesh,
+#   topology = "Mesh2"                     # that of this topology variable
 #height   = "in/relief.tif"   # a raster or CF NetCDF; averaged conservatively onto the mesh
+#mask     = "in/land.gpkg"    # polygons or a raster; a cell less than half within is missing
 #earth    = "sphere"          # sphere | ellipsoid: what areas are measured on
+)toml";
 
-#[stations]
+constexpr const char* kCatchmentMesh = R"toml([mesh]
+#name     = "mesh"
+kind     = "catchments"
+polygons = "in/basins.gpkg"   # GeoPackage, Shapefile, GeoJSON or FlatGeobuf
+#layer    = "basins"          # needed when the file has several
+#id       = "code"            # column that tells catchments apart; default: numbers from 1
+#height   = "in/relief.tif"   # a raster or CF NetCDF; averaged conservatively over catchments
+#mask     = "in/land.gpkg"    # polygons or a raster; a catchment less than half within is missing
+#earth    = "sphere"          # sphere | ellipsoid: what areas are measured on
+)toml";
+
+constexpr const char* kTownMesh = R"toml([mesh]
+#name     = "mesh"
+kind     = "towns"
+sites    = "in/towns.csv"     # station,longitude,latitude,elevation,name
+#earth    = "sphere"          # sphere | ellipsoid: as for other kinds of mesh
+)toml";
+
+constexpr const char* kStations = R"toml(#[stations]
 #sites    = "in/sites.csv"    # station,longitude,latitude,elevation,name
 #daily    = "in/daily.csv"    # station,date,tas [degC]        (or monthly = ..., instead of it)
 # monthly = "in/monthly.csv"  # station,year,month,tas [degC]
@@ -88,25 +141,39 @@ lat      = { from = 35, to = 60, step = 0.25 }
 #power    = 2                 # of the distance
 #beyond   = "taper"           # cells farther from any station: taper (to the mean correction) | raw | missing
 #neighbours = 32              # up to 500 stations all are used
+)toml";
 
-[output]
+constexpr const char* kOutput = R"toml([output]
 #directory = "out"
 #name      = "{field}_{run}_{mesh}.nc"   # {field} {run} {mesh} {version}; {year} splits by year
 #calendar  = "source"         # the model's own calendar
 #compression = "deflate"      # deflate | none
 #level     = 1                # 0 to 9
 #digits    = 0                # 1 to 7: keep that many significant digits
-#tile      = "auto"           # or [time, y, x]
 #attributes = { institution = "Kelder Weather Office (invented)" }
+)toml";
+
+constexpr const char* kGridOutput = R"toml(#tile      = "auto"           # or [time, y, x]
+)toml";
+
+constexpr const char* kCellOutput = R"toml(#tile      = "auto"           # or [time, cells]
+#also      = ["csv"]          # a table beside each product
 )toml";
 
 }  // namespace
 
 std::string template_text(const std::string& kind) {
-  if (kind == "grid") return kGrid;
-  if (kind == "catchments" || kind == "towns")
-    throw Error(Failure::usage, "new", "'" + kind + "' is not in this version; expected grid");
-  throw Error(Failure::usage, "new", "unknown kind of job '" + kind + "'; expected grid");
+  const auto whole = [](const std::string& field, const std::string& mesh, const std::string& output) {
+    return kHead + ("\n" + field) + "\n" + kAdjust + "\n" + mesh + "\n" + kStations + "\n" + kOutput + output;
+  };
+  if (kind == "grid") return whole(kField, kGridMesh, kGridOutput);
+  if (kind == "catchments") return whole(kField, kCatchmentMesh, kCellOutput);
+  if (kind == "towns") return whole(kTownField, kTownMesh, kCellOutput);
+  const std::vector<std::string> kinds{"grid", "catchments", "towns"};
+  const std::string nearest = text::nearest_word(kind, kinds);
+  throw Error(Failure::usage, "new",
+              "unknown kind of job '" + kind + "'; " +
+                  (nearest.empty() ? "expected " + text::alternatives(kinds) : "did you mean '" + nearest + "'?"));
 }
 
 }  // namespace windrow::job

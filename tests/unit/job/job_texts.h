@@ -14,7 +14,7 @@ lon = { from = -10, to = 30, step = 0.25 }
 lat = { from = 35, to = 60, step = 0.25 }
 )toml";
 
-/// Every key of this version, none at its default.
+/// Every key of this version that goes with a projected mesh and adjusted fields, none at its default.
 inline const std::string kEveryKey = R"toml([job]
 title     = "Daily climate of Kelder"
 workspace = "scratch"
@@ -30,6 +30,7 @@ anchor   = true
 forcing  = "all forcings"
 files    = ["in/heron_all_*.nc", "/data/heron_extra.nc"]
 land_fraction = "in/heron_sftlf.nc"
+grid     = { crs = "EPSG:3035", units = "km", coordinates = "in/heron_corners.nc", sides = "parallels" }
 
 [[run]]
 name     = "heron-natural"
@@ -80,6 +81,7 @@ crs      = "+proj=laea +lat_0=48 +lon_0=-28 +R=6371000"
 x        = { from = -150000, to = 150000, step = 5000 }
 y        = { from = -200000, to = 200000, step = 5000 }
 height   = "in/relief.tif"
+mask     = "in/land.gpkg"
 earth    = "ellipsoid"
 
 [stations]
@@ -110,5 +112,11 @@ digits    = 4
 tile      = [365, 16, 32]
 attributes = { institution = "Kelder Weather Office (invented)", contact = "none" }
 )toml";
+
+/// A job on another kind of mesh: `mesh` are its keys below [mesh]; `field` more keys of its one field.
+inline std::string job_on(const std::string& mesh, const std::string& field = "", const std::string& output = "") {
+  return "[[run]]\nfiles = [\"tas_*.nc\"]\n[[field]]\nvariable = \"tas\"\n" + field + "[mesh]\n" + mesh + "[output]\n" +
+         output;
+}
 
 }  // namespace job_texts

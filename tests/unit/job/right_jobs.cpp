@@ -74,6 +74,13 @@ TEST_CASE("every key of [job], [[run]], [mesh] and [output] is read") {
   CHECK(job.mesh.x.from == -150000);
   CHECK(job.mesh.y.to == 200000);
   CHECK(job.mesh.height == "/proj/in/relief.tif");
+  CHECK(job.mesh.mask == "/proj/in/land.gpkg");
+  CHECK(job.runs[0].grid.crs == "EPSG:3035");
+  CHECK(job.runs[0].grid.axis_units == "km");
+  CHECK(job.runs[0].grid.coordinates == "/proj/in/heron_corners.nc");
+  CHECK(job.runs[0].grid.sides == "parallels");
+  CHECK_FALSE(job.runs[0].grid.pole.has_value());
+  CHECK(job.runs[1].grid.crs.empty());
   CHECK(job.mesh.ellipsoid);
   CHECK(job.output.directory == "/proj/made");
   CHECK(job.output.level == 3);
@@ -228,4 +235,111 @@ TEST_CASE("edges begin and end exactly at the given ends and are symmetric where
   std::string text = job_texts::kShortest;
   text.replace(text.find("step = 0.25"), 11, "step = 0.00833333333333");
   CHECK(parse_job("job.toml", text, {}).mesh.x.edges().size() == 4801);
+}
+
+TEST_CASE("every kind of mesh is read with its own keys") {
+  const auto mesh = [](const std::string& keys) {
+    return parse_job("/proj/job.toml", job_texts::job_on(keys), {}).mesh;
+  };
+  const MeshSpec raster = mesh("kind = \"raster\"\ntemplate = \"grid.tif\"\nheight = \"relief.tif\"\n");
+  CHECK(raster.kind == MeshKind::raster);
+  CHECK(raster.source == "/proj/grid.tif");
+  CHECK(raster.height == "/proj/relief.tif");
+  CHECK(raster.place == "/proj/job.toml:7:12");
+  CHECK(raster.excerpt == "template = \"grid.tif\"\n           ^");
+  const MeshSpec file = mesh("kind = \"file\"\nfrom = \"other.nc\"\nvariable = \"v\"\nmask = \"land.gpkg\"\n");
+  CHECK(file.kind == MeshKind::file);
+  CHECK(file.source == "/proj/other.nc");
+  CHECK(file.variable == "v");
+  CHECK(file.mask == "/proj/land.gpkg");
+  const MeshSpec catchments =
+      mesh("kind = \"catchments\"\npolygons = \"b.gpkg\"\nlayer = \"basins\"\nid = \"code\"\nearth = \"ellipsoid\"\n");
+  CHECK(catchments.kind == MeshKind::catchments);
+  CHECK(catchments.source == "/proj/b.gpkg");
+  CHECK(catchments.layer == "basins");
+  CHECK(catchments.id == "code");
+  CHECK(catchments.ellipsoid);
+  CHECK(mesh("kind = \"catchments\"\npolygons = \"b.gpkg\"\n").id.empty());
+  const MeshSpec towns = mesh("kind = \"towns\"\nsites = \"towns.csv\"\n");
+  CHECK(towns.kind == MeshKind::towns);
+  CHECK(towns.source == "/proj/towns.csv");
+  const MeshSpec faces = mesh("kind = \"faces\"\nfrom = \"ugrid.nc\"\ntopology = \"Mesh2\"\n");
+  CHECK(faces.kind == MeshKind::faces);
+  CHECK(faces.source == "/proj/ugrid.nc");
+  CHECK(faces.topology == "Mesh2");
+}
+
+TEST_CASE("every regridding method is read, and totals go with those that conserve") {
+  const auto field = [](const std::string& keys) {
+    return parse_job(
+               "job.toml",
+               job_texts::job_on("lon = { from = 0, to = 1, step = 1 }\nlat = { from = 0, to = 1, step = 1 }\n", keys),
+               {})
+        .fields[0];
+  };
+  const std::vector<std::pair<std::string, Method>> methods{{"conservative-1", Method::conservative_1},
+                                                            {"conservative-2", Method::conservative_2},
+                                                            {"conservative-smooth", Method::conservative_smooth},
+                                                            {"bilinear", Method::bilinear},
+                                                            {"nearest", Method::nearest},
+                                                            {"majority", Method::majority}};
+  for (const auto& [word, method] : methods) {
+    CAPTURE(word);
+    CHECK(field("method = \"" + word + "\"\n").method == method);
+    if (word.starts_with("conservative")) CHECK(field("quantity = \"total\"\nmethod = \"" + word + "\"\n").total);
+  }
+}
+
+TEST_CASE("a vector pair is read with the axes of its product") {
+  const auto fields = [](const std::string& keys) {
+    std::string text = job_texts::kShortest;
+    text.replace(text.find("variable = \"tas\"\n"), 17,
+                 "variable = \"uas\"\npair = \"eastward\"\n" + keys +
+                     "[[field]]\nvariable = \"vas\"\npair = \"northward\"\n" + keys);
+    return parse_job("job.toml", text, {}).fields;
+  };
+  CHECK(fields("")[0].pair == Pair::eastward);
+  CHECK(fields("")[1].pair == Pair::northward);
+  CHECK(fields("")[0].axes == VectorAxes::east_north);
+  CHECK(fields("axes = \"east-north\"\nmethod = \"bilinear\"\n")[1].method == Method::bilinear);
+  CHECK(fields("axes = \"mesh\"\n")[1].axes == VectorAxes::mesh);
+}
+
+TEST_CASE("what a run's files do not say about their grid is read from the job") {
+  const auto grid = [](const std::string& value) {
+    return parse_job("/proj/job.toml", job_texts::kShortest, {"run.0.grid=" + value}).runs[0].grid;
+  };
+  CHECK(grid("{ pole = [-162, 39.25] }").pole == std::array<double, 2>{-162, 39.25});
+  CHECK(grid("{ pole = [198, 39.25], sides = \"great-circles\" }").sides == "great-circles");
+  CHECK(grid("{ crs = \"EPSG:3035\" }").crs == "EPSG:3035");
+  for (const char* units : {"m", "km", "US_survey_foot", "radian", "degree"}) {
+    CAPTURE(units);
+    CHECK(grid(std::string("{ units = \"") + units + "\" }").axis_units == units);
+  }
+  CHECK(grid("{ coordinates = \"corners.nc\" }").coordinates == "/proj/corners.nc");
+}
+
+TEST_CASE("towns take the value of the cell that holds them, bilinear or nearest, and their own heights") {
+  const std::string towns = "kind = \"towns\"\nsites = \"towns.csv\"\n";
+  for (const char* method : {"conservative-1", "bilinear", "nearest"})
+    CHECK_NOTHROW(parse_job("job.toml", job_texts::job_on(towns, std::string("method = \"") + method + "\"\n"), {}));
+  const JobSpec job = parse_job(
+      "job.toml", job_texts::job_on(towns, "[field.terrain]\nlapse = \"-6.5 K/km\"\nmodel_height = \"orog.nc\"\n"), {});
+  CHECK(job.fields[0].method == Method::conservative_1);
+  CHECK(job.fields[0].terrain.has_value());
+}
+
+TEST_CASE("a tile has three numbers on a grid, two where cells stand in no rows, either on another file's grid") {
+  const auto output = [](const std::string& mesh, const std::string& keys) {
+    return parse_job("job.toml", job_texts::job_on(mesh, "", keys), {}).output;
+  };
+  const std::string catchments = "kind = \"catchments\"\npolygons = \"b.gpkg\"\n",
+                    file = "kind = \"file\"\nfrom = \"o.nc\"\n";
+  CHECK(output(catchments, "tile = [365, 512]\n").tile == std::array<int, 3>{365, 1, 512});
+  CHECK(output(file, "tile = [365, 512]\n").tile == std::array<int, 3>{365, 1, 512});
+  CHECK(output(file, "tile = [365, 16, 32]\n").tile == std::array<int, 3>{365, 16, 32});
+  CHECK_FALSE(output(catchments, "tile = \"auto\"\n").tile.has_value());
+  CHECK(output(catchments, "also = [\"csv\"]\n").csv);
+  CHECK(output("kind = \"towns\"\nsites = \"t.csv\"\n", "also = \"csv\"\n").csv);
+  CHECK_FALSE(output(catchments, "").csv);
 }

@@ -25,8 +25,8 @@ JobSpec every_key(const std::vector<std::string>& overrides = {}) {
 }
 
 // The template with its left-out settings put in.
-std::string filled_template() {
-  std::istringstream in(template_text("grid"));
+std::string filled_template(const std::string& kind) {
+  std::istringstream in(template_text(kind));
   std::string line, out;
   while (std::getline(in, line)) {
     const bool left_out = line.size() > 1 && line[0] == '#' && line[1] != ' ';
@@ -76,6 +76,13 @@ TEST_CASE("every setting that changes a product's values or attributes changes i
                                "run.0.forcing=other",
                                "run.0.files=other.nc",
                                "run.0.land_fraction=other.nc",
+                               "run.0.grid.crs=EPSG:3034",
+                               "run.0.grid.units=m",
+                               "run.0.grid.coordinates=other.nc",
+                               "run.0.grid.sides=great-circles",
+                               "run.0.grid={ pole = [-162, 39.25] }",
+                               "field.0.method=conservative-2",
+                               "field.0.method=bilinear",
                                "field.0.variable=tos",
                                "field.0.name=tos",
                                "field.0.units=K",
@@ -101,6 +108,7 @@ TEST_CASE("every setting that changes a product's values or attributes changes i
                                "mesh.x.step=10000",
                                "mesh.y.from=-190000",
                                "mesh.height=other.tif",
+                               "mesh.mask=other.gpkg",
                                "mesh.earth=sphere",
                                "stations.sites=other.csv",
                                "stations.daily=other.csv",
@@ -120,6 +128,65 @@ TEST_CASE("every setting that changes a product's values or attributes changes i
     if (std::string(override) == "field.0.quantity=total") overrides.emplace_back("field.0.adjust.method=none");
     CHECK(settings(every_key(overrides), true) != before);
   }
+}
+
+TEST_CASE("every key of a kind of mesh is among its settings, defaults included") {
+  const auto list = [](const std::string& mesh, const std::string& field = "", const std::string& output = "") {
+    return settings(parse_job("/proj/job.toml", job_texts::job_on(mesh, field, output), {}), true);
+  };
+  const std::string raster = "kind = \"raster\"\ntemplate = \"grid.tif\"\n";
+  CHECK(value(list(raster), "mesh.kind") == "raster");
+  CHECK(value(list(raster), "mesh.template") == "grid.tif");
+  CHECK(value(list(raster), "mesh.mask") == "none");
+  const std::string file = "kind = \"file\"\nfrom = \"other.nc\"\n";
+  CHECK(value(list(file), "mesh.from") == "other.nc");
+  CHECK(value(list(file), "mesh.variable") == "the only one");
+  CHECK(value(list(file + "variable = \"v\"\n"), "mesh.variable") == "v");
+  const std::string catchments = "kind = \"catchments\"\npolygons = \"b.gpkg\"\n";
+  CHECK(value(list(catchments), "mesh.polygons") == "b.gpkg");
+  CHECK(value(list(catchments), "mesh.layer") == "the only one");
+  CHECK(value(list(catchments), "mesh.id") == "numbers from 1");
+  CHECK(value(list(catchments + "layer = \"l\"\nid = \"code\"\n"), "mesh.id") == "code");
+  CHECK(value(list(catchments, "", "tile = [365, 512]\n"), "output.tile") == "absent");
+  const std::string faces = "kind = \"faces\"\nfrom = \"ugrid.nc\"\ntopology = \"Mesh2\"\n";
+  CHECK(value(list(faces), "mesh.kind") == "faces");
+  CHECK(value(list(faces), "mesh.topology") == "Mesh2");
+  const std::string towns = "kind = \"towns\"\nsites = \"towns.csv\"\n";
+  CHECK(value(list(towns), "mesh.sites") == "towns.csv");
+  CHECK(value(list(towns), "mesh.mask") == "absent");
+  CHECK(value(list(towns), "field.0.method") == "conservative-1 (the value of the cell that holds the town)");
+  CHECK(value(list(towns, "method = \"nearest\"\n"), "field.0.method") == "nearest");
+  CHECK(value(list(faces), "field.0.method") == "conservative-1");
+  CHECK(value(list(faces), "field.0.pair") == "none");
+  CHECK(value(list(faces), "run.0.grid") == "as the files say");
+}
+
+TEST_CASE("a table beside the product and a tile of cells change how a product is kept, not its values") {
+  const std::string catchments = "kind = \"catchments\"\npolygons = \"b.gpkg\"\n";
+  const JobSpec plain = parse_job("/proj/job.toml", job_texts::job_on(catchments), {});
+  const JobSpec other =
+      parse_job("/proj/job.toml", job_texts::job_on(catchments, "", "also = \"csv\"\ntile = [9, 7]\n"), {});
+  CHECK(product_settings(plain, 0, 0, Effect::result) == product_settings(other, 0, 0, Effect::result));
+  CHECK(value(product_settings(other, 0, 0, Effect::encoding), "output.also") == "csv");
+  CHECK(value(product_settings(other, 0, 0, Effect::encoding), "output.tile") == "9, 7");
+  CHECK(value(product_settings(plain, 0, 0, Effect::encoding), "output.also") == "none");
+}
+
+TEST_CASE("the settings of a vector's component name its partner, which it is turned together with") {
+  const auto job = [](const std::string& partner) {
+    std::string text = job_texts::kShortest;
+    text.replace(
+        text.find("variable = \"tas\""), 16,
+        "variable = \"uas\"\npair = \"eastward\"\n[[field]]\nname = \"vas\"\npair = \"northward\"\nvariable = \"" +
+            partner + "\"");
+    return parse_job("/proj/job.toml", text, {});
+  };
+  const List east = product_settings(job("vas"), 0, 0, Effect::result);
+  CHECK(value(east, "field.pair") == "eastward");
+  CHECK(value(east, "field.axes") == "east-north");
+  CHECK(value(east, "partner.variable") == "vas");
+  CHECK(value(product_settings(job("vas"), 1, 0, Effect::result), "partner.variable") == "uas");
+  CHECK(product_settings(job("va"), 0, 0, Effect::result) != east);
 }
 
 TEST_CASE("the settings of one product do not change when another run or field is added") {
@@ -151,12 +218,20 @@ TEST_CASE("moving the whole folder of a job changes no setting") {
   CHECK(settings(moved, false) == settings(every_key(), false));
 }
 
-TEST_CASE("the job file to start from is a right one, and stays right with all its settings put in") {
-  const JobSpec job = parse_job("/proj/job.toml", template_text("grid"), {});
-  CHECK(job.fields[0].variable == "tas");
-  const JobSpec filled = parse_job("/proj/job.toml", filled_template(), {});
-  CHECK(filled.stations.given);
-  CHECK(filled.fields[0].terrain.has_value());
+TEST_CASE("the job files to start from are right ones, and stay right with all their settings put in") {
+  const std::vector<std::pair<std::string, MeshKind>> kinds{
+      {"grid", MeshKind::latlon}, {"catchments", MeshKind::catchments}, {"towns", MeshKind::towns}};
+  for (const auto& [kind, mesh] : kinds) {
+    CAPTURE(kind);
+    const JobSpec job = parse_job("/proj/job.toml", template_text(kind), {});
+    CHECK(job.fields[0].variable == "tas");
+    CHECK(job.mesh.kind == mesh);
+    const JobSpec filled = parse_job("/proj/job.toml", filled_template(kind), {});
+    CHECK(filled.stations.given);
+    CHECK(filled.fields[0].terrain.has_value());
+    CHECK(filled.runs[0].grid.crs == "EPSG:3035");
+    CHECK(filled.output.csv == (kind != "grid"));
+  }
 }
 
 TEST_CASE("the job file to start from shows a setting's default") {
@@ -199,9 +274,10 @@ TEST_CASE("the job file to start from shows a setting's default") {
   CHECK(shown == 23);
 }
 
-TEST_CASE("the job file to start from names every key of this version") {
-  const std::string text = template_text("grid");
-  for (const Keys* keys : {&kJobKeys, &kRunKeys, &kFieldKeys, &kMeshKeys, &kStationKeys, &kReachKeys, &kOutputKeys})
+TEST_CASE("the job files to start from name every key of this version") {
+  const std::string text = template_text("grid") + template_text("catchments") + template_text("towns");
+  for (const Keys* keys :
+       {&kJobKeys, &kRunKeys, &kGridKeys, &kFieldKeys, &kMeshKeys, &kStationKeys, &kReachKeys, &kOutputKeys})
     for (const std::string& key : keys->known) {
       CAPTURE(key);
       CHECK((text.find(key + " ") != std::string::npos || text.find("." + key + "]") != std::string::npos));
@@ -209,6 +285,6 @@ TEST_CASE("the job file to start from names every key of this version") {
 }
 
 TEST_CASE("a kind of job that cannot be started from is refused") {
-  CHECK_THROWS_WITH(template_text("towns"), "new: 'towns' is not in this version; expected grid");
-  CHECK_THROWS_WITH(template_text("gird"), "new: unknown kind of job 'gird'; expected grid");
+  CHECK_THROWS_WITH(template_text("town"), "new: unknown kind of job 'town'; did you mean 'towns'?");
+  CHECK_THROWS_WITH(template_text("faces"), "new: unknown kind of job 'faces'; expected grid, catchments or towns");
 }
