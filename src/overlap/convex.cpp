@@ -74,7 +74,8 @@ class Taker {
   }
 
   void triangle(const Vec3& a, const Vec3& b, const Vec3& c) {
-    if (norm(b - a) <= sphere::kOnCircle || norm(c - a) <= sphere::kOnCircle || norm(c - b) <= sphere::kOnCircle) return;
+    if (norm(b - a) <= sphere::kOnCircle || norm(c - a) <= sphere::kOnCircle || norm(c - b) <= sphere::kOnCircle)
+      return;
     const double turn = dot(a, cross(b - a, c - a));
     if (turn == 0) return;
     ConvexPart& part = add(turn > 0 ? 1 : -1);

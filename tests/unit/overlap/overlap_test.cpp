@@ -260,16 +260,3 @@ TEST_CASE("points take the source cell that contains them") {
   CHECK(map.column == std::vector<std::uint32_t>{6 * 36, 6 * 36 + 35, 0});
   CHECK(map.share == std::vector<double>{1, 1, 1});
 }
-
-TEST_CASE("a projected source is refused in plain words") {
-  const auto m = azimuthal_mesh({0, 48}, 2, 2, 5000);
-  try {
-    overlap::conservative(*m, *regular(0, 40, 1, 1, 20, 20), Quantity::mean);
-    FAIL("accepted");
-  } catch (const Error& e) {
-    CHECK(e.kind() == Failure::data);
-    CHECK(std::string(e.what()) ==
-          "projected (azimuthal equal-area), 2 x 2 cells: is no latitude-longitude grid: conservative regridding reads "
-          "latitude-longitude sources only");
-  }
-}
