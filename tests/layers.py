@@ -26,7 +26,7 @@ TABLE = [
     (3, "reach", "stations x cells -> linear map", "mesh station stats linear_map", ""),
     (3, "adjust", "fits and evaluates transfers", "stats station calendar", ""),
     (4, "cf", "CF NetCDF of inputs and products", "calendar units codec text mesh", "netcdf hdf5"),
-    (4, "geo", "rasters and CRS", "mesh", "gdal proj"),
+    (4, "geo", "rasters, polygons and CRS", "units text mesh", "gdal proj"),
     (5, "job", "job file -> validated JobSpec, with line and column", "text calendar units os", "toml++"),
     (5, "plan", "spec and summaries -> units of work, memory, staleness; no I/O", "job mesh calendar codec", ""),
     (6, "pipeline", "applies maps and transfers, spools finished tiles, resumes",

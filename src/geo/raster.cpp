@@ -2,20 +2,15 @@
 // be read as NetCDF or HDF5 (those belong to `cf`).
 #include "windrow/geo/raster.h"
 
-#include <cpl_conv.h>
-#include <cpl_error.h>
 #include <fmt/format.h>
-#include <gdal.h>
 #include <gdal_frmts.h>
-#include <ogr_srs_api.h>
 
 #include <algorithm>
 #include <cmath>
-#include <filesystem>
 #include <limits>
-#include <memory>
 #include <mutex>
 
+#include "gdal_handles.h"
 #include "windrow/base/error.h"
 
 namespace windrow::geo {
@@ -35,39 +30,6 @@ void register_drivers() {
   });
 }
 
-/// GDAL's messages are kept from the terminal and neighbours of the file are not listed, for the life of the object.
-class Quiet {
- public:
-  Quiet() {
-    CPLErrorReset();
-    CPLPushErrorHandler(CPLQuietErrorHandler);
-    CPLSetThreadLocalConfigOption("GDAL_DISABLE_READDIR_ON_OPEN", "TRUE");
-  }
-  ~Quiet() {
-    CPLSetThreadLocalConfigOption("GDAL_DISABLE_READDIR_ON_OPEN", nullptr);
-    CPLPopErrorHandler();
-  }
-  Quiet(const Quiet&) = delete;
-  Quiet& operator=(const Quiet&) = delete;
-};
-
-struct CloseDataset {
-  void operator()(void* d) const { GDALClose(d); }
-};
-using DatasetHandle = std::unique_ptr<void, CloseDataset>;
-
-/// The library's last words on one line, or nothing.
-std::string reason() {
-  std::string text = CPLGetLastErrorMsg();
-  std::replace(text.begin(), text.end(), '\n', ' ');
-  return text.empty() ? "" : " (" + text + ")";
-}
-
-bool is_local_file(const std::string& path) {
-  std::error_code ignored;
-  return !path.starts_with("/vsi") && std::filesystem::is_regular_file(path, ignored);
-}
-
 DatasetHandle open_dataset(const std::string& path, const std::string& place) {
   if (!is_local_file(path)) throw Error(Failure::missing, place, fmt::format("there is no file '{}'", path));
   DatasetHandle dataset(GDALOpenEx(path.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY, kDrivers, nullptr, nullptr));
@@ -84,21 +46,6 @@ std::vector<double> edges(double origin, double step, int size) {
   std::vector<double> out(static_cast<std::size_t>(size) + 1);
   for (std::size_t i = 0; i < out.size(); ++i) out[i] = origin + static_cast<double>(i) * step;
   if (step < 0) std::reverse(out.begin(), out.end());
-  return out;
-}
-
-/// The horizontal part of the raster's CRS as one line of WKT2:2019; empty when it has none.
-std::string wkt_of(GDALDatasetH dataset) {
-  const OGRSpatialReferenceH given = GDALGetSpatialRef(dataset);
-  if (given == nullptr) return {};
-  const std::unique_ptr<void, void (*)(OGRSpatialReferenceH)> flat(OSRClone(given), OSRDestroySpatialReference);
-  OSRStripVertical(flat.get());
-  OSRDemoteTo2D(flat.get(), nullptr);
-  const char* const options[] = {"FORMAT=WKT2_2019", "MULTILINE=NO", nullptr};
-  char* text = nullptr;
-  const OGRErr status = OSRExportToWktEx(flat.get(), &text, options);
-  std::string out = status == OGRERR_NONE && text ? text : "";
-  CPLFree(text);
   return out;
 }
 
@@ -195,7 +142,7 @@ Raster read_raster(const std::string& path, const std::string& place) {
   flip(out.values, static_cast<std::size_t>(nx), frame.dx < 0, frame.dy < 0);
   out.x_edges = edges(frame.x0, frame.dx, nx);
   out.y_edges = edges(frame.y0, frame.dy, ny);
-  out.crs_wkt = wkt_of(dataset.get());
+  out.crs_wkt = horizontal_wkt(GDALGetSpatialRef(dataset.get()));
   const char* units = GDALGetRasterUnitType(band);
   out.units = units ? units : "";
   return out;
