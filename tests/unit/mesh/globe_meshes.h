@@ -33,11 +33,10 @@ inline Loops icosahedral(int halvings) {
   for (const double a : {-1.0, 1.0}) {
     for (const double b : {-golden, golden}) {
       for (const sphere::Vec3& v : {sphere::Vec3{0, a, b}, {a, b, 0}, {b, 0, a}}) {
-        out.point.push_back(unit(v + sphere::Vec3{0, 0.3 * v.z, -0.3 * v.y}));  // close to a turn about x
+        out.point.push_back(unit(sphere::Vec3{v.x, 0.8 * v.y - 0.6 * v.z, 0.6 * v.y + 0.8 * v.z}));
       }
     }
   }
-  for (sphere::Vec3& v : out.point) v = unit(v);
   const auto near = [&](std::uint32_t a, std::uint32_t b) { return dot(out.point[a], out.point[b]) > 0.3; };
   for (std::uint32_t a = 0; a < 12; ++a) {
     for (std::uint32_t b = a + 1; b < 12; ++b) {
