@@ -1,28 +1,68 @@
-// Which dimension of a variable is latitude, longitude, time: decided from CF metadata, names only as a last resort.
+// What the dimensions of one variable are, and which grid mapping goes with it. Names decide only as a last resort.
 #pragma once
 #include <cstddef>
+#include <optional>
+#include <string>
+#include <vector>
 
-#include "header.h"
+#include "inputs.h"
+#include "roles.h"
 
 namespace windrow::cf {
 
-/// Dimensions of one variable in one file. Positions count in the variable's dimension list, slowest first.
-struct Layout {
-  std::size_t latitude = 0, longitude = 0;
-  std::ptrdiff_t time = -1;  ///< -1: no time dimension
-  const nc::Var* latitude_values = nullptr;
-  const nc::Var* longitude_values = nullptr;
-  const nc::Var* time_values = nullptr;  ///< null exactly when time is -1
-  std::vector<std::size_t> lengths;      ///< of all dimensions; those not named above are 1
+/// The grid mapping of a variable, as far as it decides what its axes mean.
+struct Mapping {
+  enum class Kind { none, latlon, rotated, healpix, projected };
+  Kind kind = Kind::none;
+  std::string name;                   ///< grid_mapping_name, "crs_wkt" where that alone says it
+  const nc::Var* variable = nullptr;  ///< null without a mapping
 };
 
-/// Recognises by units, standard_name, axis, then (said in `remarks`) by name; the coordinate may be the dimension's
-/// own variable or any 1-D variable over it. Error(data) for anything but a latitude-longitude grid: two-dimensional
-/// coordinates, projected or rotated axes, stations, several levels, an extra dimension, no axes at all.
-/// A time dimension of length 1 without decodable units is dropped and said.
-Layout recognise(const Header& header, const nc::Var& variable, Remarks& remarks);
+struct Axis {
+  const nc::Dim* dim = nullptr;
+  Role role = Role::unknown;
+  const nc::Var* values = nullptr;  ///< one-dimensional coordinate; null when there is none
+};
 
-/// True for variables that describe others: coordinates, bounds, grid mappings, cell measures.
-bool is_auxiliary(const Header& header, const nc::Var& variable);
+/// All that recognising a grid looks at.
+struct Context {
+  const Inputs& inputs;
+  const nc::Var& variable;
+  const GridHints& hints;
+  Remarks& remarks;
+  Mapping mapping;
+  std::vector<Axis> axes;  ///< one a dimension of the variable, slowest first
+
+  [[nodiscard]] const Header& header() const { return inputs.header(); }
+  [[nodiscard]] const Axis* axis(Role role) const;  ///< the one of that role; Error(data) when two long ones look so
+  [[noreturn]] void fail(const std::string& text) const;
+};
+
+/// Latitudes and longitudes over the same dimensions.
+struct LatLonPair {
+  const nc::Var* latitude = nullptr;
+  const nc::Var* longitude = nullptr;
+  std::vector<int> dims;  ///< ids, in the variable's order
+};
+
+/// A named mapping that is not in the file is said and counts as none.
+Mapping mapping_of(const Header& header, const nc::Var& variable, Remarks& remarks);
+
+/// Recognises by units, standard_name, axis, then (said in `remarks`) by name; the coordinate may be the dimension's
+/// own variable or any one-dimensional variable over it. Rotated and projected axes are looked for as the mapping says.
+std::vector<Axis> axes_of(const Inputs& inputs, const nc::Var& variable, const std::vector<int>& dims,
+                          const Mapping& mapping, const GridHints& hints, Remarks& remarks);
+
+/// The pair over `rank` of the context's dimensions (time and height never count, and other dimensions must have length
+/// 1). Those that the variable's `coordinates` names come first; Error(data) when several others fit.
+std::optional<LatLonPair> latlon_pair(const Context& context, std::size_t rank);
+
+/// Where time stands among the variable's dimensions, and that all that is neither time nor in `horizontal` has
+/// length 1. A time dimension of length 1 without decodable units is dropped and said.
+struct TimeAxis {
+  std::ptrdiff_t position = -1;
+  const nc::Var* values = nullptr;  ///< null exactly when position is -1
+};
+TimeAxis time_axis_of(const Context& context, const std::vector<int>& horizontal);
 
 }  // namespace windrow::cf

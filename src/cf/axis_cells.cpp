@@ -1,4 +1,4 @@
-// Cell edges of latitude and longitude axes. CF 1.13 section 7.1: bounds decide where they exist; there are no default
+// Cell edges of axes. CF 1.13 section 7.1: bounds decide where they exist; there are no default
 // bounds, so inferred ones lie half-way between centres.
 #include "axis_cells.h"
 
@@ -39,14 +39,6 @@ double rounding_of(const std::vector<double>& values) {
   return 4 * largest * double(std::numeric_limits<float>::epsilon()) / 2;
 }
 
-/// Undoes float32 rounding; returns the tolerance (degrees) within which values count as regular.
-double clean(std::vector<double>& values, bool single_precision) {
-  if (!single_precision && !float_representable(values)) return 1e-9;
-  const double tolerance = std::max(rounding_of(values), 1e-9);
-  for (double& v : values) v = decimal_of_float(v);
-  return tolerance;
-}
-
 /// Positions first + i * step, i = 0..count-1, each correctly rounded where the grid divides the circle.
 struct Regular {
   double first = 0, step = 0;
@@ -56,7 +48,7 @@ struct Regular {
   }
 };
 
-std::optional<Regular> regular(const std::vector<double>& values, double tolerance) {
+std::optional<Regular> regular(const std::vector<double>& values, double tolerance, bool circle = true) {
   const std::size_t n = values.size();
   if (n < 2) return std::nullopt;
   Regular grid{values[0], (values[n - 1] - values[0]) / double(n - 1), 0, 0};
@@ -67,6 +59,7 @@ std::optional<Regular> regular(const std::vector<double>& values, double toleran
     return true;
   };
   if (!fits(grid, tolerance)) return std::nullopt;
+  if (!circle) return grid;
   Regular divided = grid;
   divided.divisions = std::round(360 / grid.step);
   divided.quarter = std::round(values[0] * divided.divisions / 90);
@@ -106,9 +99,11 @@ std::vector<std::size_t> gaps(const std::vector<Cell>& cells, double tolerance) 
 void refuse_gap(const AxisValues& values, const std::vector<Cell>& cells, double tolerance) {
   const std::vector<std::size_t> found = gaps(cells, tolerance);
   if (found.empty()) return;
-  fail(values, fmt::format("gap between {:g} and {:g} degrees while the other cells are {:g} degrees apart; a grid "
-                           "without gaps is needed",
-                           cells[found[0] - 1].centre, cells[found[0]].centre, median_spacing(cells)));
+  fail(
+      values,
+      fmt::format("gap between {:g} and {:g} {} while the other cells are {:g} {} apart; a grid without gaps is "
+                  "needed",
+                  cells[found[0] - 1].centre, cells[found[0]].centre, values.unit, median_spacing(cells), values.unit));
 }
 
 void require_ascending(const AxisValues& values, const std::vector<Cell>& cells) {
@@ -165,9 +160,9 @@ std::vector<double> edges_from_bounds(const AxisValues& values, const std::vecto
     if (k == 0) {
       edges.push_back(cell.low);
     } else if (std::abs(cell.low - edges.back()) > slack) {
-      fail(values, fmt::format("bounds '{}' {} between {:g} and {:g} degrees (positions {} and {})", values.bounds_name,
+      fail(values, fmt::format("bounds '{}' {} between {:g} and {:g} {} (positions {} and {})", values.bounds_name,
                                cell.low > edges.back() ? "leave a gap" : "overlap", std::min(cell.low, edges.back()),
-                               std::max(cell.low, edges.back()), cells[k - 1].index, cell.index));
+                               std::max(cell.low, edges.back()), values.unit, cells[k - 1].index, cell.index));
     }
     edges.push_back(cell.high);
   }
@@ -191,25 +186,26 @@ std::vector<double> edges_regular(const Regular& grid, std::size_t cells) {
 }
 
 /// Replaces edges that are regular (but for half cells at the ends) by correctly rounded ones.
-double regularise(std::vector<double>& edges, double tolerance) {
+double regularise(std::vector<double>& edges, double tolerance, bool circle) {
   const std::size_t n = edges.size();
-  if (const auto whole = regular(edges, tolerance)) {
+  if (const auto whole = regular(edges, tolerance, circle)) {
     for (std::size_t i = 0; i < n; ++i) edges[i] = whole->at(double(i));
     return n > 2 ? whole->step : 0;
   }
   if (n < 5) return 0;
-  const auto inner = regular(std::vector<double>(edges.begin() + 1, edges.end() - 1), tolerance);
+  const auto inner = regular(std::vector<double>(edges.begin() + 1, edges.end() - 1), tolerance, circle);
   if (!inner) return 0;
   for (std::size_t i = 1; i + 1 < n; ++i) edges[i] = inner->at(double(i - 1));
   return 0;
 }
 
 /// Edges inferred from the centres alone.
-void infer_edges(const AxisValues& values, const std::vector<Cell>& cells, double tolerance, AxisCells& result) {
+void infer_edges(const AxisValues& values, const std::vector<Cell>& cells, double tolerance, bool circle,
+                 AxisCells& result) {
   if (cells.size() == 1)
     fail(values,
          fmt::format("a single value ({:g}) without bounds, so the extent of its cell is not known", cells[0].centre));
-  if (const auto grid = regular(result.centres, tolerance)) {
+  if (const auto grid = regular(result.centres, tolerance, circle)) {
     result.edges = edges_regular(*grid, cells.size());
     result.step = grid->step;
   } else {
@@ -219,12 +215,12 @@ void infer_edges(const AxisValues& values, const std::vector<Cell>& cells, doubl
 
 /// Undoes float rounding of centres and bounds alike; returns the tolerance for both.
 double clean_values(AxisValues& values) {
-  double tolerance = clean(values.centres, values.single_precision);
-  if (!values.bounds.empty()) tolerance = std::max(tolerance, clean(values.bounds, values.single_precision));
+  double tolerance = clean_rounding(values.centres, values.single_precision);
+  if (!values.bounds.empty()) tolerance = std::max(tolerance, clean_rounding(values.bounds, values.single_precision));
   return tolerance;
 }
 
-AxisCells finish(const AxisValues& values, const std::vector<Cell>& cells, double tolerance) {
+AxisCells finish(const AxisValues& values, const std::vector<Cell>& cells, double tolerance, bool circle = true) {
   AxisCells result;
   for (const Cell& cell : cells) {
     result.index.push_back(cell.index);
@@ -233,9 +229,9 @@ AxisCells finish(const AxisValues& values, const std::vector<Cell>& cells, doubl
   result.from_bounds = !values.bounds.empty();
   if (result.from_bounds) {
     result.edges = edges_from_bounds(values, cells, tolerance);
-    result.step = regularise(result.edges, tolerance);
+    result.step = regularise(result.edges, tolerance, circle);
   } else {
-    infer_edges(values, cells, tolerance, result);
+    infer_edges(values, cells, tolerance, circle, result);
   }
   return result;
 }
@@ -359,6 +355,27 @@ void close_circle(const AxisValues& values, AxisCells& result, double tolerance,
 }
 
 }  // namespace
+
+double clean_rounding(std::vector<double>& values, bool single_precision) {
+  if (!single_precision && !float_representable(values)) return 1e-9;
+  const double tolerance = std::max(rounding_of(values), 1e-9);
+  for (double& v : values) v = decimal_of_float(v);
+  return tolerance;
+}
+
+AxisCells plane_cells(AxisValues values, Remarks& remarks) {
+  double tolerance = clean_values(values), largest = 0;
+  for (const double centre : values.centres) largest = std::max(largest, std::abs(centre));
+  // Metres far from the origin: differences of doubles are rounded to more than what counts for degrees.
+  tolerance = std::max(tolerance, 16 * largest * std::numeric_limits<double>::epsilon());
+  std::vector<Cell> cells = to_cells(values, remarks);
+  const bool descending = cells.front().centre > cells.back().centre;
+  orient_bounds(values, cells, descending, remarks);
+  if (descending) std::ranges::reverse(cells);
+  require_ascending(values, cells);
+  if (values.bounds.empty()) refuse_gap(values, cells, tolerance);
+  return finish(values, cells, tolerance, false);
+}
 
 AxisCells latitude_cells(AxisValues values, Remarks& remarks) {
   const double tolerance = clean_values(values);

@@ -1,4 +1,4 @@
-// From the values and bounds of one latitude or longitude axis to cells with shared, ascending edges. Pure: no file.
+// From the values and bounds of one axis to cells with shared, ascending edges. Pure: no file.
 #pragma once
 #include <cstddef>
 #include <string>
@@ -8,7 +8,7 @@
 
 namespace windrow::cf {
 
-/// A coordinate axis as the file has it, in degrees.
+/// A coordinate axis as the file has it, in degrees (of plain axes: in `unit`).
 struct AxisValues {
   std::string place;  ///< file, for errors
   std::string name;   ///< of the coordinate variable
@@ -16,6 +16,7 @@ struct AxisValues {
   std::vector<double> bounds;  ///< 2 a centre, or empty
   std::string bounds_name;
   bool single_precision = false;  ///< stored as float
+  std::string unit = "degrees";   ///< for what is said
 };
 
 /// Cells in ascending order: cell k lies between edges[k] and edges[k + 1], and is array position index[k].
@@ -35,5 +36,11 @@ struct AxisCells {
 /// that do not hold their centres.
 AxisCells latitude_cells(AxisValues values, Remarks& remarks);
 AxisCells longitude_cells(AxisValues values, Remarks& remarks);
+/// An axis of a plane: neither poles nor turns.
+AxisCells plane_cells(AxisValues values, Remarks& remarks);
+
+/// Undoes float32 rounding (the shortest decimal that gives the same float), when all values are floats; returns the
+/// tolerance within which values count as regular: 4 ulp of float32, or 1e-9.
+double clean_rounding(std::vector<double>& values, bool single_precision);
 
 }  // namespace windrow::cf

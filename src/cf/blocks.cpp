@@ -8,7 +8,7 @@ namespace windrow::cf {
 
 namespace {
 
-/// Chunk columns [cy0, cy1) x [cx0, cx1) of the latitude-longitude chunk grid.
+/// Chunk columns [cy0, cy1) x [cx0, cx1) of the horizontal chunk grid.
 struct Rectangle {
   std::size_t cy0, cy1, cx0, cx1;
 };
@@ -17,13 +17,15 @@ struct Rectangle {
 struct ChunkGrid {
   std::size_t t = 1, y = 16, x = 64, ny = 0, nx = 0;
   explicit ChunkGrid(const Storage& storage) {
+    if (storage.x < 0) y = 1024, x = 1;
     if (!storage.chunks.empty()) {
-      t = storage.time >= 0 ? storage.chunks[storage.time] : 1;
-      y = storage.chunks[storage.latitude];
-      x = storage.chunks[storage.longitude];
+      const auto along = [&](std::ptrdiff_t dim) { return dim >= 0 ? storage.chunks[dim] : 1; };
+      t = along(storage.time);
+      y = along(storage.y);
+      x = along(storage.x);
     }
-    ny = (storage.lengths[storage.latitude] + y - 1) / y;
-    nx = (storage.lengths[storage.longitude] + x - 1) / x;
+    ny = (storage.length(storage.y) + y - 1) / y;
+    nx = (storage.length(storage.x) + x - 1) / x;
   }
 };
 
@@ -116,8 +118,8 @@ Blocks cut(const Storage& storage, const std::vector<ArrayCell>& cells, std::siz
     const Window& window = result.windows[block.window];
     std::vector<std::size_t> start(storage.lengths.size(), 0);
     if (storage.time >= 0) start[storage.time] = block.t0;
-    start[storage.latitude] = window.y0;
-    start[storage.longitude] = window.x0;
+    if (storage.y >= 0) start[storage.y] = window.y0;
+    if (storage.x >= 0) start[storage.x] = window.x0;
     return start;
   };
   std::ranges::stable_sort(result.blocks, {}, place);

@@ -6,12 +6,12 @@
 
 namespace windrow::cf {
 
-/// Where time, latitude and longitude stand in a variable's dimension list, and how it is stored.
+/// Where time and the (at most two) horizontal dimensions stand in a variable's dimension list, and how it is stored.
 struct Storage {
-  std::ptrdiff_t time = -1;  ///< -1: none
-  std::size_t latitude = 0, longitude = 0;
+  std::ptrdiff_t time = -1, y = -1, x = -1;  ///< -1: none
   std::vector<std::size_t> lengths, chunks;  ///< of every dimension; chunks empty when contiguous
   std::size_t value_bytes = 4;
+  [[nodiscard]] std::size_t length(std::ptrdiff_t dim) const { return dim >= 0 ? lengths[dim] : 1; }
 };
 
 struct ArrayCell {

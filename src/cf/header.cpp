@@ -28,6 +28,12 @@ const nc::Dim& Header::dim(int id) const {
   throw Error(Failure::data, path, "a variable uses a dimension that is not in the root group");
 }
 
+std::string Header::text(const std::string& name) const {
+  for (const nc::Att& att : global)
+    if (att.name == name) return att.text;
+  return {};
+}
+
 std::string Header::shape_text(const nc::Var& variable) const {
   std::string text;
   for (const int id : variable.dims) text += (text.empty() ? "" : ", ") + dim(id).name;
@@ -51,14 +57,24 @@ std::string lower(const std::string& text) {
   return result;
 }
 
-std::vector<double> coordinate_values(const nc::File& file, const nc::Var& variable, const nc::Var* parent) {
+std::size_t raw_size(const nc::File& file, const nc::Var& variable) {
+  const std::size_t size = file.size(variable);
+  if (size > kMostValues)
+    throw Error(Failure::data, file.path(), fmt::format("coordinate '{}' is too large for one", variable.name));
+  return size;
+}
+
+std::vector<double> raw_coordinate(const nc::File& file, const nc::Var& variable) {
   if (nc::type_size(variable.type) == 0 || variable.type == NC_CHAR)
     throw Error(Failure::data, file.path(),
                 fmt::format("coordinate '{}' holds {} values, numbers were expected", variable.name,
                             nc::type_name(variable.type)));
-  if (file.size(variable) > kMostValues)
-    throw Error(Failure::data, file.path(), fmt::format("coordinate '{}' is too large for one", variable.name));
-  std::vector<double> values = file.doubles(variable);
+  raw_size(file, variable);
+  return file.doubles(variable);
+}
+
+std::vector<double> coordinate_values(const nc::File& file, const nc::Var& variable, const nc::Var* parent) {
+  std::vector<double> values = raw_coordinate(file, variable);
   const auto number = [&](const char* name, double otherwise) {
     const nc::Att* att = variable.find(name);
     if (att == nullptr && parent != nullptr) att = parent->find(name);

@@ -218,6 +218,22 @@ std::vector<double> File::doubles(const Var& variable) const {
   return values;
 }
 
+std::vector<std::int64_t> File::integers(const Var& variable) const {
+  const bool whole = type_size(variable.type) > 0 && variable.type != NC_CHAR && variable.type != NC_FLOAT &&
+                     variable.type != NC_DOUBLE;
+  if (!whole)
+    throw Error(
+        Failure::data, path_,
+        "variable '" + variable.name + "' holds " + type_name(variable.type) + " values, integers were expected");
+  std::vector<long long> values(size(variable));
+  const LibraryLock lock;
+  const int status = values.empty() ? NC_NOERR : nc_get_var_longlong(id_, variable.id, values.data());
+  if (status == NC_ERANGE)
+    throw Error(Failure::data, path_, "variable '" + variable.name + "' holds a number that is beyond any index");
+  check(status, path_, "variable " + variable.name);
+  return {values.begin(), values.end()};
+}
+
 void File::raw(const Var& variable, std::span<const std::size_t> start, std::span<const std::size_t> count,
                void* out) const {
   const LibraryLock lock;

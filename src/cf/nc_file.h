@@ -7,6 +7,7 @@
 #include <netcdf.h>
 
 #include <cstddef>
+#include <cstdint>
 #include <span>
 #include <string>
 #include <vector>
@@ -81,6 +82,8 @@ class File {
   [[nodiscard]] std::size_t size(const Var& variable) const;  ///< number of values
   /// All values of a numeric variable, converted to double by the library.
   [[nodiscard]] std::vector<double> doubles(const Var& variable) const;
+  /// All values of an integer variable, exactly. Error(data) for another type or a value beyond 63 bits.
+  [[nodiscard]] std::vector<std::int64_t> integers(const Var& variable) const;
   /// A hyperslab in the variable's own type and native byte order; `out` holds type_size * product(count) bytes.
   void raw(const Var& variable, std::span<const std::size_t> start, std::span<const std::size_t> count,
            void* out) const;

@@ -4,12 +4,14 @@
 #include <algorithm>
 #include <cmath>
 #include <map>
+#include <memory>
+#include <optional>
 #include <set>
 
-#include "axes.h"
 #include "blocks.h"
 #include "grid.h"
 #include "join.h"
+#include "same_grid.h"
 #include "signature.h"
 #include "time_axis.h"
 #include "values.h"
@@ -29,7 +31,7 @@ struct Source {
   nc::Var variable;
   Storage storage;
   Decoding decoding;
-  std::vector<std::size_t> latitude_index, longitude_index;
+  std::shared_ptr<const Places> places;  ///< files of a run share it where they agree
 };
 
 /// All that is learnt from one file.
@@ -58,55 +60,64 @@ std::vector<std::string> data_names(const Header& header) {
                           near.empty() ? "" : fmt::format("; did you mean '{}'?", near), held.empty() ? "none" : held));
 }
 
-Opened open_file(const std::string& path, const std::string& name) {
+std::ptrdiff_t position(const nc::Var& variable, const std::vector<int>& dims, std::size_t which) {
+  if (which >= dims.size()) return -1;
+  return std::ranges::find(variable.dims, dims[which]) - variable.dims.begin();
+}
+
+/// Header and grid; coordinates come from the file that the hints name, where they do.
+Opened open_file(const std::string& path, const std::string& name, const GridHints& hints) {
   check_readable(path);
   const nc::File file = nc::File::open(path);
-  const Header header = read_header(file);
-  const nc::Var* variable = header.find(name);
-  if (variable == nullptr) refuse_missing_variable(header, name);
+  Inputs inputs(file, read_header(file));
+  if (inputs.header().find(name) == nullptr) refuse_missing_variable(inputs.header(), name);
+  const nc::Var variable = *inputs.header().find(name);
 
   Opened opened;
-  const Layout layout = recognise(header, *variable, opened.remarks);
-  FileGrid grid = read_grid(file, header, layout, opened.remarks);
+  std::optional<nc::File> coordinates;
+  if (!hints.coordinates.empty()) {
+    check_readable(hints.coordinates);
+    coordinates = nc::File::open(hints.coordinates);
+    inputs.borrow(*coordinates, variable, opened.remarks);
+  }
+  const Header& header = inputs.header();
+  const Mapping mapping = mapping_of(header, variable, opened.remarks);
+  const Context context{inputs,  variable,
+                        hints,   opened.remarks,
+                        mapping, axes_of(inputs, variable, variable.dims, mapping, hints, opened.remarks)};
+  FileGrid grid = recognise_grid(context);
+  const TimeAxis time = time_axis_of(context, grid.dims);
   opened.grid = std::move(grid.grid);
   Source& source = opened.source;
   source.path = path;
-  source.variable = *variable;
-  source.latitude_index = std::move(grid.latitude_index);
-  source.longitude_index = std::move(grid.longitude_index);
-  source.decoding = read_decoding(header, *variable, opened.remarks);
-  source.storage = {layout.time,    layout.latitude,          layout.longitude,
-                    layout.lengths, file.chunking(*variable), nc::type_size(variable->type)};
-  if (layout.time >= 0) opened.time = read_time(file, header, *layout.time_values, opened.remarks);
+  source.variable = variable;
+  source.places = std::make_shared<const Places>(std::move(grid.places));
+  source.decoding = read_decoding(header, variable, opened.remarks);
+  Storage& storage = source.storage;
+  storage.time = time.position;
+  storage.y = position(variable, grid.dims, 0);
+  storage.x = position(variable, grid.dims, 1);
+  for (const Axis& axis : context.axes) storage.lengths.push_back(axis.dim->length);
+  storage.chunks = file.chunking(variable);
+  storage.value_bytes = nc::type_size(variable.type);
+  if (time.values != nullptr) opened.time = read_time(file, header, *time.values, opened.remarks);
 
   VariableInfo& info = opened.info;
   info.name = name;
-  info.standard_name = variable->text("standard_name");
-  info.long_name = variable->text("long_name");
-  info.units = variable->text("units");
-  info.cell_methods = variable->text("cell_methods");
-  for (const nc::Att& att : variable->attributes) info.attributes.push_back(nc::to_record(att));
+  info.standard_name = variable.text("standard_name");
+  info.long_name = variable.text("long_name");
+  info.units = variable.text("units");
+  info.cell_methods = variable.text("cell_methods");
+  for (const nc::Att& att : variable.attributes) info.attributes.push_back(nc::to_record(att));
   for (const nc::Att& att : header.global) info.global_attributes.push_back(nc::to_record(att));
   return opened;
-}
-
-/// Edges equal within 1e-4 of a cell are the same grid (one file's coordinates rounded otherwise than another's).
-bool same_edges(const std::vector<double>& a, const std::vector<double>& b) {
-  if (a.size() != b.size()) return false;
-  for (std::size_t i = 0; i < a.size(); ++i) {
-    const double width = i > 0 ? a[i] - a[i - 1] : a[1] - a[0];
-    if (std::abs(a[i] - b[i]) > 1e-4 * width) return false;
-  }
-  return true;
 }
 
 void compare(const Opened& first, const Opened& other) {
   const auto differs = [&](const std::string& text) {
     throw Error(Failure::data, other.source.path, fmt::format("{} than in {}", text, first.source.path));
   };
-  if (!same_edges(first.grid.edges.lon_deg, other.grid.edges.lon_deg) ||
-      !same_edges(first.grid.edges.lat_deg, other.grid.edges.lat_deg))
-    differs(fmt::format("the grid is another ({} against {})", other.grid.how, first.grid.how));
+  if (const std::string text = grid_difference(first.grid, other.grid); !text.empty()) differs(text);
   if (!(first.time.calendar == other.time.calendar))
     differs(fmt::format("the calendar is another ({} against {})", other.time.calendar.cf_name(),
                         first.time.calendar.cf_name()));
@@ -202,13 +213,12 @@ class JoinedVariable final : public RunVariable {
   template <class Out>
   void read_source(const Source& source, std::size_t t0, std::size_t t1, const std::vector<std::uint32_t>& cells,
                    Out* out) const {
-    const std::size_t columns = source.longitude_index.size();
     std::vector<ArrayCell> places;
     places.reserve(cells.size());
     for (const std::uint32_t cell : cells) {
-      if (cell / columns >= source.latitude_index.size())
+      if (cell >= source.places->size())
         throw Error(Failure::defect, info_.name, fmt::format("cell {} is not on the grid", cell));
-      places.push_back({source.latitude_index[cell / columns], source.longitude_index[cell % columns], places.size()});
+      places.push_back({source.places->y(cell), source.places->x(cell), places.size()});
     }
     const Blocks blocks = cut(source.storage, places, t0, t1, kBlockBytes);
     const nc::File file = nc::File::open(source.path);
@@ -216,13 +226,14 @@ class JoinedVariable final : public RunVariable {
     for (const Block& block : blocks.blocks) {
       const Window& window = blocks.windows[block.window];
       const std::vector<std::size_t> strides = load(file, source, window, block, buffer);
+      const auto stride = [&](std::ptrdiff_t dim) { return dim >= 0 ? strides[dim] : 0; };
       Gather gather;
       for (const ArrayCell& cell : window.cells) {
-        gather.source.push_back((cell.y - window.y0) * strides[source.storage.latitude] +
-                                (cell.x - window.x0) * strides[source.storage.longitude]);
+        gather.source.push_back((cell.y - window.y0) * stride(source.storage.y) +
+                                (cell.x - window.x0) * stride(source.storage.x));
         gather.target.push_back(cell.target);
       }
-      const std::size_t step = source.storage.time >= 0 ? strides[source.storage.time] : 0;
+      const std::size_t step = stride(source.storage.time);
       for (std::size_t t = block.t0; t < block.t1; ++t)
         decode(source.decoding, buffer.data() + (t - block.t0) * step * source.storage.value_bytes, gather,
                out + (t - t0) * cells.size());
@@ -235,16 +246,20 @@ class JoinedVariable final : public RunVariable {
     const Storage& storage = source.storage;
     const std::size_t rank = storage.lengths.size();
     std::vector<std::size_t> start(rank, 0), count(rank, 1), strides(rank, 1);
-    if (storage.time >= 0) {
-      start[storage.time] = block.t0;
-      count[storage.time] = block.t1 - block.t0;
+    const auto take = [&](std::ptrdiff_t dim, std::size_t first, std::size_t last) {
+      if (dim < 0) return;
+      start[dim] = first;
+      count[dim] = last - first;
+    };
+    take(storage.time, block.t0, block.t1);
+    take(storage.y, window.y0, window.y1);
+    take(storage.x, window.x0, window.x1);
+    std::size_t values = 1;
+    for (std::size_t i = rank; i-- > 0;) {
+      strides[i] = values;
+      values *= count[i];
     }
-    start[storage.latitude] = window.y0;
-    count[storage.latitude] = window.y1 - window.y0;
-    start[storage.longitude] = window.x0;
-    count[storage.longitude] = window.x1 - window.x0;
-    for (std::size_t i = rank - 1; i-- > 0;) strides[i] = strides[i + 1] * count[i + 1];
-    buffer.resize(strides[0] * count[0] * storage.value_bytes);
+    buffer.resize(values * storage.value_bytes);
     file.raw(source.variable, start, count, buffer.data());
     return strides;
   }
@@ -262,16 +277,20 @@ class JoinedVariable final : public RunVariable {
 }  // namespace
 
 std::unique_ptr<RunVariable> open_run(const std::vector<std::string>& paths, const std::string& variable,
-                                      Notices& notices) {
+                                      Notices& notices, const GridHints& hints) {
   if (paths.empty()) throw Error(Failure::missing, variable, "no files were given");
   std::vector<Opened> opened;
   for (const std::string& path : paths) {
-    opened.push_back(open_file(path, variable));
+    opened.push_back(open_file(path, variable, hints));
     if (opened.back().time.steps.empty() && paths.size() > 1)
       throw Error(Failure::data, path,
                   fmt::format("variable '{}' has no time axis, so it cannot be one of {} files of a run", variable,
                               paths.size()));
+    if (opened.size() == 1) continue;
     compare(opened.front(), opened.back());
+    opened.back().grid = {};  // a long run must not hold its grid once a file
+    Source& source = opened.back().source;
+    if (*source.places == *opened.front().source.places) source.places = opened.front().source.places;
   }
   return std::make_unique<JoinedVariable>(std::move(opened), paths, notices);
 }

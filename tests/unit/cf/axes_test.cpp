@@ -1,4 +1,4 @@
-// Laws of recognising a grid's axes from metadata, and of refusing what is no latitude-longitude grid.
+// Laws of recognising a latitude-longitude grid's axes from metadata, and of refusing what is no grid.
 #include <doctest/doctest.h>
 
 #include "sample_run.h"
@@ -112,7 +112,7 @@ TEST_CASE("string attributes of netCDF-4 are read like text") {
   CHECK(run->info().global_attributes[0].text == "Invented");
 }
 
-TEST_CASE("what is no latitude-longitude grid is refused in one clear line") {
+TEST_CASE("what is no grid is refused in one clear line") {
   FileBuilder levels("levels.nc");
   levels.dim("lev", 3).dim("lat", 2).dim("lon", 2);
   levels.var("lev", NC_DOUBLE, {"lev"}, {1000, 850, 500}).att("units", "hPa");
@@ -131,32 +131,22 @@ TEST_CASE("what is no latitude-longitude grid is refused in one clear line") {
         "member.nc: variable 'v': further dimension 'member' of length 3; only dimensions of "
         "length 1 can be dropped");
 
-  FileBuilder curved("curved.nc");
-  curved.dim("j", 2).dim("i", 2);
-  curved.var("lat", NC_DOUBLE, {"j", "i"}, {10, 10, 20, 20}).att("units", "degrees_north");
-  curved.var("lon", NC_DOUBLE, {"j", "i"}, {10, 20, 10, 20}).att("units", "degrees_east");
-  curved.var("v", NC_FLOAT, {"j", "i"}, steps(0, 1, 4)).att("coordinates", "lat lon");
-  CHECK(
-      refusal(curved.done()) ==
-      "curved.nc: variable 'v': latitude and longitude are two-dimensional (lat(j, i)); only latitude-longitude grids "
-      "with one-dimensional axes can be read");
-
   FileBuilder mapped("mapped.nc");
   mapped.dim("y", 2).dim("x", 2);
   mapped.var("crs", NC_INT, {}, {}).att("grid_mapping_name", "lambert_conformal_conic");
   mapped.var("v", NC_FLOAT, {"y", "x"}, steps(0, 1, 4)).att("grid_mapping", "crs");
   CHECK(refusal(mapped.done()) ==
-        "mapped.nc: variable 'v': on a lambert_conformal_conic grid (grid mapping 'crs', "
-        "dimensions (y, x)); only latitude-longitude grids can be read");
+        "mapped.nc: variable 'v': on a lambert_conformal_conic grid (grid mapping 'crs'), but its dimensions (y, x) "
+        "have no coordinate variables that are its axes");
 
-  FileBuilder rotated("rotated.nc");
-  rotated.dim("rlat", 2).dim("rlon", 2);
-  rotated.var("rlat", NC_DOUBLE, {"rlat"}, {1, 2}).att("standard_name", "grid_latitude").att("units", "degrees");
-  rotated.var("rlon", NC_DOUBLE, {"rlon"}, {1, 2}).att("standard_name", "grid_longitude").att("units", "degrees");
-  rotated.var("v", NC_FLOAT, {"rlat", "rlon"}, steps(0, 1, 4));
-  CHECK(refusal(rotated.done()) ==
-        "rotated.nc: variable 'v': projected or rotated axis 'rlat' (grid_latitude); only "
-        "latitude-longitude grids can be read");
+  FileBuilder track("track.nc");
+  track.dim("time", 2);
+  track.var("time", NC_DOUBLE, {"time"}, {1, 2}).att("units", "days since 2000-01-01");
+  track.var("lat", NC_DOUBLE, {"time"}, {1, 2}).att("units", "degrees_north");
+  track.var("lon", NC_DOUBLE, {"time"}, {1, 2}).att("units", "degrees_east");
+  track.var("v", NC_FLOAT, {"time"}, steps(0, 1, 2));
+  CHECK(refusal(track.done()) ==
+        "track.nc: variable 'v': 'lat' varies along the time dimension 'time': this is a track, not a grid");
 
   FileBuilder stations("stations.nc");
   stations.dim("station", 2).dim("n", 2);
@@ -164,14 +154,23 @@ TEST_CASE("what is no latitude-longitude grid is refused in one clear line") {
   stations.var("lon", NC_DOUBLE, {"station"}, {1, 2}).att("units", "degrees_east");
   stations.var("v", NC_FLOAT, {"station", "n"}, steps(0, 1, 4));
   CHECK(refusal(stations.done()) ==
-        "stations.nc: variable 'v': 'lat' and 'lon' share the dimension 'station': these "
-        "are stations or a track, not a grid");
+        "stations.nc: variable 'v': further dimension 'n' of length 2; only dimensions of length 1 can be dropped");
+
+  FileBuilder elsewhere("elsewhere.nc");
+  elsewhere.dim("j", 2)
+      .dim("i", 2)
+      .var("v", NC_FLOAT, {"j", "i"}, steps(0, 1, 4))
+      .att("coordinates", "nav_lat nav_lon");
+  CHECK(refusal(elsewhere.done()) ==
+        "elsewhere.nc: variable 'v': its coordinates nav_lat, nav_lon are not in the file; name the file that holds "
+        "them with grid = { coordinates = \"...\" } in the [[run]]");
 
   FileBuilder bare("bare.nc");
   bare.dim("a", 2).dim("b", 2).var("v", NC_FLOAT, {"a", "b"}, steps(0, 1, 4));
   CHECK(refusal(bare.done()) ==
-        "bare.nc: variable 'v': no latitude-longitude axes among its dimensions (a, b); "
-        "expected one-dimensional coordinates with the units degrees_north and degrees_east");
+        "bare.nc: variable 'v': no grid can be recognised among its dimensions (a, b); expected coordinates with the "
+        "units degrees_north and degrees_east, axes with a grid mapping, or a mesh; coordinates in another file are "
+        "named with grid = { coordinates = \"...\" } in the [[run]]");
 }
 
 TEST_CASE("a missing variable names the near miss and what the file holds") {

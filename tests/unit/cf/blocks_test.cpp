@@ -24,8 +24,8 @@ Storage random_storage() {
   std::vector<std::size_t> order = {0, 1, 2};
   std::swap(order[0], order[below(3)]);
   storage.time = std::ptrdiff_t(order[0]);
-  storage.latitude = order[1];
-  storage.longitude = order[2];
+  storage.y = std::ptrdiff_t(order[1]);
+  storage.x = std::ptrdiff_t(order[2]);
   if (below(3) > 0)
     for (const std::size_t length : storage.lengths) storage.chunks.push_back(1 + below(length));
   return storage;
@@ -36,8 +36,8 @@ Storage random_storage() {
 TEST_CASE("every cell and step is in exactly one block, within its window") {
   for (int round = 0; round < 300; ++round) {
     const Storage storage = random_storage();
-    const std::size_t nt = storage.lengths[storage.time], ny = storage.lengths[storage.latitude],
-                      nx = storage.lengths[storage.longitude];
+    const std::size_t nt = storage.lengths[storage.time], ny = storage.length(storage.y),
+                      nx = storage.length(storage.x);
     std::vector<ArrayCell> cells;
     const std::size_t sparse = 1 + below(20);
     for (std::size_t y = 0; y < ny; ++y)
@@ -63,8 +63,8 @@ TEST_CASE("every cell and step is in exactly one block, within its window") {
       for (const std::size_t t : {block.t0, block.t1 - 1})
         for (std::size_t y = window.y0; y < window.y1; ++y)
           for (std::size_t x = window.x0; x < window.x1; ++x)
-            touched.insert({t / storage.chunks[storage.time], y / storage.chunks[storage.latitude],
-                            x / storage.chunks[storage.longitude]});
+            touched.insert(
+                {t / storage.chunks[storage.time], y / storage.chunks[storage.y], x / storage.chunks[storage.x]});
       for (const auto& chunk : touched) ++chunk_reads[chunk];
       const bool within = values * storage.value_bytes <= limit || touched.size() == 1;
       REQUIRE(within);
@@ -80,8 +80,8 @@ TEST_CASE("blocks follow the file: along its slowest dimension first") {
   storage.lengths = {40, 20, 20};
   storage.chunks = {10, 10, 10};
   storage.time = 0;
-  storage.latitude = 1;
-  storage.longitude = 2;
+  storage.y = 1;
+  storage.x = 2;
   std::vector<ArrayCell> corners = {{0, 0, 0}, {0, 19, 1}, {19, 0, 2}, {19, 19, 3}};
   const Blocks blocks = cut(storage, corners, 0, 40, 40);
   for (std::size_t i = 1; i < blocks.blocks.size(); ++i) CHECK(blocks.blocks[i - 1].t0 <= blocks.blocks[i].t0);
