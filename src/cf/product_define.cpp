@@ -43,6 +43,8 @@ void output(const std::string& path, Call call) {
 
 nc_type library_type(Type type) {
   switch (type) {
+    case Type::text:
+      return NC_CHAR;
     case Type::int8:
       return NC_BYTE;
     case Type::int32:

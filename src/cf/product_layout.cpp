@@ -54,6 +54,7 @@ bool has_unlimited(const ProductFile& product, const std::vector<std::string>& d
 
 std::size_t bytes_of(Type type) {
   switch (type) {
+    case Type::text:
     case Type::int8:
       return 1;
     case Type::int32:
@@ -79,6 +80,7 @@ std::vector<std::size_t> small_chunk(const ProductFile& product, const SmallVari
 
 void encode(const SmallVariable& variable, std::span<const double> values, std::span<std::byte> out) {
   switch (variable.type) {
+    case Type::text:
     case Type::int8:
       return put<std::int8_t>(values, out, variable.name);
     case Type::int32:

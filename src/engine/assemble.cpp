@@ -6,6 +6,7 @@
 #include <cstdlib>
 #include <ctime>
 
+#include "table.h"
 #include "windrow/base/error.h"
 #include "windrow/codec/codec.h"
 #include "windrow/os/files.h"
@@ -150,6 +151,7 @@ void assemble(const StageContext& context, std::size_t index, const pipeline::Sp
     }
   }
   os::publish(temporary, product.path);
+  if (context.session.job.output.csv) write_table(context, product);
   os::replace_file(product.ledger_path, report::to_json(ledger));
 }
 

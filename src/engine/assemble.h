@@ -20,6 +20,7 @@ struct StageContext {
   const Source& source;
   const Target& target;
   const linear_map::Weights& weights;
+  const Regridding& regridding;
   const Scan& scan;
   const Calibration* calibration;            ///< null: regridding only
   std::vector<Notice> notices;               ///< of this field and run: files, stations

@@ -24,11 +24,21 @@ void add_step(report::BalanceLine& line, double source, double absolute, const p
 report::Balance balance_of(const StageContext& context, const Product& product, const pipeline::TileStats& stats) {
   report::Balance out;
   const bool total = context.weights.map->quantity == linear_map::Quantity::total;
-  out.statement = fmt::format(
-      "{} of the regridded field, in double precision, before height, adjustment and rounding; source cells wholly "
-      "inside the mesh count with their own area; source = product + below_min_cover; relative to the integral of "
-      "absolute values of the step",
-      total ? "sums over the mesh" : "integrals over the mesh (source units times steradians)");
+  out.kept = context.regridding.keeps_integrals;
+  if (!out.kept) {
+    const bool vector = context.session.partner_of(context.field).has_value();
+    out.statement = vector || !context.target.mesh->has_area()
+                        ? "components of vectors and values at points have no integral to be kept"
+                        : fmt::format(
+                              "method {} keeps no integrals: source is the integral of what overlaps the mesh, "
+                              "product that of the product's cells (source units times steradians)",
+                              name_of(context.session.job.fields[context.field].method));
+  } else
+    out.statement = fmt::format(
+        "{} of the regridded field, in double precision, before height, adjustment and rounding; source cells wholly "
+        "inside the mesh count with their own area; source = product + below_min_cover; relative to the integral of "
+        "absolute values of the step",
+        total ? "sums over the mesh" : "integrals over the mesh (source units times steradians)");
   out.all.period = "all";
   out.stored = context.calibration == nullptr;
   const auto dates = step_dates(*context.source.variable);

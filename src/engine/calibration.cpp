@@ -83,7 +83,7 @@ std::vector<Placed> place(const CalibrationNeeds& needs, const std::vector<stati
     outcomes.push_back({record.site.id, why});
   };
   for (const auto& record : all) {
-    if (!needs.target.mesh->find(record.site.position)) {
+    if (needs.target.mesh->has_area() && !needs.target.mesh->find(record.site.position)) {
       leave_out(record, "lies outside the mesh");
       continue;
     }

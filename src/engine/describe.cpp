@@ -6,6 +6,7 @@
 #include <set>
 
 #include "assemble.h"
+#include "describe_mesh.h"
 #include "windrow/calendar/time_units.h"
 #include "windrow/linear_map/kernel.h"
 
@@ -22,24 +23,18 @@ constexpr const char* kTimeUnits = "days since 1850-01-01 00:00:00";
 class Describer {
  public:
   Describer(const StageContext& context, const Product& product, const pipeline::TileStats& stats)
-      : context_(context), product_(product), stats_(stats), target_(context.target) {}
+      : context_(context), product_(product), stats_(stats), target_(context.target), mesh_(describe_mesh(context.target)) {}
 
   cf::ProductFile describe(const report::Balance& balance);
 
  private:
   [[nodiscard]] bool fixed() const { return context_.source.variable->frequency() == cf::Frequency::fixed; }
-  [[nodiscard]] std::vector<std::string> horizontal() const {
-    return target_.projected ? std::vector<std::string>{"y", "x"} : std::vector<std::string>{"lat", "lon"};
-  }
+  [[nodiscard]] const std::vector<std::string>& horizontal() const { return mesh_.horizontal; }
   void add(const std::string& name, Type type, std::vector<std::string> dimensions, std::vector<double> values,
            std::vector<NamedValue> attributes, bool deflate = false) {
     file_.small.push_back({name, type, std::move(dimensions), std::move(attributes), std::move(values), deflate});
   }
-  void add_axis(const std::string& name, const std::vector<double>& edges, std::vector<NamedValue> attributes);
   void add_time();
-  void add_positions();
-  void add_grid_mapping();
-  void add_cell_area();
   void add_height();
   void add_cover();
   void add_status();
@@ -48,25 +43,17 @@ class Describer {
   std::vector<NamedValue> data_attributes();
   void add_globals(const report::Balance& balance);
   [[nodiscard]] std::string comment() const;
+  [[nodiscard]] std::string method_words() const;
+  [[nodiscard]] std::string area_method() const;
+  [[nodiscard]] std::string standard_name() const;
 
   const StageContext& context_;
   const Product& product_;
   const pipeline::TileStats& stats_;
   const Target& target_;
+  MeshDescription mesh_;
   cf::ProductFile file_;
 };
-
-void Describer::add_axis(const std::string& name, const std::vector<double>& edges,
-                         std::vector<NamedValue> attributes) {
-  std::vector<double> centres, bounds;
-  for (std::size_t i = 0; i + 1 < edges.size(); ++i) {
-    centres.push_back((edges[i] + edges[i + 1]) / 2);
-    bounds.insert(bounds.end(), {edges[i], edges[i + 1]});
-  }
-  attributes.push_back({"bounds", name + "_bnds"});
-  add(name, Type::float64, {name}, std::move(centres), std::move(attributes));
-  add(name + "_bnds", Type::float64, {name, "bnds"}, std::move(bounds), {});
-}
 
 void Describer::add_time() {
   const auto& variable = *context_.source.variable;
@@ -81,55 +68,6 @@ void Describer::add_time() {
       {{"standard_name", "time"}, {"long_name", "time"}, {"axis", "T"}, {"units", kTimeUnits},
        {"calendar", variable.calendar().cf_name()}, {"bounds", "time_bnds"}});
   add("time_bnds", Type::float64, {"time", "bnds"}, std::move(bounds), {});
-}
-
-void Describer::add_positions() {
-  const std::vector<NamedValue> lat{{"standard_name", "latitude"}, {"long_name", "latitude"}, {"units", "degrees_north"}};
-  const std::vector<NamedValue> lon{{"standard_name", "longitude"}, {"long_name", "longitude"}, {"units", "degrees_east"}};
-  const auto with_axis = [](std::vector<NamedValue> attributes, const char* axis) {
-    attributes.push_back({"axis", axis});
-    return attributes;
-  };
-  if (!target_.projected) {
-    add_axis("lat", target_.y_edges, with_axis(lat, "Y"));
-    add_axis("lon", target_.x_edges, with_axis(lon, "X"));
-    return;
-  }
-  const std::string units = target_.crs.units.empty() ? "m" : target_.crs.units;
-  add_axis("y", target_.y_edges, {{"standard_name", "projection_y_coordinate"}, {"long_name", "y of projection"},
-                                  {"units", units}, {"axis", "Y"}});
-  add_axis("x", target_.x_edges, {{"standard_name", "projection_x_coordinate"}, {"long_name", "x of projection"},
-                                  {"units", units}, {"axis", "X"}});
-  // Geodetic positions of the cell centres, straight from the projection.
-  std::vector<double> longitude, latitude;
-  for (std::size_t y = 0; y < target_.ny; ++y) {
-    for (std::size_t x = 0; x < target_.nx; ++x) {
-      longitude.push_back((target_.x_edges[x] + target_.x_edges[x + 1]) / 2);
-      latitude.push_back((target_.y_edges[y] + target_.y_edges[y + 1]) / 2);
-    }
-  }
-  target_.crs.to_geographic(longitude, latitude);
-  add("lat", Type::float64, {"y", "x"}, std::move(latitude), lat, true);
-  add("lon", Type::float64, {"y", "x"}, std::move(longitude), lon, true);
-}
-
-void Describer::add_grid_mapping() {
-  std::vector<NamedValue> attributes;
-  const std::string& mapping = target_.crs.grid_mapping.name;
-  if (!mapping.empty()) attributes.push_back({"grid_mapping_name", mapping});
-  for (const auto& [name, value] : target_.crs.grid_mapping.attributes) {
-    std::visit([&, &key = name](const auto& given) { attributes.push_back({key, given}); }, value);
-  }
-  attributes.push_back({"crs_wkt", target_.crs.wkt});
-  add("crs", Type::int32, {}, {0}, std::move(attributes));
-}
-
-void Describer::add_cell_area() {
-  std::vector<double> area(target_.mesh->size());
-  const double scale = target_.earth.radius_m * target_.earth.radius_m;
-  for (std::size_t i = 0; i < area.size(); ++i) area[i] = target_.mesh->area(i) * scale;
-  add("cell_area", Type::float64, horizontal(), std::move(area),
-      {{"standard_name", "cell_area"}, {"long_name", "area of the mesh cell"}, {"units", "m2"}}, true);
 }
 
 void Describer::add_height() {
@@ -195,26 +133,54 @@ std::string Describer::comment() const {
   return text;
 }
 
-std::string cell_methods_of(const std::string& source, bool total) {
+std::string Describer::method_words() const {
+  const auto method = context_.session.job.fields[context_.field].method;
+  const bool sampled = method == job::Method::bilinear || method == job::Method::nearest;
+  return target_.mesh->has_area() || sampled ? name_of(method) : "value of the cell that contains the town";
+}
+
+/// What a value stands for on the mesh: a mean or sum over the cell, its commonest category, or the value at its centre.
+std::string cell_methods_of(const std::string& source, const std::string& area) {
   if (source.find("area:") != std::string::npos) return source;
-  const std::string area = total ? "area: sum" : "area: mean";
   return source.empty() ? area : source + " " + area;
+}
+
+/// A vector's component is named after the axis it runs along now.
+std::string Describer::standard_name() const {
+  const auto& field = context_.session.job.fields[context_.field];
+  std::string name = context_.conversion.standard_name;
+  if (field.pair == job::Pair::none) return name;
+  const bool first = field.pair == job::Pair::eastward;
+  const std::string wanted = field.axes == job::VectorAxes::mesh ? (first ? "x_" : "y_")
+                                                                 : (first ? "eastward_" : "northward_");
+  for (const char* old : {"grid_eastward_", "grid_northward_", "eastward_", "northward_", "x_", "y_"}) {
+    const auto at = name.find(old);
+    if (at != 0 && (at == std::string::npos || name[at - 1] != '_')) continue;
+    return name.replace(at, std::string(old).size(), wanted);
+  }
+  return name;
+}
+
+std::string Describer::area_method() const {
+  const auto& field = context_.session.job.fields[context_.field];
+  const bool sampled = field.method == job::Method::bilinear || field.method == job::Method::nearest;
+  if (sampled || !target_.mesh->has_area()) return "area: point";
+  if (field.method == job::Method::majority) return "area: mode";
+  return field.total ? "area: sum" : "area: mean";
 }
 
 std::vector<NamedValue> Describer::data_attributes() {
   const auto& info = context_.source.variable->info();
   std::vector<NamedValue> out;
-  if (!context_.conversion.standard_name.empty()) out.push_back({"standard_name", context_.conversion.standard_name});
+  if (const auto standard = standard_name(); !standard.empty()) out.push_back({"standard_name", standard});
   const auto& name = context_.session.job.fields[context_.field].name;
   out.push_back({"long_name", info.long_name.empty() ? name : info.long_name});
   out.push_back({"units", context_.output_units});
   if (context_.conversion.standard_name.find("temperature") != std::string::npos) {
     out.push_back({"units_metadata", "temperature: on_scale"});
   }
-  out.push_back({"cell_methods", cell_methods_of(info.cell_methods, context_.session.job.fields[context_.field].total)});
-  out.push_back({"grid_mapping", "crs"});
-  if (target_.projected) out.push_back({"coordinates", "lat lon"});
-  out.push_back({"cell_measures", "area: cell_area"});
+  out.push_back({"cell_methods", cell_methods_of(info.cell_methods, area_method())});
+  out.insert(out.end(), mesh_.data_attributes.begin(), mesh_.data_attributes.end());
   out.push_back({"ancillary_variables", "status_flag cover"});
   if (const int bits = context_.input.field.keep_bits; bits > 0) {
     out.push_back({"quantization", "quantization_info"});
@@ -231,6 +197,7 @@ std::vector<NamedValue> Describer::data_attributes() {
 void Describer::add_data() {
   std::vector<std::string> dimensions = horizontal();
   std::vector<std::size_t> chunk{context_.input.chunk.y, context_.input.chunk.x};
+  if (dimensions.size() == 1) chunk.erase(chunk.begin());
   if (!fixed()) {
     dimensions.insert(dimensions.begin(), "time");
     chunk.insert(chunk.begin(), context_.input.chunk.time);
@@ -241,8 +208,7 @@ void Describer::add_data() {
   const auto index = static_cast<std::size_t>(&product_ - context_.products.data());
   if (context_.input.products[index].cover_varies) {
     auto attributes = cover_attributes();
-    attributes.push_back({"grid_mapping", "crs"});
-    if (target_.projected) attributes.push_back({"coordinates", "lat lon"});
+    attributes.insert(attributes.end(), mesh_.data_attributes.begin(), mesh_.data_attributes.end());
     file_.chunked.push_back({"cover", dimensions, chunk, context_.input.level, missing, std::move(attributes)});
   } else {
     add_cover();
@@ -273,7 +239,8 @@ void Describer::add_globals(const report::Balance& balance) {
   const auto& job = context_.session.job;
   const auto& run = job.runs[context_.run];
   auto& out = file_.global;
-  set(out, "Conventions", "CF-1.13");
+  set(out, "Conventions", mesh_.conventions);
+  for (const auto& [name, value] : mesh_.global) set(out, name, value);
   set(out, "title", job.title.empty() ? fmt::format("{} of {} on {}", job.fields[context_.field].name, run.name,
                                                     job.mesh.name) : job.title);
   std::string source_history, source_source;
@@ -288,12 +255,13 @@ void Describer::add_globals(const report::Balance& balance) {
     }
   }
   const bool adjusted = context_.calibration != nullptr;
-  set(out, "source", fmt::format("{}{}", source_source.empty() ? "model output" : source_source,
-                                 adjusted ? ", regridded conservatively and adjusted to stations"
-                                          : ", regridded conservatively"));
+  const std::string method = method_words();
+  set(out, "source", fmt::format("{}, {}{}", source_source.empty() ? "model output" : source_source,
+                                 context_.regridding.keeps_integrals ? "regridded conservatively" : "regridded by " + method,
+                                 adjusted ? " and adjusted to stations" : ""));
   set(out, "history", fmt::format("{}{} windrow {}: {}", source_history.empty() ? "" : source_history + "\n",
                                   newest_input_date(product_), WINDROW_VERSION,
-                                  adjusted ? "regridding (conservative-1), adjustment" : "regridding (conservative-1)"));
+                                  fmt::format("regridding ({}){}", method, adjusted ? ", adjustment" : "")));
   set(out, "run", run.name);
   set(out, "family", run.family);
   if (!run.forcing.empty()) set(out, "run_forcing", run.forcing);
@@ -326,14 +294,9 @@ cf::ProductFile Describer::describe(const report::Balance& balance) {
   if (!fixed()) {
     file_.dimensions.push_back({"time", product_.span.t1 - product_.span.t0, true});
   }
-  const auto names = horizontal();
-  file_.dimensions.push_back({names[0], target_.ny, false});
-  file_.dimensions.push_back({names[1], target_.nx, false});
-  file_.dimensions.push_back({"bnds", 2, false});
+  file_.dimensions.insert(file_.dimensions.end(), mesh_.dimensions.begin(), mesh_.dimensions.end());
   if (!fixed()) add_time();
-  add_positions();
-  add_grid_mapping();
-  add_cell_area();
+  file_.small.insert(file_.small.end(), mesh_.variables.begin(), mesh_.variables.end());
   add_height();
   add_status();
   add_quantization();

@@ -48,6 +48,26 @@ double missing_share(const Source& source) {
   return static_cast<double>(missing) / static_cast<double>(seen);
 }
 
+/// Of a latitude-longitude grid its edges, of any other the extreme centres.
+void add_extent(const cf::Grid& grid, const mesh::Mesh& mesh, Fact& fact) {
+  if (grid.kind == cf::GridKind::latlon) {
+    const auto& edges = grid.edges;
+    fact.add({"longitude", fmt::format("{:.4f} to {:.4f}", edges.lon_deg.front(), edges.lon_deg.back())});
+    fact.add({"latitude", fmt::format("{:.4f} to {:.4f}", edges.lat_deg.front(), edges.lat_deg.back())});
+    return;
+  }
+  double west = 720, east = -720, south = 90, north = -90;
+  for (std::size_t k = 0; k < mesh.size(); ++k) {
+    const GeoPoint centre = mesh.centre(k);
+    west = std::min(west, centre.longitude.degrees());
+    east = std::max(east, centre.longitude.degrees());
+    south = std::min(south, centre.latitude.degrees());
+    north = std::max(north, centre.latitude.degrees());
+  }
+  fact.add({"longitude", fmt::format("centres from {:.4f} to {:.4f}", west, east)});
+  fact.add({"latitude", fmt::format("centres from {:.4f} to {:.4f}", south, north)});
+}
+
 void inspect_variable(const std::string& path, const std::string& name, Fact& fact) {
   Notices notices;
   try {
@@ -57,9 +77,8 @@ void inspect_variable(const std::string& path, const std::string& name, Fact& fa
     fact.add({"units", variable.info().units});
     fact.add({"grid", source.mesh->describe()});
     fact.add({"grid recognised by", variable.grid().how});
-    const auto& edges = variable.grid().edges;
-    fact.add({"longitude", fmt::format("{:.4f} to {:.4f}", edges.lon_deg.front(), edges.lon_deg.back())});
-    fact.add({"latitude", fmt::format("{:.4f} to {:.4f}", edges.lat_deg.front(), edges.lat_deg.back())});
+    if (!variable.grid().why.empty()) fact.add({"because of", variable.grid().why});
+    add_extent(variable.grid(), *source.mesh, fact);
     fact.add({"time step", name_of(variable.frequency())});
     if (variable.frequency() != cf::Frequency::fixed) {
       const auto dates = step_dates(variable);

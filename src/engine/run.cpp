@@ -41,9 +41,8 @@ class Progress {
   ProgressState state_;
 };
 
-double product_bytes(const Session& session, const Product& product) {
-  const auto cells = static_cast<double>(session.job.mesh.x.edges().size() - 1) *
-                     static_cast<double>(session.job.mesh.y.edges().size() - 1);
+double product_bytes(Session& session, const Product& product) {
+  const auto cells = static_cast<double>(session.target().mesh->size());
   return cells * static_cast<double>(product.span.t1 - product.span.t0) * sizeof(float);
 }
 
@@ -184,10 +183,7 @@ void Runner::make_unguarded(StageJob& stage, Notices& notices) {
     progress_.product();
     event("made", fmt::format("{} ({})", product.path, product.stale));
   };
-  const RunReader run(*context.source.variable);
-  std::unique_ptr<RunReader> anchor;
-  if (setup->anchor != nullptr) anchor = std::make_unique<RunReader>(*setup->anchor->variable);
-  pipeline::run_stage(context.input, setup->stage, run, anchor.get(), spool, hooks);
+  pipeline::run_stage(context.input, setup->stage, *setup->run_readers.top(), setup->anchor_readers.top(), spool, hooks);
   spool.remove();
 }
 

@@ -30,7 +30,7 @@ Scan scan_source(const pipeline::SourceReader& reader, const std::vector<std::ui
   out.integral.resize(steps);
   out.absolute.resize(steps);
   double widest = 0;
-  for (const auto c : columns) widest = std::max(widest, column_weight[c]);
+  for (const auto c : columns) widest = std::max(widest, std::fabs(column_weight[c]));
   constexpr std::size_t kSliceBytes = 16 << 20;
   const std::size_t slice =
       std::max<std::size_t>(1, kSliceBytes / sizeof(double) / std::max<std::size_t>(1, columns.size()));
@@ -67,11 +67,18 @@ Scan scan_source(const pipeline::SourceReader& reader, const std::vector<std::ui
 
 std::vector<double> column_weights(const linear_map::LinearMap& map, const std::vector<double>& fraction) {
   auto out = linear_map::column_overlap(map);
+  const std::size_t cells = map.value_columns;
+  std::vector<bool> whole(cells);
   for (std::size_t c = 0; c < out.size(); ++c) {
-    const double own = map.column_area[c];
-    if (std::fabs(out[c] - own) <= kWholeTolerance * own) out[c] = own;
+    const double own = map.column_area[c % cells];
+    if (c < cells) {
+      whole[c] = std::fabs(out[c] - own) <= kWholeTolerance * own;
+      if (whole[c]) out[c] = own;
+    } else if (whole[c % cells] || !map.cover.empty()) {
+      out[c] = 0;  // gradients about the centroid of a whole cell, and multipliers, move nothing in or out of it
+    }
     if (map.quantity == linear_map::Quantity::total) out[c] /= own;
-    if (!fraction.empty()) out[c] *= std::isnan(fraction[c]) ? 0.0 : fraction[c];
+    if (!fraction.empty()) out[c] *= std::isnan(fraction[c % cells]) ? 0.0 : fraction[c % cells];
   }
   return out;
 }

@@ -23,7 +23,8 @@ Scan scan_source(const pipeline::SourceReader& reader, const std::vector<std::ui
                  const std::vector<double>& column_weight, std::size_t steps);
 
 /// Overlap area of each column times its fraction; a column wholly inside the mesh counts with its own area, which makes
-/// the balance independent of the pairings. Totals: the share of the column that lies inside the mesh.
+/// the balance independent of the pairings. Totals: the share of the column that lies inside the mesh. Increments count
+/// with what they add to the part of a cell that the mesh covers.
 std::vector<double> column_weights(const linear_map::LinearMap& map, const std::vector<double>& fraction);
 
 /// Cover of every mesh cell under one missing pattern.

@@ -5,6 +5,7 @@
 #include <algorithm>
 
 #include "calibration.h"
+#include "table.h"
 #include "windrow/base/error.h"
 #include "windrow/codec/codec.h"
 #include "windrow/report/ledger.h"
@@ -15,12 +16,12 @@ namespace {
 // Raised whenever the same job and inputs give other values or another file layout.
 constexpr const char* kProductFormat = "windrow product, format 1, version " WINDROW_VERSION;
 
-plan::Found find_product(const Product& product) {
+plan::Found find_product(const Product& product, bool table) {
   plan::Found found;
   const auto state = os::state(product.path);
   if (!state) return found;
   found.product = true;
-  if (!os::state(product.ledger_path)) return found;
+  if (!os::state(product.ledger_path) || (table && !os::state(table_path(product.path)))) return found;
   try {
     const auto ledger = report::parse_ledger(os::read_text(product.ledger_path), product.ledger_path);
     found.product = ledger.product_bytes == state->size;
@@ -53,14 +54,15 @@ Session::Session(const std::string& job_file, const Options& given)
 void Session::write_nothing() { maps_ = std::make_unique<MapStore>(""); }
 
 const Target& Session::target() {
-  if (!target_) target_ = make_target(job.mesh);
+  if (!target_) target_ = make_target(job, *maps_);
   return *target_;
 }
 
 Session::Opened& Session::opened(std::size_t field, std::size_t run) {
   Opened& found = sources_[{run, job.fields[field].variable}];
   if (!found.source.variable) {
-    found.source.variable = cf::open_run(files_[run], job.fields[field].variable, found.notices);
+    found.source.variable = cf::open_run(files_[run], job.fields[field].variable, found.notices,
+                                          hints_of(job.runs[run].grid));
   }
   return found;
 }
@@ -70,11 +72,20 @@ const cf::RunVariable& Session::variable(std::size_t field, std::size_t run) {
 }
 
 const Source& Session::source(std::size_t field, std::size_t run) {
-  Source& source = opened(field, run).source;
+  Opened& found = opened(field, run);
+  Source& source = found.source;
   if (!source.mesh) {
-    source.mesh = mesh::make_latlon(source.variable->grid().edges, target().earth, files_[run].front());
+    source.mesh = mesh_of(source.variable->grid(), target().earth, files_[run].front(), found.notices).mesh;
   }
   return source;
+}
+
+std::optional<std::size_t> Session::partner_of(std::size_t field) const {
+  const auto pair = job.fields[field].pair;
+  for (std::size_t k = 0; pair != job::Pair::none && k < job.fields.size(); ++k) {
+    if (job.fields[k].pair != job::Pair::none && job.fields[k].pair != pair) return k;
+  }
+  return {};
 }
 
 std::vector<Notice> Session::notices(std::size_t field, std::size_t run) {
@@ -109,6 +120,8 @@ plan::Key Session::key_of(std::size_t field, std::size_t run, const plan::Produc
     if (!path.empty()) inputs.push_back(path);
   };
   add(spec.land_fraction);
+  add(spec.grid.coordinates);
+  for (const auto& path : mesh_files(job.mesh)) add(path);
   if (whole) {
     const std::size_t anchor = anchor_of(run);
     if (anchor != run) {
@@ -152,7 +165,7 @@ std::vector<Product> Session::products(std::size_t field, std::size_t run) {
     product.span = {t, end, true};
     product.key = key_of(field, run, product.span, product.inputs);
     product.key_digest = digest_of(product.key);
-    product.stale = plan::why_stale(find_product(product), product.key);
+    product.stale = plan::why_stale(find_product(product, job.output.csv), product.key);
     product.span.wanted = !product.stale.empty();
     out.push_back(std::move(product));
     t = end;

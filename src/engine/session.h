@@ -45,6 +45,8 @@ class Session {
   const Target& target();                                    ///< made on first use
   const cf::RunVariable& variable(std::size_t field, std::size_t run);
   const Source& source(std::size_t field, std::size_t run);  ///< variable with its mesh
+  /// The other field of a vector pair; nothing for a scalar.
+  [[nodiscard]] std::optional<std::size_t> partner_of(std::size_t field) const;
   /// What was odd in the files of a field's variable in a run.
   [[nodiscard]] std::vector<Notice> notices(std::size_t field, std::size_t run);
   [[nodiscard]] std::size_t anchor_of(std::size_t run) const;

@@ -2,31 +2,26 @@
 
 #include <fmt/format.h>
 
-#include <algorithm>
 #include <numeric>
 
 #include "windrow/base/error.h"
-#include "windrow/codec/codec.h"
 #include "windrow/geo/crs.h"
 #include "windrow/geo/raster.h"
 #include "windrow/linear_map/kernel.h"
 #include "windrow/os/files.h"
-#include "windrow/overlap/overlap.h"
 #include "windrow/text/words.h"
 #include "windrow/units/units.h"
 
 namespace windrow::engine {
 namespace {
 
-// Part of every map's name: a change of the geometry code that changes shares must change it.
-constexpr const char* kMapFormat = "conservative-1 map, format 1";
-
-std::string only_variable(const std::string& path, const std::string& standard_name, Notices& notices) {
+std::string only_variable(const std::string& path, const std::string& standard_name, Notices& notices,
+                          const cf::GridHints& hints) {
   const auto names = cf::data_variables(path);
   if (names.size() == 1) return names.front();
   std::vector<std::string> fitting;
   for (const auto& name : names) {
-    if (cf::open_run({path}, name, notices)->info().standard_name == standard_name) fitting.push_back(name);
+    if (cf::open_run({path}, name, notices, hints)->info().standard_name == standard_name) fitting.push_back(name);
   }
   if (fitting.size() == 1) return fitting.front();
   throw Error(Failure::data, path, fmt::format("holds {} variables and not exactly one with standard_name {}; expected "
@@ -36,19 +31,19 @@ std::string only_variable(const std::string& path, const std::string& standard_n
 }  // namespace
 
 Source open_source(const std::vector<std::string>& files, const std::string& variable, const mesh::Earth& earth,
-                   Notices& notices) {
+                   Notices& notices, const cf::GridHints& hints) {
   Source out;
-  out.variable = cf::open_run(files, variable, notices);
-  out.mesh = mesh::make_latlon(out.variable->grid().edges, earth, files.front());
+  out.variable = cf::open_run(files, variable, notices, hints);
+  out.mesh = mesh_of(out.variable->grid(), earth, files.front(), notices).mesh;
   return out;
 }
 
 FixedField read_fixed(const std::string& path, const std::string& standard_name, const std::string& units,
-                      const mesh::Earth& earth, Notices& notices) {
+                      const mesh::Earth& earth, Notices& notices, const cf::GridHints& hints) {
   if (!os::state(path)) throw Error(Failure::missing, path, "no such file");
   FixedField out;
-  out.variable = only_variable(path, standard_name, notices);
-  const auto source = open_source({path}, out.variable, earth, notices);
+  out.variable = only_variable(path, standard_name, notices, hints);
+  const auto source = open_source({path}, out.variable, earth, notices, hints);
   if (source.variable->time().size() > 1) {
     throw Error(Failure::data, fmt::format("{}: {}", path, out.variable), "varies in time; expected a fixed field");
   }
@@ -64,21 +59,28 @@ FixedField read_fixed(const std::string& path, const std::string& standard_name,
   return out;
 }
 
-FixedField read_height(const std::string& path, const mesh::Earth& earth, Notices& notices) {
+GridMesh raster_mesh(const std::string& path, const geo::Raster& raster, const mesh::Earth& earth, Notices& notices) {
+  GridMesh out;
+  if (raster.crs_wkt.empty()) notices.add(path, "has no CRS; read as longitude and latitude in degrees");
+  out.crs = geo::make_crs(raster.crs_wkt.empty() ? "OGC:CRS84" : raster.crs_wkt, path);
+  if (out.crs->projected) {
+    out.mesh = mesh::make_projected(raster.x_edges, raster.y_edges, out.crs->to_geographic, out.crs->from_geographic,
+                                    earth, out.crs->wkt, path);
+  } else {
+    out.mesh = mesh::make_latlon({raster.x_edges, raster.y_edges}, earth, path);
+  }
+  return out;
+}
+
+FixedField read_height(const std::string& path, const mesh::Earth& earth, Notices& notices,
+                       const cf::GridHints& hints) {
   if (!os::state(path)) throw Error(Failure::missing, path, "no such file");
-  if (cf::looks_like_netcdf(path)) return read_fixed(path, "surface_altitude", "m", earth, notices);
+  if (cf::looks_like_netcdf(path)) return read_fixed(path, "surface_altitude", "m", earth, notices, hints);
   auto raster = geo::read_raster(path, path);
   FixedField out;
   out.variable = "band 1";
   out.units = "m";
-  if (raster.crs_wkt.empty()) notices.add(path, "has no CRS; read as longitude and latitude in degrees");
-  const geo::Crs crs = geo::make_crs(raster.crs_wkt.empty() ? "OGC:CRS84" : raster.crs_wkt, path);
-  if (crs.projected) {
-    out.mesh = mesh::make_projected(raster.x_edges, raster.y_edges, crs.to_geographic, crs.from_geographic, earth,
-                                    crs.wkt, path);
-  } else {
-    out.mesh = mesh::make_latlon({raster.x_edges, raster.y_edges}, earth, path);
-  }
+  out.mesh = raster_mesh(path, raster, earth, notices).mesh;
   out.values = std::move(raster.values);
   if (!raster.units.empty() && raster.units != "m") {
     const auto convert = units::conversion(raster.units, "m", "surface_altitude", path);
@@ -87,36 +89,29 @@ FixedField read_height(const std::string& path, const mesh::Earth& earth, Notice
   return out;
 }
 
-MapPtr MapStore::conservative(const mesh::Mesh& source, const mesh::Mesh& target, linear_map::Quantity quantity) {
-  const auto key = codec::Hasher()
-                       .add(std::string(kMapFormat))
-                       .add(source.digest().hex())
-                       .add(target.digest().hex())
-                       .add(static_cast<std::int64_t>(quantity))
-                       .finish()
-                       .hex();
-  if (const auto found = held_.find(key); found != held_.end()) return found->second;
-  auto map = std::make_shared<linear_map::LinearMap>();
-  const std::string path = folder_.empty() ? "" : fmt::format("{}/{}.map", folder_, key);
-  const bool stored = !path.empty() && os::state(path) && linear_map::parse(os::read_bytes(path), *map);
-  if (!stored) {
-    auto result = overlap::conservative(source, target, quantity);
-    *map = std::move(result.map);
-    const auto& closure = result.closure;
-    map->provenance += fmt::format("; row sums within {:.2e} (bound there {:.2e}, {} rows), column sums within {:.2e} "
-                                   "(bound there {:.2e}, {} columns), before normalising",
-                                   closure.worst_row, closure.worst_row_bound, closure.rows_checked,
-                                   closure.worst_column, closure.worst_column_bound, closure.columns_checked);
-    if (!path.empty()) {
-      os::make_folder(folder_);
-      os::replace_file(path, linear_map::serialise(*map));
-    }
+FixedField read_mask(const std::string& path, const mesh::Earth& earth, Notices& notices) {
+  FixedField out;
+  if (!cf::looks_like_netcdf(path)) {
+    auto raster = geo::read_raster(path, path);
+    out.mesh = raster_mesh(path, raster, earth, notices).mesh;
+    out.values = std::move(raster.values);
+    return out;
   }
-  held_[key] = map;
-  return map;
+  const auto names = cf::data_variables(path);
+  if (names.size() != 1) {
+    throw Error(Failure::data, path, fmt::format("holds {} variables; expected a mask with one", names.size()));
+  }
+  const auto source = open_source({path}, names.front(), earth, notices);
+  out.mesh = source.mesh;
+  std::vector<std::uint32_t> cells(out.mesh->size());
+  std::iota(cells.begin(), cells.end(), 0U);
+  out.values.resize(cells.size());
+  source.variable->read(0, 1, cells, out.values.data());
+  return out;
 }
 
-std::vector<double> onto_mesh(const FixedField& field, const mesh::Mesh& target, MapStore& maps) {
+std::vector<double> onto_mesh(const FixedField& field, const mesh::Mesh& target, MapStore& maps,
+                              std::vector<double>* cover) {
   const auto map = maps.conservative(*field.mesh, target, linear_map::Quantity::mean);
   const auto weights = linear_map::make_weights(*map, {});
   std::vector<std::uint32_t> all(map->columns);
@@ -125,8 +120,12 @@ std::vector<double> onto_mesh(const FixedField& field, const mesh::Mesh& target,
   block.resize(all, all.size(), 1);
   block.fill(0, 1, field.values.data());
   std::vector<double> out(map->rows());
+  if (cover != nullptr) cover->resize(out.size());
+  linear_map::RowLanes lanes;
   for (std::size_t row = 0; row < out.size(); ++row) {
-    linear_map::apply_series(weights, row, block, std::span<double>(&out[row], 1));
+    linear_map::apply_row(weights, row, block, 0, lanes);
+    out[row] = lanes.value[0];
+    if (cover != nullptr) (*cover)[row] = lanes.cover[0];
   }
   return out;
 }

@@ -19,10 +19,6 @@ constexpr std::int64_t kAssemblyBytesPerCell = 64;
 // Mantissa bits for significant decimal digits: digits * log2(10), rounded up.
 constexpr double kBitsPerDigit = 3.321928094887362;
 
-std::string place_of(const Session& session, std::size_t field, std::size_t run) {
-  return fmt::format("field '{}', run '{}'", session.job.fields[field].name, session.job.runs[run].name);
-}
-
 bool same_edges(const std::vector<double>& a, const std::vector<double>& b) {
   constexpr double kSame_deg = 1e-5;  // float32 coordinates of the same grid differ by less
   return a.size() == b.size() && std::equal(a.begin(), a.end(), b.begin(), [](double x, double y) {
@@ -30,15 +26,24 @@ bool same_edges(const std::vector<double>& a, const std::vector<double>& b) {
          });
 }
 
+/// The same cells, as far as two files' rounding tells.
 bool same_grid(const mesh::Mesh& a, const mesh::Mesh& b) {
-  return a.latlon() != nullptr && b.latlon() != nullptr && same_edges(a.latlon()->lon_deg, b.latlon()->lon_deg) &&
-         same_edges(a.latlon()->lat_deg, b.latlon()->lat_deg);
+  if (a.latlon() != nullptr && b.latlon() != nullptr && a.rotation() == nullptr && b.rotation() == nullptr) {
+    return same_edges(a.latlon()->lon_deg, b.latlon()->lon_deg) && same_edges(a.latlon()->lat_deg, b.latlon()->lat_deg);
+  }
+  constexpr double kSame_m = 2;
+  if (a.size() != b.size()) return false;
+  for (std::size_t k = 0; k < a.size(); ++k) {
+    if (!(reach::distance_m(a.centre(k), b.centre(k)) <= kSame_m)) return false;
+  }
+  return true;
 }
 
 std::vector<double> land_fraction(Session& session, std::size_t run, const Source& source, Notices& notices) {
   const std::string& path = session.job.runs[run].land_fraction;
   if (path.empty()) return {};
-  const auto field = read_fixed(path, "land_area_fraction", "1", session.target().earth, notices);
+  const auto field = read_fixed(path, "land_area_fraction", "1", session.target().earth, notices,
+                                hints_of(session.job.runs[run].grid));
   if (!same_grid(*field.mesh, *source.mesh)) {
     throw Error(Failure::data, path, fmt::format("is on another grid ({}) than run '{}' ({})", field.mesh->describe(),
                                                  session.job.runs[run].name, source.mesh->describe()));
@@ -46,18 +51,35 @@ std::vector<double> land_fraction(Session& session, std::size_t run, const Sourc
   return field.values;
 }
 
+std::vector<std::uint32_t> sorted_unique(std::vector<std::uint32_t> values) {
+  std::sort(values.begin(), values.end());
+  values.erase(std::unique(values.begin(), values.end()), values.end());
+  return values;
+}
+
 /// Model height on the mesh: with the run's own weights where the grids are the same, so that cells with the same
 /// pairings have the same height too.
 std::vector<double> model_height_on_mesh(Session& session, std::size_t field, std::size_t run, const Source& source,
-                                         const linear_map::Weights& weights, Notices& notices) {
-  const auto height = read_height(session.height_path(field, run), session.target().earth, notices);
+                                         const linear_map::Weights& weights,
+                                         const linear_map::Extension* extension, Notices& notices) {
+  const auto height = read_height(session.height_path(field, run), session.target().earth, notices,
+                                  hints_of(session.job.runs[run].grid));
   if (!same_grid(*height.mesh, *source.mesh)) return onto_mesh(height, *session.target().mesh, session.maps());
+  const linear_map::LinearMap& map = *weights.map;
+  const auto columns = sorted_unique(map.column);
+  std::vector<double> values(columns.size());
+  if (extension == nullptr) {
+    for (std::size_t i = 0; i < columns.size(); ++i) values[i] = height.values[columns[i]];
+  } else {
+    const auto extender = extension->extender(columns);
+    std::vector<double> needed;
+    for (const auto cell : extender->needs()) needed.push_back(height.values[cell]);
+    extender->extend(needed, values);
+  }
   linear_map::SourceBlock block;
-  std::vector<std::uint32_t> all(height.values.size());
-  for (std::size_t i = 0; i < all.size(); ++i) all[i] = static_cast<std::uint32_t>(i);
-  block.resize(all, all.size(), 1);
-  block.fill(0, 1, height.values.data());
-  std::vector<double> out(weights.map->rows());
+  block.resize(columns, map.columns, 1);
+  block.fill(0, 1, values.data());
+  std::vector<double> out(map.rows());
   for (std::size_t row = 0; row < out.size(); ++row) {
     linear_map::apply_series(weights, row, block, std::span<double>(&out[row], 1));
   }
@@ -66,7 +88,7 @@ std::vector<double> model_height_on_mesh(Session& session, std::size_t field, st
 
 /// The nearest source cells of every mesh cell, by the distance of centres.
 pipeline::FillCandidates fill_candidates(const mesh::Mesh& source, const mesh::Mesh& target,
-                                         const std::vector<std::uint32_t>& columns) {
+                                         const std::vector<std::uint32_t>& columns, const std::vector<bool>& outside) {
   constexpr std::size_t kPerRow = pipeline::FillCandidates::kPerRow;
   pipeline::FillCandidates out;
   out.column.assign(target.size() * kPerRow, linear_map::SourceBlock::kNotHeld);
@@ -75,6 +97,7 @@ pipeline::FillCandidates fill_candidates(const mesh::Mesh& source, const mesh::M
   for (const auto c : columns) centres.push_back(source.centre(c));
   std::vector<std::pair<double, std::uint32_t>> near(columns.size());
   for (std::size_t row = 0; row < target.size(); ++row) {
+    if (!outside.empty() && outside[row]) continue;
     const GeoPoint centre = target.centre(row);
     for (std::size_t i = 0; i < columns.size(); ++i) near[i] = {reach::distance_m(centre, centres[i]), columns[i]};
     const std::size_t count = std::min(kPerRow, near.size());
@@ -82,12 +105,6 @@ pipeline::FillCandidates fill_candidates(const mesh::Mesh& source, const mesh::M
     for (std::size_t k = 0; k < count; ++k) out.column[row * kPerRow + k] = near[k].second;
   }
   return out;
-}
-
-std::vector<std::uint32_t> sorted_unique(std::vector<std::uint32_t> values) {
-  std::sort(values.begin(), values.end());
-  values.erase(std::unique(values.begin(), values.end()), values.end());
-  return values;
 }
 
 std::vector<std::vector<std::uint32_t>> columns_by_block(const pipeline::StageInput& input) {
@@ -113,11 +130,13 @@ std::vector<std::vector<std::uint32_t>> columns_by_block(const pipeline::StageIn
 }
 
 pipeline::StepBins step_bins(const Scan& scan, const linear_map::LinearMap& map, const pipeline::FieldMath& math) {
+  // A value is at most the sum of three columns' extremes: a vector's components, or a mean and its increment.
   double factor = 1;
   if (map.quantity == linear_map::Quantity::mean) {
     factor = 0;
     for (const double area : map.row_area) factor = std::max(factor, area);
   }
+  const double columns = map.columns > map.value_columns ? 3 : 1;
   // Clamped values, taken back to source units, may be larger than any source value.
   double limit = 0;
   if (math.has_range) {
@@ -125,7 +144,7 @@ pipeline::StepBins step_bins(const Scan& scan, const linear_map::LinearMap& map,
   }
   pipeline::StepBins out;
   for (const double largest : scan.largest) {
-    const auto bins = BinnedSum::bins(2 * factor * std::max(largest, limit), map.rows() + 1);
+    const auto bins = BinnedSum::bins(2 * factor * std::max(columns * largest, limit), map.rows() + 1);
     out.m1.push_back(bins.m1);
     out.m2.push_back(bins.m2);
   }
@@ -158,6 +177,7 @@ void set_adjustment(Session& session, SharedFits& fits, std::size_t field, std::
   adjust.run_is_anchor = anchor == run;
   if (!adjust.run_is_anchor) {
     out.anchor = &session.source(field, anchor);
+    out.anchor_readers = make_readers(session, field, anchor, out.regridding);
     if (!same_grid(*out.anchor->mesh, *source.mesh)) {
       throw Error(Failure::data, place_of(session, field, run),
                   fmt::format("is on another grid than its anchor run '{}'", session.job.runs[anchor].name));
@@ -183,10 +203,32 @@ void set_adjustment(Session& session, SharedFits& fits, std::size_t field, std::
   if (!adjust.terrain) return;
   adjust.lapse = fit.calibration.lapse;
   adjust.cell_height = fits.cell_height(session);
-  adjust.model_height = model_height_on_mesh(session, field, run, source, out.weights, notices);
+  adjust.model_height = model_height_on_mesh(session, field, run, source, out.weights, out.regridding.extension.get(), notices);
   if (!adjust.run_is_anchor) {
-    adjust.anchor_model_height = model_height_on_mesh(session, field, anchor, source, out.weights, notices);
+    adjust.anchor_model_height = model_height_on_mesh(session, field, anchor, source, out.weights, out.regridding.extension.get(), notices);
   }
+}
+
+std::vector<std::uint32_t> value_columns(const std::vector<std::uint32_t>& columns, const linear_map::LinearMap& map) {
+  return {columns.begin(), std::lower_bound(columns.begin(), columns.end(), map.value_columns)};
+}
+
+/// Conservative methods balance with their own map; sampled fields are compared with what overlaps the mesh. Vectors and
+/// points have no integral.
+void scan(Session& session, StageSetup& out, std::vector<std::uint32_t> columns) {
+  const auto& context = *out.context;
+  std::vector<double> weight(out.map->columns, 0.0);
+  const bool scalar = !session.partner_of(context.field);
+  if (scalar && out.regridding.keeps_integrals) {
+    weight = column_weights(*out.map, out.fraction);
+  } else if (scalar && context.target.mesh->has_area() && context.source.mesh->has_area()) {
+    const auto overlap = session.maps().conservative(*context.source.mesh, *context.target.mesh,
+                                                     linear_map::Quantity::mean);
+    weight = column_weights(*overlap, {});
+    columns.insert(columns.end(), overlap->column.begin(), overlap->column.end());
+    columns = sorted_unique(std::move(columns));
+  }
+  out.scan = scan_source(*out.run_readers.top(), columns, weight, context.source.variable->time().size());
 }
 
 void plan_stage(Session& session, StageSetup& out, const std::string& place) {
@@ -249,7 +291,8 @@ const SharedFits::Fit& SharedFits::fit(Session& session, std::size_t field, std:
   const auto conversion = units::conversion(info.units, units, info.standard_name, place_of(session, field, anchor));
   std::optional<FixedField> height;
   if (session.job.fields[field].terrain) {
-    height = read_height(session.height_path(field, anchor), session.target().earth, notices);
+    height = read_height(session.height_path(field, anchor), session.target().earth, notices,
+                         hints_of(session.job.runs[anchor].grid));
   }
   Fit made;
   try {
@@ -284,16 +327,20 @@ std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size
   const std::string units = output_units(session, field, run);
   const auto& info = source.variable->info();
   const auto conversion = units::conversion(info.units, units, info.standard_name, place);
-  const auto quantity = spec.total ? linear_map::Quantity::total : linear_map::Quantity::mean;
-  out->map = session.maps().conservative(*source.mesh, *target.mesh, quantity);
+  auto regridded = regrid_field(session, field, run, conversion.affine);
+  out->regridding = std::move(regridded.regridding);
+  out->map = std::move(regridded.map);
+  out->run_readers = std::move(regridded.readers);
   if (out->map->pairings() == 0) {
     throw Error(Failure::data, place, fmt::format("the mesh lies outside the model grid ({})",
                                                   source.mesh->describe()));
   }
   out->fraction = land_fraction(session, run, source, notices);
   out->weights = linear_map::make_weights(*out->map, out->fraction);
+  out->weights.categories = out->regridding.categories;
+  if (non_negative(spec, conversion.affine)) out->weights.not_below = 0;
   out->context = std::make_unique<StageContext>(StageContext{session, field, run, source, target, out->weights,
-                                                             out->scan, nullptr, {}, conversion, units,
+                                                             out->regridding, out->scan, nullptr, {}, conversion, units,
                                                              std::move(products), {}});
   auto& context = *out->context;
   auto& input = context.input;
@@ -302,10 +349,11 @@ std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size
     context.calibration = out->calibration;
     input.adjust = &out->adjust;
   }
-  auto columns = sorted_unique(out->map->column);
-  if (spec.fill_nearest) input.fill = fill_candidates(*source.mesh, *target.mesh, columns);
-  const RunReader reader(*source.variable);
-  out->scan = scan_source(reader, columns, column_weights(*out->map, out->fraction), source.variable->time().size());
+  const auto columns = sorted_unique(out->map->column);
+  if (spec.fill_nearest) {
+    input.fill = fill_candidates(*source.mesh, *target.mesh, value_columns(columns, *out->map), target.outside);
+  }
+  scan(session, *out, columns);
   input.weights = &out->weights;
   input.ny = target.ny;
   input.nx = target.nx;
@@ -319,6 +367,7 @@ std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size
   }
   context.notices = session.notices(field, run);
   for (const auto& notice : notices.list()) context.notices.push_back(notice);
+  context.notices.insert(context.notices.end(), target.notices.begin(), target.notices.end());
   plan_stage(session, *out, place);
   return out;
 }

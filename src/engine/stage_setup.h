@@ -8,6 +8,7 @@
 
 #include "assemble.h"
 #include "calibration.h"
+#include "field_regridding.h"
 #include "session.h"
 #include "windrow/plan/units.h"
 
@@ -31,7 +32,9 @@ class SharedFits {
 
 /// Everything of a stage; members refer to one another, so it stays where it is made.
 struct StageSetup {
-  MapPtr map;
+  Regridding regridding;
+  MapPtr map;                                ///< the regridding's, or made from it: vectors, masked cells
+  ReaderSet run_readers, anchor_readers;
   std::vector<double> fraction;              ///< land fraction of every source cell; empty: none
   linear_map::Weights weights;
   Scan scan;

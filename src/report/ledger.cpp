@@ -43,7 +43,7 @@ std::string to_json(const Ledger& ledger) {
   for (const auto& station : ledger.stations) stations.push_back({{"id", station.id}, {"outcome", station.outcome}});
   for (const auto& [place, text] : ledger.notices) notices.push_back({{"place", place}, {"text", text}});
   for (const auto& month : ledger.balance.months) months.push_back(line(month));
-  Json balance = {{"statement", ledger.balance.statement}, {"all", line(ledger.balance.all)}, {"months", months}};
+  Json balance = {{"statement", ledger.balance.statement}, {"kept", ledger.balance.kept}, {"all", line(ledger.balance.all)}, {"months", months}};
   if (ledger.balance.stored) balance["stored_float32_largest_relative_residual"] = ledger.balance.stored_relative;
   const Json json = {{"windrow_ledger", ledger.format},
                      {"windrow_version", ledger.version},
@@ -91,6 +91,7 @@ Ledger parse_ledger(const std::string& text, const std::string& path) {
     out.maximum = json.at("maximum");
     const Json& balance = json.at("balance");
     out.balance.statement = balance.at("statement");
+    out.balance.kept = balance.value("kept", true);
     out.balance.all = line_from(balance.at("all"));
     for (const auto& month : balance.at("months")) out.balance.months.push_back(line_from(month));
     out.balance.stored = balance.contains("stored_float32_largest_relative_residual");

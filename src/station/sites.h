@@ -6,9 +6,6 @@
 
 namespace windrow::station {
 
-/// Sites with coordinates, each once; what is left out is told.
-std::vector<Site> read_sites(const text::CsvTable& table, const Mapping& mapping, Notices& notices);
-
 /// Says which of the sites used stand at one position or have no elevation.
 void tell_oddities(const std::vector<Record>& records, const std::string& file, Notices& notices);
 

@@ -26,7 +26,7 @@ struct Dimension {
   bool unlimited = false;
 };
 
-enum class Type { int8, int32, float32, float64 };
+enum class Type { text, int8, int32, float32, float64 };  ///< text: character codes, UTF-8, padded with zeros
 
 /// A variable whose values are given whole (coordinates, bounds, masks). values.size() is the product of the lengths;
 /// int and char types are converted from double exactly.

@@ -23,6 +23,7 @@ struct BalanceLine {
 
 struct Balance {
   std::string statement;          ///< what is measured, in words
+  bool kept = true;               ///< the method keeps integrals: the residual is to be rounding
   BalanceLine all;
   std::vector<BalanceLine> months;
   double stored_relative = 0;     ///< largest relative difference of a step when the stored float32 values are summed

@@ -85,4 +85,7 @@ struct Tables {
 std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, const Options& options,
                                  Notices& notices);
 
+/// Sites with coordinates, each once, in the table's order; what is left out is told. Errors as for read_records.
+std::vector<Site> read_sites(const text::CsvTable& table, const Mapping& mapping, Notices& notices);
+
 }  // namespace windrow::station
