@@ -61,6 +61,18 @@ bool holds(const sphere::Polygon& polygon, const Vec3& p) {
   return false;
 }
 
+// A quick no: the point lies beyond a side that no corner lies beyond.
+bool beyond_a_side(const Hull& hull, const Vec3& p) {
+  for (std::size_t k = 0; k < 4; ++k) {
+    const Vec3& a = hull.corner[k];
+    const Vec3 left = cross(a, hull.corner[(k + 1) % 4] - a);
+    const double allowed = -(hull.margin + kOnEdge) * norm(left);
+    if (dot(left, p) >= allowed) continue;
+    if (dot(left, hull.corner[(k + 2) % 4]) >= 0 && dot(left, hull.corner[(k + 3) % 4]) >= 0) return true;
+  }
+  return false;
+}
+
 // How far the arc of an edge bulges from its chord; nothing for an arc of over 90 degrees.
 std::optional<double> bulge(const Vec3& from, const Vec3& to, const EdgedCells::Edge& edge) {
   const double half = 0.5 * norm(to - from);
@@ -275,6 +287,8 @@ std::optional<std::size_t> EdgedMesh::find(GeoPoint point) const {
   thread_local sphere::Polygon polygon;
   index_->find(box, candidates);
   for (const std::uint32_t k : candidates) {
+    const std::optional<Hull> corners = hull(k);
+    if (corners && beyond_a_side(*corners, p)) continue;
     cell_into(k, polygon);
     if (holds(polygon, p)) return k;
   }

@@ -87,6 +87,7 @@ class EdgedMesh : public Mesh {
   /// By search; the index is built when first asked.
   std::optional<std::size_t> find(GeoPoint point) const override;
   bool on_rim(std::size_t index) const override { return rim_[index]; }
+  bool cells_may_overlap() const override { return traits_.overlapping; }
   /// Of structured meshes: from the middle of the left side to that of the right one, sides being what the cell shares
   /// with its neighbours along x.
   std::optional<sphere::Vec3> x_direction(std::size_t index) const override;

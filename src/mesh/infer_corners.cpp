@@ -15,6 +15,7 @@ using sphere::Vec3;
 
 constexpr double kLargestGap_deg = 20;
 constexpr double kGapOfMedian = 4;
+constexpr double kSamePlace_deg = 1e-6;
 constexpr double kSeam = 0.5;  // of a spacing: how far the first column may be from where the last one's goes on
 
 double angle_deg(const Vec3& a, const Vec3& b) {
@@ -70,15 +71,37 @@ class Centres {
   }
 
   void add_ring() {
-    const bool closed = closes();
+    closed_ = closes();
     for (std::size_t j = 1; j <= ny_; ++j) {
-      spot(j, 0) = closed ? at(j, nx_) : beyond(at(j, 1), at(j, 2));
-      spot(j, nx_ + 1) = closed ? at(j, 1) : beyond(at(j, nx_), at(j, nx_ - 1));
+      spot(j, 0) = closed_ ? at(j, nx_) : beyond(at(j, 1), at(j, 2));
+      spot(j, nx_ + 1) = closed_ ? at(j, 1) : beyond(at(j, nx_), at(j, nx_ - 1));
     }
+    const bool first_is_point = is_point(1), last_is_point = is_point(ny_);
     for (std::size_t i = 0; i < nx_ + 2; ++i) {
-      spot(0, i) = beyond(at(1, i), at(2, i));
-      spot(ny_ + 1, i) = beyond(at(ny_, i), at(ny_ - 1, i));
+      spot(0, i) = first_is_point ? at(1, 1) : beyond(at(1, i), at(2, i));
+      spot(ny_ + 1, i) = last_is_point ? at(ny_, 1) : beyond(at(ny_, i), at(ny_ - 1, i));
     }
+  }
+
+  // Corners of line j: mean directions. The outermost line of rows that close round ends at a point (a pole, mostly)
+  // when it leaves a gap of less than half a row there: rows are rarely spaced so that the last one just reaches it.
+  [[nodiscard]] std::vector<Vec3> corners(std::size_t j) const {
+    std::vector<Vec3> line;
+    Vec3 sum;
+    for (std::size_t i = 0; i <= nx_; ++i) {
+      line.push_back(unit(at(j, i) + at(j, i + 1) + at(j + 1, i) + at(j + 1, i + 1)));
+      if (i > 0) sum = sum + line.back();
+    }
+    if (!closed_ || (j > 0 && j < ny_) || !(norm(sum) > 0)) return line;
+    const Vec3 end = unit(sum);
+    const std::size_t row = j == 0 ? 1 : ny_ - 1;
+    double gap = 0, spacing = 360;
+    for (std::size_t i = 1; i <= nx_; ++i) {
+      gap = std::max(gap, angle_deg(end, line[i]));
+      spacing = std::min(spacing, angle_deg(at(row, i), at(row + 1, i)));
+    }
+    if (gap < kSeam * spacing) std::fill(line.begin(), line.end(), end);
+    return line;
   }
 
  private:
@@ -87,13 +110,23 @@ class Centres {
   [[nodiscard]] bool closes() const {
     if (nx_ < 3) return false;
     for (std::size_t j = 1; j <= ny_; ++j) {
+      if (is_point(j)) continue;
       const Vec3 expected = beyond(at(j, nx_), at(j, nx_ - 1));
       if (angle_deg(expected, at(j, 1)) > kSeam * angle_deg(at(j, nx_), at(j, nx_ - 1))) return false;
     }
     return true;
   }
 
+  // A row of centres that is one place: at a pole, listed with every longitude.
+  [[nodiscard]] bool is_point(std::size_t j) const {
+    for (std::size_t i = 2; i <= nx_; ++i) {
+      if (angle_deg(at(j, 1), at(j, i)) > kSamePlace_deg) return false;
+    }
+    return true;
+  }
+
   std::size_t ny_, nx_;
+  bool closed_ = false;
   const std::string& place_;
   std::vector<Vec3> point_;
 };
@@ -117,9 +150,9 @@ CellCorners infer_corners(const std::vector<double>& centre_lon_deg, const std::
   centres.add_ring();
   std::vector<double> lon((ny + 1) * (nx + 1)), lat(lon.size());
   for (std::size_t j = 0; j <= ny; ++j) {
+    const std::vector<Vec3> line = centres.corners(j);
     for (std::size_t i = 0; i <= nx; ++i) {
-      const Vec3 sum = centres.at(j, i) + centres.at(j, i + 1) + centres.at(j + 1, i) + centres.at(j + 1, i + 1);
-      const GeoPoint corner = position_of(sum, {});
+      const GeoPoint corner = position_of(line[i], {});
       lon[j * (nx + 1) + i] = corner.longitude.degrees();
       lat[j * (nx + 1) + i] = corner.latitude.degrees();
     }

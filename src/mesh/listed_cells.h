@@ -27,8 +27,8 @@ struct ListedCells {
   }
 };
 
-/// For every point the number of the first point that is the same place: as near as a hundredth of the shortest side
-/// there, and at most the rounding.
+/// For every point the number of the earlier point that is the same place, or its own: the nearest within a hundredth
+/// of the shortest side there, and at most the rounding.
 std::vector<std::uint32_t> merge_points(const ListedCells& listed);
 
 /// Edges and loops of all cells. Nodes are numbered as cells first use them. Error(data) as make_cells says; clockwise

@@ -45,15 +45,20 @@ class PointHash {
     head = number;
   }
 
-  // The lowest-numbered of the points added that lies within `tolerance` (at most the reach) of p.
+  // The nearest of the points added within `tolerance` (at most the reach) of p; of equally near ones the first.
   [[nodiscard]] std::uint32_t find(const Vec3& p, double tolerance) const {
     std::uint32_t found = kNone;
+    double nearest = tolerance * tolerance;
     const std::int64_t x1 = box(p.x + tolerance), y1 = box(p.y + tolerance), z1 = box(p.z + tolerance);
     for (std::int64_t x = box(p.x - tolerance); x <= x1; ++x) {
       for (std::int64_t y = box(p.y - tolerance); y <= y1; ++y) {
         for (std::int64_t z = box(p.z - tolerance); z <= z1; ++z) {
           for (std::uint32_t k = head_[slot(x, y, z)]; k != kNone; k = next_[k]) {
-            if (k < found && norm(points_[k] - p) <= tolerance) found = k;
+            const Vec3 off = points_[k] - p;
+            const double distance2 = dot(off, off);
+            if (distance2 > nearest || (distance2 == nearest && k > found)) continue;
+            nearest = distance2;
+            found = k;
           }
         }
       }

@@ -63,6 +63,7 @@ class SubsetMesh final : public Mesh {
   }
   bool on_rim(std::size_t index) const override { return rim_[index]; }
   std::optional<Vec3> x_direction(std::size_t index) const override { return full_->x_direction(cells_[index]); }
+  bool cells_may_overlap() const override { return full_->cells_may_overlap(); }
   bool has_area() const override { return full_->has_area(); }
   Earth earth() const override { return full_->earth(); }
   codec::Digest digest() const override {

@@ -51,8 +51,8 @@ class Mesh {
   /// May the region this mesh covers end at this cell? Cells that are not on the rim are surrounded by others, so what
   /// overlaps none but those lies wholly within the mesh. Overlapping cells (catchments) are all on the rim.
   [[nodiscard]] virtual bool on_rim(std::size_t index) const = 0;
-  /// Unit tangent at the cell's centre along growing x of a structured mesh: what grid-relative vectors refer to. Nothing
-  /// where cells have no such direction.
+  /// Unit tangent at the cell's centre along growing x of a structured mesh: what grid-relative vectors refer to.
+  /// Nothing where cells have no such direction.
   [[nodiscard]] virtual std::optional<sphere::Vec3> x_direction(std::size_t /*index*/) const { return {}; }
   /// True for polygons drawn by hand (catchments): they may overlap each other and have any number of corners.
   [[nodiscard]] virtual bool cells_may_overlap() const { return false; }
@@ -83,15 +83,15 @@ MeshPtr make_projected(std::vector<double> x_edges, std::vector<double> y_edges,
 /// (earth.e2 == 0; on an ellipsoid they are no circles: use make_projected with rotated_projector). Error(data) as for
 /// make_latlon, or a pole outside the globe. A rotation by nothing gives make_latlon's mesh.
 MeshPtr make_rotated(LatLonEdges edges, const Rotation& rotation, const Earth& earth, const std::string& place);
-Projector rotated_projector(const Rotation& rotation);            ///< rotated degrees -> geographic degrees
+Projector rotated_projector(const Rotation& rotation);  ///< rotated degrees -> geographic degrees
 Projector geographic_to_rotated_projector(const Rotation& rotation);
 
-/// Cells listed by their corners. Corners that differ by less than the rounding of their file (1e-4 of the shortest side
-/// and at most `corners.rounding_deg`) become one, so that neighbours share edges to the bit. Repeated corners are
-/// dropped; loops that run clockwise are turned round (noted once). With Sides::parallels a side between two corners of
-/// one latitude runs along it, otherwise all sides are great circles. Error(data) naming the first cell: fewer than
-/// three corners, no area, sides over 90 degrees, a loop that crosses itself (not for quadrilaterals that merely are
-/// concave).
+/// Cells listed by their corners. Corners that differ by less than the rounding of their file (`corners.rounding_deg`,
+/// and at most a hundredth of the shortest side there) become one, so that neighbours share edges to the bit. Repeated
+/// corners are dropped; loops that run clockwise are turned round (noted once). With Sides::parallels a side between
+/// two corners of one latitude (within the rounding) runs along it the short way round, otherwise all sides are great
+/// circles. Error(data) naming the first cell: fewer than three corners, no area, sides over 90 degrees, more than half
+/// the globe, a loop that crosses itself (not for quadrilaterals that merely are concave).
 MeshPtr make_cells(CellCorners corners, Sides sides, const Earth& earth, const std::string& place, Notices& notices);
 
 /// Faces of a UGRID mesh, sides are great circles. Errors as make_cells; a node number out of range too.
@@ -116,13 +116,15 @@ MeshPtr make_polygons(std::vector<PolygonCell> cells, std::vector<std::string> n
 /// Points without area; has_area() is false, polygons are empty.
 MeshPtr make_points(std::vector<GeoPoint> points, const Earth& earth);
 
-/// Some cells of another mesh, in the order given (gathered grids). All are on the rim unless all their neighbours,
-/// found by `full`'s structure, are among them.
+/// Some cells of another mesh, in the order given (gathered grids). A cell is on the rim when it is on that of `full`,
+/// or when the neighbour beyond one of its edges is not among them. Error(data) for a cell that `full` does not have.
 MeshPtr make_subset(MeshPtr full, std::vector<std::uint32_t> cells);
 
 /// Corners of curvilinear cells from their centres (degrees, ny x nx): inner corners at the mean direction of the four
-/// centres around them, outer ones continued. Error(data) where neighbours are so far apart (over 20 degrees of arc, or
-/// four times the median spacing along that axis) that nothing can be inferred: it names the place and the gap.
+/// centres around them, outer ones continued. Rows whose last column is followed by their first are closed round; then
+/// an outermost line that would leave less than half a row open (at a pole) becomes a point. Error(data) where
+/// neighbours are so far apart (over 20 degrees of arc, or four times the median spacing along that axis) that nothing
+/// can be inferred: it names the place and the gap.
 CellCorners infer_corners(const std::vector<double>& centre_lon_deg, const std::vector<double>& centre_lat_deg,
                           std::size_t ny, std::size_t nx, const std::string& place);
 

@@ -96,6 +96,23 @@ TEST_CASE("inferred cells of a global grid close round and at the poles") {
   CHECK(unmatched_arcs(*turned) == 0);
 }
 
+TEST_CASE("inferred cells reach the poles where rows are not spaced to do so, or have their centres there") {
+  const auto latitudes = mesh::gaussian_latitudes_deg(64);
+  const auto gaussian = centres(
+      64, 128, [&](double j, double i) { return std::pair(2.8125 * i, latitudes[static_cast<std::size_t>(j)]); });
+  const auto at_poles = centres(37, 72, [](double j, double i) { return std::pair(5 * i, 5 * j - 90); });
+  const auto m = cells(inferred(gaussian, 64, 128)), p = cells(inferred(at_poles, 37, 72));
+  for (const auto& mesh : {m, p}) {
+    CHECK(std::abs(total_area(*mesh) / (4 * kPi) - 1) < 1e-12);
+    CHECK(rim(*mesh) == 0);
+    CHECK(mesh->cell(3).pieces[0].loops[0].size() == 3);
+  }
+  CHECK(p->area(0) == doctest::Approx(5 * kPi / 180 * (1 - std::sin(87.5 * kPi / 180))).epsilon(1e-3));
+  // A belt that ends two rows before the pole is not stretched to it.
+  const auto belt = centres(32, 72, [](double j, double i) { return std::pair(5 * i, 5 * j - 77.5); });
+  CHECK(rim(*cells(inferred(belt, 32, 72))) == 2 * 72);
+}
+
 TEST_CASE("where neighbours are far apart, corners are not inferred") {
   const auto gap = centres(5, 12, [](double j, double i) { return std::pair(2 * i + (i > 5 ? 69 : 0), 2 * j - 4); });
   CHECK(refusal(gap, 5, 12) ==
