@@ -25,6 +25,8 @@ double angle_deg(const Vec3& a, const Vec3& b) {
 // The place as far beyond `last` as `before` is this side of it.
 Vec3 beyond(const Vec3& last, const Vec3& before) { return unit((2 * dot(last, before)) * last - before); }
 
+bool mostly(std::size_t part, std::size_t whole) { return 10 * part >= 9 * whole; }
+
 // Centres with one more row and column on every side.
 class Centres {
  public:
@@ -76,11 +78,8 @@ class Centres {
       spot(j, 0) = closed_ ? at(j, nx_) : beyond(at(j, 1), at(j, 2));
       spot(j, nx_ + 1) = closed_ ? at(j, 1) : beyond(at(j, nx_), at(j, nx_ - 1));
     }
-    const bool first_is_point = is_point(1), last_is_point = is_point(ny_);
-    for (std::size_t i = 0; i < nx_ + 2; ++i) {
-      spot(0, i) = first_is_point ? at(1, 1) : beyond(at(1, i), at(2, i));
-      spot(ny_ + 1, i) = last_is_point ? at(ny_, 1) : beyond(at(ny_, i), at(ny_ - 1, i));
-    }
+    continue_rows(0, 1, 2);
+    continue_rows(ny_ + 1, ny_, ny_ - 1);
   }
 
   // Corners of line j: mean directions. The outermost line of rows that close round ends at a point (a pole, mostly)
@@ -106,17 +105,36 @@ class Centres {
 
  private:
   [[nodiscard]] Vec3& spot(std::size_t j, std::size_t i) { return point_[j * (nx_ + 2) + i]; }
-  // Does every row go on from its last column to its first?
+  // Do rows go on from their last column to their first? None may leave a gap there; where columns bend much, as about
+  // a pole on land, a row or two may miss the place it was to go on to.
   [[nodiscard]] bool closes() const {
     if (nx_ < 3) return false;
+    std::size_t met = 0;
     for (std::size_t j = 1; j <= ny_; ++j) {
-      if (is_point(j)) continue;
-      const Vec3 expected = beyond(at(j, nx_), at(j, nx_ - 1));
-      if (angle_deg(expected, at(j, 1)) > kSeam * angle_deg(at(j, nx_), at(j, nx_ - 1))) return false;
+      const double before = angle_deg(at(j, nx_), at(j, nx_ - 1)), after = angle_deg(at(j, 1), at(j, 2));
+      const double miss = angle_deg(beyond(at(j, nx_), at(j, nx_ - 1)), at(j, 1));
+      if (!is_point(j) && angle_deg(at(j, nx_), at(j, 1)) > 2 * std::max(before, after)) return false;
+      met += is_point(j) || miss <= kSeam * before ? 1 : 0;
     }
-    return true;
+    return mostly(met, ny_);
   }
-
+  // Fills the row beyond the outermost one, `last`: its own place, the other half of a fold, or where the rows lead.
+  void continue_rows(std::size_t outside, std::size_t last, std::size_t before) {
+    const bool point = is_point(last), folded = !point && folds(last, before);
+    for (std::size_t i = 0; i < nx_ + 2; ++i) {
+      spot(outside, i) = point ? at(last, 1) : folded ? at(last, nx_ + 1 - i) : beyond(at(last, i), at(before, i));
+    }
+  }
+  // Does the outermost row go on in its own other half, run backwards? Ocean grids with two poles on land close up so
+  // along the line between these; at the poles themselves columns bend too much to tell.
+  [[nodiscard]] bool folds(std::size_t last, std::size_t before) const {
+    std::size_t met = 0;
+    for (std::size_t i = 1; i <= nx_; ++i) {
+      const double miss = angle_deg(beyond(at(last, i), at(before, i)), at(last, nx_ + 1 - i));
+      met += miss <= kSeam * angle_deg(at(last, i), at(before, i)) ? 1 : 0;
+    }
+    return mostly(met, nx_);
+  }
   // A row of centres that is one place: at a pole, listed with every longitude.
   [[nodiscard]] bool is_point(std::size_t j) const {
     for (std::size_t i = 2; i <= nx_; ++i) {

@@ -7,8 +7,9 @@
 
 namespace windrow::mesh {
 
-/// A frame whose north pole stands at (pole_lon, pole_lat) and whose meridian 180 - lies there: CF's
-/// rotated_latitude_longitude with grid_north_pole_longitude, grid_north_pole_latitude, north_pole_grid_longitude.
+/// A frame whose north pole stands at (pole_lon, pole_lat), and in which the true north pole has the longitude
+/// north_pole_grid_lon: CF's rotated_latitude_longitude with grid_north_pole_longitude, grid_north_pole_latitude,
+/// north_pole_grid_longitude. It turns nothing for a pole at 180 degrees east, 90 degrees north.
 struct Rotation {
   double pole_lon_deg = 0, pole_lat_deg = 90, north_pole_grid_lon_deg = 0;
   bool operator==(const Rotation&) const = default;

@@ -122,7 +122,8 @@ MeshPtr make_subset(MeshPtr full, std::vector<std::uint32_t> cells);
 
 /// Corners of curvilinear cells from their centres (degrees, ny x nx): inner corners at the mean direction of the four
 /// centres around them, outer ones continued. Rows whose last column is followed by their first are closed round; then
-/// an outermost line that would leave less than half a row open (at a pole) becomes a point. Error(data) where
+/// an outermost line that would leave less than half a row open (at a pole) becomes a point. A last row that goes on in
+/// its own other half, backwards, is folded onto itself (ocean grids with two northern poles). Error(data) where
 /// neighbours are so far apart (over 20 degrees of arc, or four times the median spacing along that axis) that nothing
 /// can be inferred: it names the place and the gap.
 CellCorners infer_corners(const std::vector<double>& centre_lon_deg, const std::vector<double>& centre_lat_deg,

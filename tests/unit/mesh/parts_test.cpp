@@ -113,6 +113,26 @@ TEST_CASE("inferred cells reach the poles where rows are not spaced to do so, or
   CHECK(rim(*cells(inferred(belt, 32, 72))) == 2 * 72);
 }
 
+TEST_CASE("inferred cells close along the line between two poles where rows fold") {
+  // Elliptic coordinates on a plane that touches the globe at the north pole: x + i y = cosh(u + i v); u = 0 is the
+  // line between the foci, beyond which v runs backwards.
+  const std::size_t ny = 24, nx = 80;
+  const double step = 2 * kPi / static_cast<double>(nx), scale = 0.25;
+  const auto c = centres(ny, nx, [&](double j, double i) {
+    const double u = (static_cast<double>(ny) - 0.5 - j) * step, v = (i + 0.5) * step;
+    const double x = scale * std::cosh(u) * std::cos(v), y = scale * std::sinh(u) * std::sin(v);
+    return std::pair(std::atan2(y, x) * 180 / kPi, 90 - 2 * std::atan(0.5 * std::hypot(x, y)) * 180 / kPi);
+  });
+  const auto m = cells(inferred(c, ny, nx));
+  CHECK(rim(*m) == nx);
+  CHECK(unmatched_arcs(*m) == 2 * nx);  // each of the outer circle's, as it is and as it is not reversed
+  for (std::size_t i = 0; i < nx; ++i) CHECK(m->on_rim(i));
+  for (std::size_t k = 0; k < m->size(); ++k) {
+    CHECK(m->find({Angle::degrees(c.lon[k]), Angle::degrees(c.lat[k])}) == k);
+  }
+  CHECK(m->find({Angle::degrees(90), Angle::degrees(90)}).has_value());
+}
+
 TEST_CASE("where neighbours are far apart, corners are not inferred") {
   const auto gap = centres(5, 12, [](double j, double i) { return std::pair(2 * i + (i > 5 ? 69 : 0), 2 * j - 4); });
   CHECK(refusal(gap, 5, 12) ==
