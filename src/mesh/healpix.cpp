@@ -4,7 +4,6 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
-#include <exception>
 #include <numeric>
 
 #include "edged_mesh.h"
@@ -22,7 +21,6 @@ using sphere::Vec3;
 
 constexpr double kOnEdge = 2e-14;        // rad: degrees that became radians are off by less
 constexpr std::size_t kBlock = 1 << 16;  // sides bent at a time
-constexpr std::size_t kBatch = 1 << 10;  // of them on one thread
 
 // Place on the curve through all cells of all levels: a cell reaches from this less 4^(29 - level) to this plus it.
 std::uint64_t curve_place(const HealpixCell& cell) {
@@ -162,30 +160,25 @@ void Builder::bend(const std::vector<std::uint64_t>& middles) {
   for (std::size_t first = 0; first < middles.size(); first += kBlock) {
     const std::size_t count = std::min(kBlock, middles.size() - first);
     std::vector<std::uint32_t> lower(count), upper(count);
-    std::vector<std::vector<Vec3>> bent(count);  // empty: a meridian
-    std::exception_ptr failure;
-#pragma omp parallel for schedule(dynamic)
-    for (std::size_t batch = 0; batch < count; batch += kBatch) {
-      try {
-        std::vector<OpenLine> lines;
-        for (std::size_t k = batch; k < std::min(count, batch + kBatch); ++k) {
-          const Side side = healpix::side_of_middle(healpix::place_of_key(middles[first + k]));
-          lower[k] = position(node_key_, key_of(side.lower()));
-          upper[k] = position(node_key_, key_of(side.upper()));
-          if (side.on_gap()) continue;
-          lines.push_back({first + k, out_.node[lower[k]], out_.node[upper[k]], healpix::cell_area(side.level())});
-        }
-        const std::vector<OpenLine> rough = split_lines(
-            std::move(lines),
-            [&](const std::vector<OpenLine>& open, std::size_t inner) { return place(open, inner, middles); },
-            [&](std::uint64_t number, std::vector<Vec3> inner) { bent[number - first] = std::move(inner); });
-        if (!rough.empty()) throw Error(Failure::defect, "HEALPix", "the side of a cell is no smooth line");
-      } catch (...) {
-#pragma omp critical(windrow_healpix_failure)
-        failure = std::current_exception();
-      }
+    std::vector<std::vector<Vec3>> bent(count);  // empty: along a meridian
+    std::vector<std::uint8_t> straight(count);
+#pragma omp parallel for schedule(static)
+    for (std::size_t k = 0; k < count; ++k) {
+      const Side side = healpix::side_of_middle(healpix::place_of_key(middles[first + k]));
+      lower[k] = position(node_key_, key_of(side.lower()));
+      upper[k] = position(node_key_, key_of(side.upper()));
+      straight[k] = side.on_gap() ? 1 : 0;
     }
-    if (failure) std::rethrow_exception(failure);
+    std::vector<OpenLine> lines;
+    for (std::size_t k = 0; k < count; ++k) {
+      if (straight[k]) continue;
+      const int level = healpix::side_of_middle(healpix::place_of_key(middles[first + k])).level();
+      lines.push_back({first + k, out_.node[lower[k]], out_.node[upper[k]], healpix::cell_area(level)});
+    }
+    const std::vector<OpenLine> rough = split_lines(
+        lines, [&](const std::vector<OpenLine>& open, std::size_t inner) { return place(open, inner, middles); },
+        [&](std::uint64_t number, std::vector<Vec3> inner) { bent[number - first] = std::move(inner); });
+    if (!rough.empty()) throw Error(Failure::defect, "HEALPix", "the side of a cell is no smooth line");
     for (std::size_t k = 0; k < count; ++k) {
       if (bent[k].empty()) {
         out_.add_edge(lower[k], upper[k]);

@@ -1,7 +1,9 @@
 // The lens criterion: an arc is compared with the arcs of its halves, and where halving no longer helps, with noise.
 #include "line_arcs.h"
 
+#include <algorithm>
 #include <cmath>
+#include <exception>
 
 #include "windrow/sphere/area.h"
 #include "windrow/sphere/clip.h"
@@ -12,7 +14,8 @@ namespace {
 using sphere::Vec3;
 
 constexpr int kMostLevels = 10;
-constexpr double kNoise = 1e-10;  // rad, 0.6 mm: most that a projection may be off between neighbouring points
+constexpr std::size_t kBatch = 1 << 10;  // lines a thread splits at a time
+constexpr double kNoise = 1e-10;         // rad, 0.6 mm: most that a projection may be off between neighbouring points
 
 // Inner points of the level before: the ends of its parts and their middles.
 std::vector<Vec3> every_second(const std::vector<Vec3>& inner) {
@@ -41,9 +44,7 @@ double missed_area(const OpenLine& line, const std::vector<Vec3>& now, const std
   return sum;
 }
 
-}  // namespace
-
-std::vector<OpenLine> split_lines(std::vector<OpenLine> open, const PlacePoints& place, const TakeLine& take) {
+std::vector<OpenLine> split_batch(std::vector<OpenLine> open, const PlacePoints& place, const TakeLine& take) {
   for (int level = 0; !open.empty() && level <= kMostLevels; ++level) {
     // Level L has 2^L parts and as many middles: 2^(L+1) - 1 inner points.
     const std::size_t inner = (std::size_t{2} << level) - 1;
@@ -71,6 +72,29 @@ std::vector<OpenLine> split_lines(std::vector<OpenLine> open, const PlacePoints&
     open = std::move(still);
   }
   return open;
+}
+
+}  // namespace
+
+std::vector<OpenLine> split_lines(const std::vector<OpenLine>& lines, const PlacePoints& place, const TakeLine& take) {
+  std::vector<OpenLine> rough;
+  std::exception_ptr failure;
+#pragma omp parallel for schedule(dynamic)
+  for (std::size_t first = 0; first < lines.size(); first += kBatch) {
+    try {
+      const auto begin = lines.begin() + static_cast<std::ptrdiff_t>(first);
+      const auto end = lines.begin() + static_cast<std::ptrdiff_t>(std::min(lines.size(), first + kBatch));
+      const std::vector<OpenLine> left = split_batch({begin, end}, place, take);
+#pragma omp critical(windrow_rough_lines)
+      rough.insert(rough.end(), left.begin(), left.end());
+    } catch (...) {
+#pragma omp critical(windrow_split_failure)
+      failure = std::current_exception();
+    }
+  }
+  if (failure) std::rethrow_exception(failure);
+  std::sort(rough.begin(), rough.end(), [](const OpenLine& a, const OpenLine& b) { return a.number < b.number; });
+  return rough;
 }
 
 void append_arcs(const Vec3& from, const Vec3* inner, std::size_t count, const Vec3& to, sphere::Loop& out) {

@@ -28,8 +28,8 @@ using TakeLine = std::function<void(std::uint64_t number, std::vector<sphere::Ve
 
 /// Halves the parts of all lines until the area between a part's circle and those of its halves is, summed over the
 /// line, at most kLensTolerance of the cell. Lines that still miss that after ten halvings are no smooth lines: they
-/// are returned.
-std::vector<OpenLine> split_lines(std::vector<OpenLine> open, const PlacePoints& place, const TakeLine& take);
+/// are returned, by number. Runs on all threads; `place` and `take` are called for many lines at once, in no order.
+std::vector<OpenLine> split_lines(const std::vector<OpenLine>& lines, const PlacePoints& place, const TakeLine& take);
 
 /// Appends the arcs of a line with these inner points; parts of no length give none.
 void append_arcs(const sphere::Vec3& from, const sphere::Vec3* inner, std::size_t count, const sphere::Vec3& to,

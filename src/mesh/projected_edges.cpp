@@ -205,9 +205,11 @@ void Builder::split_edges() {
     });
   };
   const auto take = [&](std::uint64_t number, std::vector<Vec3> inner) {
-    if (inner.size() > 1) lines_.split.emplace(number, std::move(inner));  // else the tilt says it all
+    if (inner.size() == 1) return;  // the tilt says it all
+#pragma omp critical(windrow_split_edges)
+    lines_.split.emplace(number, std::move(inner));
   };
-  const std::vector<OpenLine> rough = split_lines(std::move(open), place, take);
+  const std::vector<OpenLine> rough = split_lines(open, place, take);
   if (!rough.empty()) {
     const Edge e = edge(rough.front().number);
     throw Error(Failure::data, place_,
