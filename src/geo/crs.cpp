@@ -3,9 +3,11 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
 #include <cmath>
 #include <numbers>
 
+#include "axes.h"
 #include "definition.h"
 #include "grid_mapping.h"
 #include "proj_handles.h"
@@ -20,14 +22,6 @@ Pj create_crs(PJ_CONTEXT* context, const std::string& definition) {
   return crs;
 }
 
-namespace {
-
-struct Axis {
-  std::string direction, unit;
-  double factor = 1;  ///< metres or radians per unit
-};
-
-/// The first two axes of a CRS's coordinate system; empty when PROJ does not tell.
 std::vector<Axis> axes_of(PJ_CONTEXT* context, const PJ* crs) {
   std::vector<Axis> out;
   const Pj system(proj_crs_get_coordinate_system(context, crs));
@@ -42,6 +36,8 @@ std::vector<Axis> axes_of(PJ_CONTEXT* context, const PJ* crs) {
   }
   return out;
 }
+
+namespace {
 
 /// UDUNITS' name of a length given by its metres.
 std::string length_unit(double metres) {
@@ -71,6 +67,14 @@ Shape shape_of(PJ_CONTEXT* context, const PJ* crs, const std::string& place) {
 
 double degrees_per_unit(const std::vector<Axis>& base_axes) {
   return base_axes.empty() || base_axes[0].unit == "degree" ? 1.0 : base_axes[0].factor / std::numbers::pi * 180;
+}
+
+/// The beginning of a definition, for messages: WKT can be long.
+std::string shown(const std::string& definition) {
+  std::string out = definition.substr(0, 100);
+  std::replace_if(
+      out.begin(), out.end(), [](unsigned char ch) { return ch < 0x20 || ch == 0x7F; }, ' ');
+  return out + (definition.size() > 100 ? "..." : "");
 }
 
 std::string kind_of(PJ_TYPE type) {
@@ -106,12 +110,13 @@ Crs make_crs(const std::string& definition, const std::string& place) {
     throw Error(Failure::job, place,
                 fmt::format("PROJ does not know the coordinate reference system '{}'; expected a code such as "
                             "\"EPSG:3035\", a PROJ string with +proj=, or WKT",
-                            definition));
+                            shown(definition)));
   const PJ_TYPE type = proj_get_type(crs.get());
   const bool projected = type == PJ_TYPE_PROJECTED_CRS;
   if (!projected && type != PJ_TYPE_GEOGRAPHIC_2D_CRS)
-    throw Error(Failure::job, place,
-                fmt::format("'{}' is no horizontal coordinate reference system but {}", definition, kind_of(type)));
+    throw Error(
+        Failure::job, place,
+        fmt::format("'{}' is no horizontal coordinate reference system but {}", shown(definition), kind_of(type)));
   if (!projected && Pj(proj_get_source_crs(c, crs.get())))
     throw Error(Failure::job, place,
                 "a geographic system with a moved pole cannot be a mesh's system; use a projection");

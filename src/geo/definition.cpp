@@ -65,7 +65,7 @@ std::string complete_definition(const std::string& definition, const std::string
     return text;
   }
   throw Error(Failure::job, place,
-              "'" + text +
+              "'" + text.substr(0, 100) + (text.size() > 100 ? "..." : "") +
                   "' is no coordinate reference system; expected a code such as \"EPSG:3035\", a PROJ string " +
                   "with +proj=, or WKT");
 }

@@ -28,8 +28,18 @@ enum Parameter {
   kSecondParallel = 8824,
   kEastingFalseOrigin = 8826,
   kNorthingFalseOrigin = 8827,
+  kLatitudeCentre = 8811,
+  kLongitudeCentre = 8812,
+  kAzimuth = 8813,
+  kRectifiedAngle = 8814,
+  kScaleCentre = 8815,
+  kEastingCentre = 8816,
+  kNorthingCentre = 8817,
   kLatitudeParallel = 8832,
-  kLongitudeOriginPolar = 8833
+  kLongitudeOriginPolar = 8833,
+  kLatitudeTopocentre = 8834,
+  kLongitudeTopocentre = 8835,
+  kViewpointHeight = 8840
 };
 
 /// Multiples of a unit that come out of a conversion chain as 10.000000000000002 are meant to be 10.
@@ -43,6 +53,7 @@ struct Conversion {
   int method = 0;
   std::string method_name;
   std::map<int, double> values;
+  double perspective_height_m = 0;  ///< above the ellipsoid; CF wants metres whatever the axes have
 
   [[nodiscard]] double at(int code, double otherwise = 0) const {
     const auto found = values.find(code);
@@ -59,12 +70,14 @@ Conversion read_conversion(PJ_CONTEXT* context, const PJ* operation, double axis
   }
   const int count = proj_coordoperation_get_param_count(context, operation);
   for (int i = 0; i < count; ++i) {
-    const char *parameter = nullptr, *unit = nullptr, *category = nullptr;
+    const char *label = nullptr, *parameter = nullptr, *unit = nullptr, *category = nullptr;
     double value = 0, factor = 1;
-    if (!proj_coordoperation_get_param(context, operation, i, nullptr, nullptr, &parameter, &value, nullptr, &factor,
-                                       &unit, nullptr, nullptr, &category) ||
-        !parameter)
+    if (!proj_coordoperation_get_param(context, operation, i, &label, nullptr, &parameter, &value, nullptr, &factor,
+                                       &unit, nullptr, nullptr, &category))
       continue;
+    const bool satellite = label && std::string(label) == "Satellite Height";  // EPSG has no code for it
+    if (satellite || (parameter && std::atoi(parameter) == kViewpointHeight)) out.perspective_height_m = value * factor;
+    if (!parameter) continue;
     const std::string kind = category ? category : "", unit_name = unit ? unit : "";
     if (kind == "angular" && unit_name != "degree") value = tidy(value * factor * 180 / std::numbers::pi);
     if (kind == "linear" && factor != axis_metres) value = tidy(value * factor / axis_metres);
@@ -153,6 +166,37 @@ GridMapping cylindrical_equal_area(const Conversion& c) {
   return m;
 }
 
+/// CF has no attribute for the angle by which the axes are turned: it is the azimuth, or there is no CF mapping.
+GridMapping oblique_mercator(const Conversion& c) {
+  if (c.at(kRectifiedAngle) != c.at(kAzimuth)) return {};
+  GridMapping m{"oblique_mercator", {}};
+  m.attributes.emplace_back("azimuth_of_central_line", c.at(kAzimuth));
+  m.attributes.emplace_back("latitude_of_projection_origin", c.at(kLatitudeCentre));
+  m.attributes.emplace_back("longitude_of_projection_origin", c.at(kLongitudeCentre));
+  m.attributes.emplace_back("scale_factor_at_projection_origin", c.at(kScaleCentre, 1));
+  add_false_origin(c, m.attributes, kEastingCentre, kNorthingCentre);
+  return m;
+}
+
+GridMapping vertical_perspective(const Conversion& c) {
+  GridMapping m{"vertical_perspective", {}};
+  m.attributes.emplace_back("latitude_of_projection_origin", c.at(kLatitudeTopocentre));
+  m.attributes.emplace_back("longitude_of_projection_origin", c.at(kLongitudeTopocentre));
+  m.attributes.emplace_back("perspective_point_height", c.perspective_height_m);
+  add_false_origin(c, m.attributes);
+  return m;
+}
+
+GridMapping geostationary(const Conversion& c, const std::string& sweep) {
+  GridMapping m{"geostationary", {}};
+  m.attributes.emplace_back("latitude_of_projection_origin", 0.0);
+  m.attributes.emplace_back("longitude_of_projection_origin", c.at(kLongitudeOrigin));
+  m.attributes.emplace_back("perspective_point_height", c.perspective_height_m);
+  m.attributes.emplace_back("sweep_angle_axis", sweep);
+  add_false_origin(c, m.attributes);
+  return m;
+}
+
 GridMapping by_method(PJ_CONTEXT* context, const PJ* operation, const Conversion& c, double axis_metres) {
   switch (c.method) {
     case 9820:
@@ -181,9 +225,15 @@ GridMapping by_method(PJ_CONTEXT* context, const PJ* operation, const Conversion
       return azimuthal("orthographic", c);
     case 9832:
       return azimuthal("azimuthal_equidistant", c);
+    case 9815:
+      return oblique_mercator(c);
+    case 9838:
+      return vertical_perspective(c);
     default:
       break;
   }
+  if (c.method_name == "Geostationary Satellite (Sweep X)") return geostationary(c, "x");
+  if (c.method_name == "Geostationary Satellite (Sweep Y)") return geostationary(c, "y");
   if (c.method_name == "Stereographic") {
     GridMapping m = azimuthal("stereographic", c);
     m.attributes.emplace_back("scale_factor_at_projection_origin", c.at(kScaleOrigin, 1));

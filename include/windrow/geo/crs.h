@@ -36,11 +36,12 @@ struct Crs {
 Crs make_crs(const std::string& definition, const std::string& place);
 
 /// The CRS of a file's grid mapping (CF 1.13 appendix F): from its single attributes, or from `crs_wkt` where those name
-/// no mapping PROJ can express; both given and different is Error(data) naming what differs. Its projectors take
-/// coordinates in `axis_units` ("m", "km", "radian" of a geostationary scan angle, ...). Error(data) at `place`: unknown
-/// mapping, an attribute missing or not a number, no datum where none can be guessed (what to add is said).
+/// no mapping PROJ can express or lack something; both given and over 1 m apart on the ground is Error(data) naming what
+/// differs. Its projectors take coordinates in `axis_units` ("m", "km", "radian" of a geostationary scan angle, ...); a
+/// rotated pole is no projection: degrees. False origins and scale factors left out are 0 and 1; nothing else is guessed.
+/// Error(data) at `place`: unknown mapping, an attribute missing or not a number, no earth's shape (what to add is said).
 Crs crs_from_mapping(const GridMapping& mapping, const std::string& axis_units, const std::string& place);
-/// The same for a CRS given as text.
+/// The same for a CRS given as text; Error(job) where make_crs says so.
 Crs crs_with_units(const std::string& definition, const std::string& axis_units, const std::string& place);
 
 }  // namespace windrow::geo

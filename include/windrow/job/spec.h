@@ -113,7 +113,7 @@ struct OutputSpec {
   bool deflate = true;
   int level = 1;
   int digits = 0;
-  std::optional<std::array<int, 3>> tile;  ///< nothing: auto
+  std::optional<std::array<int, 3>> tile;  ///< time, y, x; y is 1 where cells stand in no rows; nothing: auto
   bool csv = false;                        ///< also = ["csv"]: catchments and towns
   std::vector<std::pair<std::string, std::string>> attributes;
 };
@@ -139,7 +139,7 @@ struct JobSpec {
 /// path, index for arrays of tables: field.0.units=K).
 JobSpec parse_job(const std::string& path, const std::string& text, const std::vector<std::string>& overrides);
 
-/// The commented job file that `windrow new` prints (kinds: "grid"). Parses with parse_job once its paths exist.
+/// The commented job file that `windrow new` prints (kinds: "grid", "catchments", "towns"). Parses with parse_job.
 std::string template_text(const std::string& kind);
 
 /// The file name of a field's product of one run, from the pattern of [output] name; {year} is left in.

@@ -24,6 +24,7 @@ struct Folder {
   }
   ~Folder() { std::filesystem::remove_all(path); }
   std::string write(const std::string& name, const std::string& bytes) const {
+    std::filesystem::remove(path / name);  // some file systems sync a file that is written over
     std::ofstream(path / name, std::ios::binary) << bytes;
     return (path / name).string();
   }
