@@ -32,8 +32,8 @@ double distance(const Point& a, const Point& b) { return std::hypot(a[0] - b[0],
 /// Cells as points in space, for comparing them whatever the turn of their longitudes.
 class Cells {
  public:
-  explicit Cells(const mesh::CellCorners& corners)
-      : corners_(corners), near_(std::max(2 * corners.rounding_deg, kSamePlace_deg) * kRadians) {}
+  Cells(const mesh::CellCorners& corners, bool inferred)
+      : corners_(corners), inferred_(inferred), near_(std::max(2 * corners.rounding_deg, kSamePlace_deg) * kRadians) {}
 
   [[nodiscard]] std::vector<Point> corners_of(std::size_t cell) const {
     std::vector<Point> list;
@@ -58,6 +58,7 @@ class Cells {
 
   [[nodiscard]] bool same(std::size_t a, std::size_t b) const {
     if (distance(centre(a), centre(b)) > near_) return false;
+    if (inferred_) return true;
     const std::vector<Point> of_a = corners_of(a), of_b = corners_of(b);
     const auto held = [&](const std::vector<Point>& list, const Point& point) {
       return std::ranges::any_of(list, [&](const Point& other) { return distance(other, point) <= 2 * near_; });
@@ -91,6 +92,7 @@ class Cells {
 
  private:
   const mesh::CellCorners& corners_;
+  bool inferred_;
   double near_;
 };
 
@@ -209,11 +211,11 @@ std::optional<mesh::CellCorners> read_corners(const Context& context, const LatL
   return corners;
 }
 
-Places keep_usable(const Context& context, mesh::CellCorners& corners, std::size_t ny, std::size_t nx) {
+Places keep_usable(const Context& context, mesh::CellCorners& corners, std::size_t ny, std::size_t nx, bool inferred) {
   const std::size_t count = ny * nx;
   std::vector<bool> keep(count, true);
   std::size_t missing = 0, flat = 0;
-  const Cells cells(corners);
+  const Cells cells(corners, inferred);
   for (std::size_t cell = 0; cell < count; ++cell) {
     const bool there = !std::isnan(corners.centre_lat_deg[cell]) && !std::isnan(corners.centre_lon_deg[cell]) &&
                        !std::isnan(corners.lat_deg[cell * corners.most]);
@@ -229,7 +231,7 @@ Places keep_usable(const Context& context, mesh::CellCorners& corners, std::size
   };
   say(missing, "without coordinates");
   say(flat, "without area (fewer than three different corners)");
-  say(repeated, "that repeat an earlier one's centre and corners");
+  say(repeated, inferred ? "that repeat an earlier one's centre" : "that repeat an earlier one's centre and corners");
 
   std::vector<std::size_t> kept;
   for (std::size_t cell = 0; cell < count; ++cell)

@@ -21,10 +21,12 @@ std::optional<mesh::CellCorners> read_corners(const Context& context, const LatL
 /// How far the same corner may differ between cells of this file.
 double rounding_of(const std::vector<double>& degrees, nc_type type);
 
-/// Leaves out cells without coordinates, cells without area, and cells that repeat an earlier one's centre and corners;
-/// each is said once with the number. The cells keep the shape ny x nx when nothing, or whole rows and columns, went.
-/// Returns where the cells stand in the array. Error(data) when none remains.
-Places keep_usable(const Context& context, mesh::CellCorners& corners, std::size_t ny, std::size_t nx);
+/// Leaves out cells without coordinates, cells without area, and cells that repeat an earlier one's centre and corners
+/// (centre alone where corners were only `inferred`); each is said once with the number. The cells keep the shape ny x
+/// nx when nothing, or whole rows and columns, went. Returns where the cells stand in the array. Error(data) when none
+/// remains.
+Places keep_usable(const Context& context, mesh::CellCorners& corners, std::size_t ny, std::size_t nx,
+                   bool inferred = false);
 
 /// Sides::parallels when `natural`, unless the job says otherwise. Error(data) for another word.
 mesh::Sides sides_of(const Context& context, bool parallels);

@@ -215,7 +215,7 @@ std::optional<FileGrid> find_curvilinear(const Context& context) {
   corners->centre_lat_deg = centres.lat;
   Grid& grid = result.grid;
   grid.kind = GridKind::cells;
-  result.places = keep_usable(context, *corners, ny, nx - halo);
+  result.places = keep_usable(context, *corners, ny, nx - halo, !bounds);
   if (halo > 0) {
     for (std::uint32_t& at : result.places.listed)
       at = std::uint32_t(at / result.places.width * nx + at % result.places.width);

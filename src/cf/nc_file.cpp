@@ -203,7 +203,9 @@ std::vector<Var> File::variables() const {
 std::size_t File::size(const Var& variable) const {
   const LibraryLock lock;
   std::size_t count = 1;
-  for (const int dim : variable.dims) {
+  std::vector<int> dims(variable.dims.size());  // as the file numbers them
+  check(nc_inq_vardimid(id_, variable.id, dims.data()), path_, "variable " + variable.name);
+  for (const int dim : dims) {
     std::size_t length = 0;
     check(nc_inq_dimlen(id_, dim, &length), path_, "variable " + variable.name);
     count *= length;
