@@ -25,6 +25,10 @@ std::string reason() {
   return text.empty() ? "" : " (" + text + ")";
 }
 
+std::string subject(const std::string& path, const std::string& place, const char* after) {
+  return path == place ? "" : "'" + path + "'" + after;
+}
+
 bool is_local_file(const std::string& path) {
   std::error_code ignored;
   return !path.starts_with("/vsi") && std::filesystem::is_regular_file(path, ignored);

@@ -25,6 +25,8 @@ using DatasetHandle = std::unique_ptr<void, CloseDataset>;
 
 /// The library's last words on one line, " (...)", or nothing.
 std::string reason();
+/// "'PATH'" and `after` to begin a message with; nothing where the place of the message is the path itself.
+std::string subject(const std::string& path, const std::string& place, const char* after = " ");
 /// A regular file, and no path that GDAL would take for an address or an archive.
 bool is_local_file(const std::string& path);
 /// The horizontal part of a CRS as one line of WKT2:2019; empty for none.

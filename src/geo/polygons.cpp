@@ -56,7 +56,8 @@ struct Source {
 
   [[noreturn]] void fail(Failure kind, const std::string& message) const { throw Error(kind, place, message); }
   [[noreturn]] void fail(std::size_t feature, const std::string& message) const {
-    fail(Failure::data, fmt::format("'{}': feature {} of layer '{}' {}", path, feature, shown(layer), message));
+    fail(Failure::data,
+         fmt::format("{}feature {} of layer '{}' {}", subject(path, place, ": "), feature, shown(layer), message));
   }
 };
 
@@ -70,9 +71,9 @@ DatasetHandle open_dataset(const Source& source) {
   if (!is_local_file(source.path)) source.fail(Failure::missing, fmt::format("there is no file '{}'", source.path));
   DatasetHandle dataset(GDALOpenEx(source.path.c_str(), GDAL_OF_VECTOR | GDAL_OF_READONLY, kDrivers, nullptr, nullptr));
   if (!dataset)
-    source.fail(Failure::data, fmt::format("'{}' is no vector file that can be read; expected GeoPackage, Shapefile, "
+    source.fail(Failure::data, fmt::format("{}is no vector file that can be read; expected GeoPackage, Shapefile, "
                                            "GeoJSON or FlatGeobuf{}",
-                                           source.path, reason()));
+                                           subject(source.path, source.place), reason()));
   return dataset;
 }
 
@@ -86,17 +87,19 @@ OGRLayerH chosen_layer(GDALDatasetH dataset, const std::string& wanted, const So
     layers.push_back(layer);
     names.emplace_back(OGR_L_GetName(layer));
   }
-  if (layers.empty()) source.fail(Failure::data, fmt::format("'{}' has no layer with geometries", source.path));
+  if (layers.empty())
+    source.fail(Failure::data, fmt::format("{}has no layer with geometries", subject(source.path, source.place)));
   if (wanted.empty()) {
     if (layers.size() > 1)
-      source.fail(Failure::data, fmt::format("'{}' has {} layers; expected one to be named: {}", source.path,
-                                             layers.size(), text::alternatives(all_shown(names))));
+      source.fail(Failure::data,
+                  fmt::format("{}has {} layers; expected one to be named: {}", subject(source.path, source.place),
+                              layers.size(), text::alternatives(all_shown(names))));
     return layers.front();
   }
   for (std::size_t i = 0; i < layers.size(); ++i)
     if (names[i] == wanted) return layers[i];
-  source.fail(Failure::missing,
-              fmt::format("'{}' has no layer '{}'; {}", source.path, shown(wanted), expected_name(wanted, names)));
+  source.fail(Failure::missing, fmt::format("{}has no layer '{}'; {}", subject(source.path, source.place),
+                                            shown(wanted), expected_name(wanted, names)));
 }
 
 /// Index of the id column; -1 when none is wanted.
@@ -110,14 +113,14 @@ int id_column(OGRLayerH layer, const std::string& id, const Source& source) {
     if (names.back() != id) continue;
     const OGRFieldType type = OGR_Fld_GetType(field);
     if (type != OFTString && type != OFTInteger && type != OFTInteger64)
-      source.fail(Failure::data, fmt::format("'{}': column '{}' of layer '{}' holds neither text nor whole numbers; "
+      source.fail(Failure::data, fmt::format("{}column '{}' of layer '{}' holds neither text nor whole numbers; "
                                              "expected a column that tells features apart",
-                                             source.path, shown(id), shown(source.layer)));
+                                             subject(source.path, source.place, ": "), shown(id), shown(source.layer)));
     return i;
   }
-  source.fail(Failure::missing,
-              fmt::format("'{}': layer '{}' has no column '{}'; {}", source.path, shown(source.layer), shown(id),
-                          names.empty() ? "it has none at all" : expected_name(id, names)));
+  source.fail(Failure::missing, fmt::format("{}layer '{}' has no column '{}'; {}",
+                                            subject(source.path, source.place, ": "), shown(source.layer), shown(id),
+                                            names.empty() ? "it has none at all" : expected_name(id, names)));
 }
 
 std::string id_of(OGRFeatureH feature, int column, std::size_t number, const Source& source) {
@@ -229,8 +232,9 @@ PolygonLayer read_polygons(const std::string& path, const std::string& layer, co
     CPLErrorReset();
   }
   if (CPLGetLastErrorType() >= CE_Failure)
-    source.fail(Failure::io, fmt::format("'{}' cannot be read to its end{}", path, reason()));
-  if (out.cells.empty()) source.fail(Failure::data, fmt::format("'{}': layer '{}' is empty", path, shown(out.layer)));
+    source.fail(Failure::io, fmt::format("{}cannot be read to its end{}", subject(path, place), reason()));
+  if (out.cells.empty())
+    source.fail(Failure::data, fmt::format("{}layer '{}' is empty", subject(path, place, ": "), shown(out.layer)));
   return out;
 }
 

@@ -35,9 +35,9 @@ DatasetHandle open_dataset(const std::string& path, const std::string& place) {
   DatasetHandle dataset(GDALOpenEx(path.c_str(), GDAL_OF_RASTER | GDAL_OF_READONLY, kDrivers, nullptr, nullptr));
   if (!dataset)
     throw Error(Failure::data, place,
-                fmt::format("'{}' is no raster that can be read; expected GeoTIFF, ASCII grid or a labelled binary "
+                fmt::format("{}is no raster that can be read; expected GeoTIFF, ASCII grid or a labelled binary "
                             "grid (.bil with .hdr){}",
-                            path, reason()));
+                            subject(path, place), reason()));
   return dataset;
 }
 
@@ -99,22 +99,25 @@ struct Frame {
 Frame frame_of(GDALDatasetH dataset, const std::string& path, const std::string& place) {
   double g[6] = {};
   if (GDALGetGeoTransform(dataset, g) != CE_None)
-    throw Error(Failure::data, place, fmt::format("'{}' does not say where its cells lie (no georeference)", path));
+    throw Error(Failure::data, place,
+                fmt::format("{}does not say where its cells lie (no georeference)", subject(path, place)));
   if (g[2] != 0 || g[4] != 0)
-    throw Error(Failure::data, place, fmt::format("'{}' is rotated; expected rows along x and columns along y", path));
+    throw Error(Failure::data, place,
+                fmt::format("{}is rotated; expected rows along x and columns along y", subject(path, place)));
   const bool usable = std::isfinite(g[0]) && std::isfinite(g[1]) && std::isfinite(g[3]) && std::isfinite(g[5]);
   if (!usable || g[1] == 0 || g[5] == 0)
-    throw Error(Failure::data, place, fmt::format("'{}' has cells without extent", path));
+    throw Error(Failure::data, place, fmt::format("{}has cells without extent", subject(path, place)));
   return {g[0], g[1], g[3], g[5]};
 }
 
 GDALRasterBandH single_band(GDALDatasetH dataset, const std::string& path, const std::string& place) {
   if (GDALGetRasterCount(dataset) != 1)
     throw Error(Failure::data, place,
-                fmt::format("'{}' has {} bands; expected one", path, GDALGetRasterCount(dataset)));
+                fmt::format("{}has {} bands; expected one", subject(path, place), GDALGetRasterCount(dataset)));
   GDALRasterBandH band = GDALGetRasterBand(dataset, 1);
   if (GDALDataTypeIsComplex(GDALGetRasterDataType(band)))
-    throw Error(Failure::data, place, fmt::format("'{}' holds complex numbers; expected plain ones", path));
+    throw Error(Failure::data, place,
+                fmt::format("{}holds complex numbers; expected plain ones", subject(path, place)));
   return band;
 }
 
@@ -130,12 +133,13 @@ Raster read_raster(const std::string& path, const std::string& place) {
   const std::size_t cells = static_cast<std::size_t>(nx) * static_cast<std::size_t>(ny);
   if (cells > kMostCells)
     throw Error(Failure::data, place,
-                fmt::format("'{}' has {} cells, more than {}; cut it to the mesh's window", path, cells, kMostCells));
+                fmt::format("{}has {} cells, more than {}; cut it to the mesh's window", subject(path, place), cells,
+                            kMostCells));
 
   Raster out;
   out.values.resize(cells);
   if (GDALRasterIO(band, GF_Read, 0, 0, nx, ny, out.values.data(), nx, ny, GDT_Float64, 0, 0) != CE_None)
-    throw Error(Failure::io, place, fmt::format("'{}' cannot be read to its end{}", path, reason()));
+    throw Error(Failure::io, place, fmt::format("{}cannot be read to its end{}", subject(path, place), reason()));
   mark_missing(band, out.values);
   apply_mask(band, nx, ny, out.values, place);
   unpack(band, out.values);

@@ -198,6 +198,14 @@ TEST_CASE("a layer or column that is not there is missing, with the near miss") 
   CHECK(geo::read_polygons(path, "lakes", "code", "t").layer == "lakes");
 }
 
+TEST_CASE("a path that is the place of a message is not said twice") {
+  const Folder folder;
+  const std::string path = folder.write("w.geojson", collection(feature("null")));
+  CHECK_THROWS_WITH(geo::read_polygons(path, "", "", path),
+                    (path + ": feature 1 of layer 'w' has no geometry; expected a polygon").c_str());
+  CHECK_THROWS_WITH(geo::read_polygons(path, "v", "", path), (path + ": has no layer 'v'; did you mean 'w'?").c_str());
+}
+
 TEST_CASE("features that cannot be cells are refused by their number") {
   const Folder folder;
   const auto said = [&](const std::string& features, const std::string& id = "") {
