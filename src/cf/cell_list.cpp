@@ -231,7 +231,7 @@ Places keep_usable(const Context& context, mesh::CellCorners& corners, std::size
   };
   say(missing, "without coordinates");
   say(flat, "without area (fewer than three different corners)");
-  say(repeated, inferred ? "that repeat an earlier one's centre" : "that repeat an earlier one's centre and corners");
+  say(repeated, inferred ? "repeating an earlier one's centre" : "repeating an earlier one's centre and corners");
 
   std::vector<std::size_t> kept;
   for (std::size_t cell = 0; cell < count; ++cell)

@@ -104,9 +104,10 @@ std::optional<FileGrid> find_gathered(const Context& context) {
     result.places.rows.push_back(i);
   }
   if (outside > 0)
-    context.remarks.push_back(fmt::format(
-        "{} gathered cell{} that repeat{} another or {} left out of the grid {} not read", outside,
-        outside > 1 ? "s" : "", outside > 1 ? "" : "s", outside > 1 ? "are" : "is", outside > 1 ? "are" : "is"));
+    context.remarks.push_back(
+        fmt::format("{} gathered cell{} repeating another, or one that the whole grid leaves out, {} "
+                    "left out",
+                    outside, outside > 1 ? "s" : "", outside > 1 ? "are" : "is"));
   if (result.grid.subset.empty()) context.fail("none of its gathered cells is on the grid");
   result.grid.how = fmt::format("{} gathered cells of: {}", result.grid.subset.size(), result.grid.how);
   result.grid.why = fmt::format("'{}' with compress = \"{}\"; {}", gathered->list->name,

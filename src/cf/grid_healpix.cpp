@@ -118,9 +118,13 @@ std::optional<FileGrid> find_healpix(const Context& context) {
     }
   }
   if (cells.empty()) context.fail("none of its cells has a HEALPix index");
-  if (missing > 0) context.remarks.push_back(fmt::format("{} cells without a HEALPix index are left out", missing));
-  if (repeated > 0)
-    context.remarks.push_back(fmt::format("{} cells that repeat an earlier one are left out", repeated));
+  const auto say = [&](std::size_t count, const char* what) {
+    if (count > 0)
+      context.remarks.push_back(
+          fmt::format("{} cell{} {} {} left out", count, count > 1 ? "s" : "", what, count > 1 ? "are" : "is"));
+  };
+  say(missing, "without a HEALPix index");
+  say(repeated, "repeating an earlier one");
   const auto [low, high] = std::ranges::minmax(cells, {}, &mesh::HealpixCell::level);
   result.grid.kind = GridKind::healpix;
   result.grid.mapping = mapping_records(context.mapping);

@@ -196,7 +196,7 @@ TEST_CASE("columns that repeat the first ones a turn later are left out, with an
       sample.bounds = bounds;
       Notices notices;
       const auto run = open(sample.write(), notices);
-      CHECK(has(notices, bounds ? "that repeat an earlier one's centre and corners" : "of 'nav_lat' repeat"));
+      CHECK(has(notices, bounds ? "repeating an earlier one's centre and corners" : "of 'nav_lat' repeat"));
       CHECK(run->grid().corners.ny == 3);
       CHECK(run->grid().corners.nx == 12);
       CHECK(read_cells(*run) == at_both_steps(row_by_row(3, 12)));
@@ -233,8 +233,8 @@ TEST_CASE("a fold row that repeats the one before it backwards is left out") {
     sample.lat = [](double y, double x) { return 40 + 0.1 * (x - 5.5) * (1.5 - y); };
     Notices notices;
     const auto run = open(sample.write(), notices);
-    CHECK(has(notices, bounds ? "12 cells that repeat an earlier one's centre and corners are left out"
-                              : "12 cells that repeat an earlier one's centre are left out"));
+    CHECK(has(notices, bounds ? "12 cells repeating an earlier one's centre and corners are left out"
+                              : "12 cells repeating an earlier one's centre are left out"));
     CHECK(run->grid().corners.ny == 2);
     CHECK(read_cells(*run) == at_both_steps(row_by_row(2, 12)));
   }
