@@ -65,7 +65,7 @@ struct Parser {
     app.footer(kFooter);
 
     command("new", "Print a commented job file to start from")
-        ->add_option("--for", arguments.kind, "What for: grid")
+        ->add_option("--for", arguments.kind, "What for: grid, catchments or towns")
         ->option_text("KIND")
         ->take_last();
     CLI::App* inspect = command("inspect", "Say what a NetCDF, raster or station file is understood to be");

@@ -136,14 +136,12 @@ Regridding MapStore::regrid(job::Method method, const mesh::Mesh& source, const 
       if (quantity == Quantity::total) {
         throw Error(Failure::data, source.describe(), "conservative-smooth takes means; expected quantity = \"mean\"");
       }
-      // The multipliers' equations belong to the map: both are made anew, and kept in memory.
-      const auto key = key_of(source, target, word + (non_negative ? " non-negative" : ""));
-      if (const auto found = smooth_.find(key); found != smooth_.end()) return found->second;
-      auto smooth = overlap::conservative_smooth(source, target, non_negative);
-      add_closure(smooth.map, smooth.closure);
-      out.map = std::make_shared<LinearMap>(std::move(smooth.map));
-      out.extension = std::move(smooth.extension);
-      smooth_[key] = out;
+      out.map = kept(source, target, word, [&] {
+        auto smooth = overlap::conservative_smooth(source, target, non_negative);
+        add_closure(smooth.map, smooth.closure);
+        return std::move(smooth.map);
+      });
+      out.extension = overlap::make_multipliers(*out.map, non_negative);
       break;
     }
   }

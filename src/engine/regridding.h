@@ -41,7 +41,6 @@ class MapStore {
               const std::function<linear_map::LinearMap()>& make);
   std::string folder_;
   std::map<std::string, MapPtr> held_;
-  std::map<std::string, Regridding> smooth_;
 };
 
 }  // namespace windrow::engine

@@ -309,6 +309,7 @@ const SharedFits::Fit& SharedFits::fit(Session& session, std::size_t field, std:
 }
 
 const std::vector<double>& SharedFits::cell_height(Session& session) {
+  if (!height_ && !session.target().mesh->has_area()) height_ = session.target().elevation;  // towns
   if (!height_) {
     Notices notices;
     const auto field = read_height(session.job.mesh.height, session.target().earth, notices);

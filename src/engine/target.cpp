@@ -138,6 +138,10 @@ void to_geographic(const geo::Crs& crs, std::vector<mesh::PolygonCell>& cells) {
 mesh::MeshPtr polygon_mesh(const std::string& path, geo::PolygonLayer& layer, const mesh::Earth& earth,
                            Notices& notices) {
   if (layer.crs_wkt.empty()) notices.add(path, "has no CRS; read as longitude and latitude in degrees");
+  if (layer.dropped_rings > 0) {
+    notices.add(path, fmt::format("{} ring{} of fewer than three different points left out: they bound no area",
+                                  layer.dropped_rings, layer.dropped_rings == 1 ? "" : "s"));
+  }
   const geo::Crs crs = geo::make_crs(layer.crs_wkt.empty() ? "OGC:CRS84" : layer.crs_wkt, path);
   const mesh::Projector same = [](std::vector<double>&, std::vector<double>&) {};
   auto out = mesh::make_polygons(layer.cells, layer.ids, crs.projected ? crs.to_geographic : same, earth,

@@ -141,10 +141,26 @@ mesh::PolygonCell::Ring ring_of(OGRGeometryH ring) {
   return out;
 }
 
-void add_part(OGRGeometryH polygon, mesh::PolygonCell& cell) {
+/// Rings that simplifying left with one or two different points bound no area; GEOS would refuse the whole polygon.
+bool bounds_area(const mesh::PolygonCell::Ring& ring) {
+  return std::set<std::array<double, 2>>(ring.begin(), ring.end()).size() > 2;
+}
+
+/// Returns how many rings were dropped; without its outer ring a part goes with its holes.
+std::size_t add_part(OGRGeometryH polygon, mesh::PolygonCell& cell) {
   std::vector<mesh::PolygonCell::Ring> part;
-  for (int i = 0; i < OGR_G_GetGeometryCount(polygon); ++i) part.push_back(ring_of(OGR_G_GetGeometryRef(polygon, i)));
-  if (!part.empty() && !part.front().empty()) cell.parts.push_back(std::move(part));
+  const int rings = OGR_G_GetGeometryCount(polygon);
+  for (int i = 0; i < rings; ++i) {
+    mesh::PolygonCell::Ring ring = ring_of(OGR_G_GetGeometryRef(polygon, i));
+    if (bounds_area(ring)) {
+      part.push_back(std::move(ring));
+    } else if (i == 0) {
+      return static_cast<std::size_t>(rings);
+    }
+  }
+  const std::size_t kept = part.size();
+  if (kept > 0) cell.parts.push_back(std::move(part));
+  return static_cast<std::size_t>(rings) - kept;
 }
 
 struct DestroyGeometry {
@@ -154,7 +170,7 @@ using Geometry = std::unique_ptr<void, DestroyGeometry>;
 
 /// The feature's polygons in the plane; circular arcs become chords of a quarter of a degree of their circle (areas off
 /// by 3e-6 of the circle's).
-mesh::PolygonCell cell_of(OGRFeatureH feature, std::size_t number, const Source& source) {
+mesh::PolygonCell cell_of(OGRFeatureH feature, std::size_t number, const Source& source, std::size_t& dropped) {
   constexpr double kArcStep_deg = 0.25;
   const OGRGeometryH given = OGR_F_GetGeometryRef(feature);
   if (given == nullptr || OGR_G_IsEmpty(given)) source.fail(number, "has no geometry; expected a polygon");
@@ -167,13 +183,16 @@ mesh::PolygonCell cell_of(OGRFeatureH feature, std::size_t number, const Source&
   mesh::PolygonCell cell;
   const OGRwkbGeometryType type = wkbFlatten(OGR_G_GetGeometryType(geometry));
   if (type == wkbPolygon) {
-    add_part(geometry, cell);
+    dropped += add_part(geometry, cell);
   } else if (type == wkbMultiPolygon) {
-    for (int i = 0; i < OGR_G_GetGeometryCount(geometry); ++i) add_part(OGR_G_GetGeometryRef(geometry, i), cell);
+    for (int i = 0; i < OGR_G_GetGeometryCount(geometry); ++i) {
+      dropped += add_part(OGR_G_GetGeometryRef(geometry, i), cell);
+    }
   } else {
     source.fail(number, fmt::format("is a {}; expected a polygon or multipolygon",
                                     text::lower(OGRGeometryTypeToName(OGR_G_GetGeometryType(given)))));
   }
+  if (cell.parts.empty()) source.fail(number, "bounds no area; expected rings of at least three different points");
   return cell;
 }
 
@@ -227,7 +246,7 @@ PolygonLayer read_polygons(const std::string& path, const std::string& layer, co
     if (!added)
       source.fail(number, fmt::format("has the id '{}' of feature {}; expected ids of their own, or another column",
                                       shown(known->first), known->second));
-    out.cells.push_back(cell_of(feature.get(), number, source));
+    out.cells.push_back(cell_of(feature.get(), number, source, out.dropped_rings));
     check_valid(out.cells.back(), geographic, number, source);
     CPLErrorReset();
   }

@@ -13,6 +13,7 @@ struct PolygonLayer {
   std::vector<mesh::PolygonCell> cells;   ///< one a feature, in the file's order
   std::vector<std::string> ids;           ///< unique; of the id column, else "1", "2", ...
   std::string crs_wkt;                    ///< for make_crs; empty: none given
+  std::size_t dropped_rings = 0;          ///< rings of fewer than three different points, which bound no area
 };
 
 /// `layer` and `id` may be empty: then the file must hold one layer; ids are feature numbers. Geometries other than
