@@ -1,4 +1,6 @@
 // HEALPix meshes: sides cut where levels meet, shared ones bent once; points find their cell by arithmetic.
+// Areas are equal within 1e-10 to level 17 and 1e-9 to level 20; beyond, the rounding of unit vectors shows (3e-7 at
+// 29).
 #include <fmt/format.h>
 
 #include <algorithm>
@@ -28,8 +30,8 @@ std::uint64_t curve_place(const HealpixCell& cell) {
 }
 std::uint64_t half_reach(std::uint64_t curve_place) { return curve_place & (~curve_place + 1); }
 
-// Middles of the four sides: the lower two, which the cell runs through upwards, then the upper two: south-east,
-// north-east, north-west, south-west, anticlockwise; the first two run up, the others down.
+// Middles of the four sides, anticlockwise: south-east and north-east, which run up, north-west and south-west, which
+// run down.
 std::array<std::uint64_t, 4> sides_of(const HealpixCell& cell) {
   const FaceCell at = healpix::face_cell(cell);
   const std::int64_t size = healpix::kBase >> cell.level, half = size / 2;

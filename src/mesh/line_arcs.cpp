@@ -79,7 +79,7 @@ std::vector<OpenLine> split_batch(std::vector<OpenLine> open, const PlacePoints&
 std::vector<OpenLine> split_lines(const std::vector<OpenLine>& lines, const PlacePoints& place, const TakeLine& take) {
   std::vector<OpenLine> rough;
   std::exception_ptr failure;
-#pragma omp parallel for schedule(dynamic)
+#pragma omp parallel for schedule(dynamic) if (lines.size() > kBatch)
   for (std::size_t first = 0; first < lines.size(); first += kBatch) {
     try {
       const auto begin = lines.begin() + static_cast<std::ptrdiff_t>(first);

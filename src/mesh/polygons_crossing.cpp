@@ -16,6 +16,7 @@ struct Point {
 };
 struct Segment {
   Point a, b;
+  std::size_t next;  // the one that goes on from b
 };
 struct Bounds {
   Point low{1e300, 1e300}, high{-1e300, -1e300};
@@ -36,13 +37,15 @@ struct Bounds {
 // The same vertex has the same coordinates in all segments that are drawn in the same turn round the globe.
 void append_segments(const Lines& lines, const Outline& ring, std::vector<Segment>& out) {
   double turn = 0;
+  const std::size_t first = out.size();
   for (const Step& step : ring.steps) {
     const auto& from = lines.vertices()[lines.start(step)];
     const auto& to = lines.vertices()[lines.end(step)];
     const double next = lines.geographic() ? turn + std::round((from[0] + lines.dx(step) - to[0]) / 360) : 0;
-    out.push_back({{from[0] + 360 * turn, from[1]}, {to[0] + 360 * next, to[1]}});
+    out.push_back({{from[0] + 360 * turn, from[1]}, {to[0] + 360 * next, to[1]}, out.size() + 1});
     turn = next;
   }
+  if (out.size() > first) out.back().next = first;
 }
 
 // +1: `p` lies left of the line, -1: right, 0: too near to say.
@@ -59,6 +62,19 @@ int side_of(const Segment& line, const Point& p) {
 
 bool cross(const Segment& s, const Segment& t) {
   return side_of(s, t.a) * side_of(s, t.b) < 0 && side_of(t, s.a) * side_of(t, s.b) < 0;
+}
+
+// Does the ring pass from one side of `t` to the other at the end of `s`, which lies within `t`?
+bool crosses_at_end(const Segment& s, const Segment& after, const Segment& t) {
+  const Point& p = s.b;
+  const int before = side_of(t, s.a);
+  if (before == 0 || side_of(t, p) != 0) return false;
+  const double tx = t.b.x - t.a.x, ty = t.b.y - t.a.y;
+  const double f = ((p.x - t.a.x) * tx + (p.y - t.a.y) * ty) / (tx * tx + ty * ty);
+  constexpr double kEnd = 1e-12;
+  // The next segment begins where this one ends, if need be a turn further round the globe.
+  const Point next{after.b.x + (p.x - after.a.x), after.b.y};
+  return f > kEnd && f < 1 - kEnd && before * side_of(t, next) < 0;
 }
 
 Point meeting(const Segment& s, const Segment& t) {
@@ -104,7 +120,10 @@ class Tree {
       Segment moved = segment_[b.first];
       moved.a.x += shift;
       moved.b.x += shift;
-      if (cross(segment_[a.first], moved)) found_ = meeting(segment_[a.first], moved);
+      const Segment& s = segment_[a.first];
+      if (cross(s, moved)) found_ = meeting(s, moved);
+      if (crosses_at_end(s, segment_[s.next], moved)) found_ = s.b;
+      if (crosses_at_end(moved, segment_[moved.next], s)) found_ = moved.b;
       return;
     }
     if (a.number == b.number && shift == 0) {
