@@ -158,6 +158,7 @@ std::vector<Axis> axes_of(const Inputs& inputs, const nc::Var& variable, const s
     }
     return auxiliary;
   };
+  refuse_repeated_dims(inputs.header(), variable, inputs.header().path);
   std::vector<Axis> axes;
   for (const int id : dims) axes.push_back(axis_of(inputs.header().dim(id)));
   return axes;

@@ -28,27 +28,29 @@ bool never_horizontal(const Header& header, const nc::Dim& dim) {
   return role == Role::time || role == Role::vertical;
 }
 
-/// Which dimension of the data each dimension of the coordinate file is, for those that latitudes and longitudes have:
-/// the one of the same name, else (said) the next of the same length; -1 where none fits.
+/// Which dimension of the data each dimension of the coordinate file is: the one of the same name and length; of those
+/// that latitudes and longitudes have, else (said) the next of the same length. Others are not in the map.
 std::map<int, int> match_dimensions(const Header& header, const nc::Var& variable, const Header& theirs,
                                     Remarks& remarks) {
   std::map<int, int> matches;
+  const auto free = [&](int own_id, const nc::Dim& dim) {
+    const nc::Dim& own = header.dim(own_id);
+    return own.length == dim.length && !never_horizontal(header, own) &&
+           std::ranges::none_of(matches, [&](const auto& m) { return m.second == own_id; });
+  };
+  for (const nc::Dim& dim : theirs.dims)
+    for (const int own_id : variable.dims)
+      if (header.dim(own_id).name == dim.name && free(own_id, dim)) matches[dim.id] = own_id;
   for (const nc::Var& var : theirs.vars) {
     if (!horizontal(role_of(var))) continue;
     for (const int id : var.dims) {
-      if (matches.contains(id)) continue;
       const nc::Dim& dim = theirs.dim(id);
-      const nc::Dim* found = nullptr;
-      for (const int own_id : variable.dims) {
-        const nc::Dim& own = header.dim(own_id);
-        const bool taken = std::ranges::any_of(matches, [&](const auto& m) { return m.second == own_id; });
-        if (own.length != dim.length || taken || never_horizontal(header, own)) continue;
-        if (found == nullptr || own.name == dim.name) found = &own;
-      }
-      if (found != nullptr && found->name != dim.name && dim.length > 1)
+      const auto own = std::ranges::find_if(variable.dims, [&](int own_id) { return free(own_id, dim); });
+      if (matches.contains(id) || own == variable.dims.end()) continue;
+      matches[id] = *own;
+      if (dim.length > 1)
         remarks.push_back(fmt::format("dimension '{}' of {} is taken for '{}', which is as long", dim.name, theirs.path,
-                                      found->name));
-      matches[id] = found != nullptr ? found->id : -1;
+                                      header.dim(*own).name));
     }
   }
   return matches;
@@ -75,6 +77,14 @@ std::vector<double> reorder(const std::vector<double>& data, const std::vector<s
 
 }  // namespace
 
+void refuse_repeated_dims(const Header& header, const nc::Var& variable, const std::string& place) {
+  for (std::size_t i = 0; i < variable.dims.size(); ++i)
+    if (std::ranges::count(variable.dims, variable.dims[i]) > 1)
+      throw Error(
+          Failure::data, place,
+          fmt::format("variable '{}' has the dimension '{}' twice", variable.name, header.dim(variable.dims[i]).name));
+}
+
 Inputs::Inputs(const nc::File& file, Header header)
     : file_(file), header_(std::move(header)), own_(header_.vars.size()) {}
 
@@ -87,21 +97,23 @@ const std::string& Inputs::place(const nc::Var& variable) const { return file_of
 void Inputs::borrow(const nc::File& other, const nc::Var variable, Remarks& remarks) {
   const Header theirs = read_header(other);
   const std::map<int, int> matches = match_dimensions(header_, variable, theirs, remarks);
+  const std::string mesh = variable.text("mesh");
   std::vector<nc::Var> borrowed;
-  bool latitude = false, longitude = false;
+  bool latitude = false, longitude = false, topology = false;
   for (nc::Var var : theirs.vars) {
+    if (role_of(var) == Role::time) continue;
     bool fits = true;
     for (int& id : var.dims) {
       const auto match = matches.find(id);
-      fits = fits && (match == matches.end() || match->second >= 0 || theirs.dim(id).length == 1);
-      id = match != matches.end() && match->second >= 0 ? match->second : id + kForeign;
+      fits = fits && (match != matches.end() || theirs.dim(id).length == 1);
+      id = match != matches.end() ? match->second : id + kForeign;
     }
-    if (!fits || role_of(var) == Role::time) continue;
-    latitude = latitude || role_of(var) == Role::latitude;
-    longitude = longitude || role_of(var) == Role::longitude;
+    latitude = latitude || (fits && role_of(var) == Role::latitude);
+    longitude = longitude || (fits && role_of(var) == Role::longitude);
+    topology = topology || (!mesh.empty() && var.name == mesh);
     borrowed.push_back(std::move(var));
   }
-  if (!latitude || !longitude)
+  if (!topology && (!latitude || !longitude))
     throw Error(Failure::data, other.path(),
                 fmt::format("holds no latitudes and longitudes whose dimensions fit those of variable '{}', {}, in {}",
                             variable.name, header_.shape_text(variable), header_.path));
@@ -128,6 +140,7 @@ std::vector<double> Inputs::values(const nc::Var& variable, const nc::Var* paren
 std::vector<double> Inputs::over(const nc::Var& variable, const std::vector<int>& dims, const nc::Var* parent) const {
   std::vector<std::size_t> lengths, source;  // of the variable's dimensions that count; where each wanted one stands
   std::vector<int> counted;
+  refuse_repeated_dims(header_, variable, place(variable));
   for (const int id : variable.dims) {
     const bool wanted = std::ranges::find(dims, id) != dims.end();
     if (!wanted && header_.dim(id).length != 1)

@@ -9,6 +9,9 @@
 
 namespace windrow::cf {
 
+/// Error(data) at `place` for a variable that has one dimension twice: no position in it means one thing.
+void refuse_repeated_dims(const Header& header, const nc::Var& variable, const std::string& place);
+
 class Inputs {
  public:
   Inputs(const nc::File& file, Header header);

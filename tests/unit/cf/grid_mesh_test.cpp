@@ -99,6 +99,19 @@ TEST_CASE("UGRID faces are the same record from 0 or 1, with either fill, transp
   CHECK(open(Ugrid().write())->grid().why == "mesh 'topology' with face_node_connectivity 'links', location face");
 }
 
+TEST_CASE("a mesh in another file serves as one in the data's") {
+  const std::string mesh = Ugrid().write();
+  FileBuilder file("on_mesh.nc");
+  file.dim("face", 3).var("v", NC_FLOAT, {"face"}, {7, 8, 9}).att("mesh", "topology").att("location", "face");
+  const std::string path = file.done();
+  CHECK(refusal(path) == "on_mesh.nc: variable 'v': its mesh 'topology' is not in the file");
+  cf::GridHints hints;
+  hints.coordinates = mesh;
+  const auto run = open(path, hints);
+  CHECK(run->grid().faces.nodes == open(mesh)->grid().faces.nodes);
+  CHECK(read_cells(*run) == List{7, 8, 9});
+}
+
 TEST_CASE("data at nodes or edges, and connectivity that is none, are refused") {
   Ugrid sample;
   sample.location = "node";
