@@ -2,6 +2,7 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <limits>
 
 #include "plane.h"
 #include "sampling.h"
@@ -48,10 +49,16 @@ class Quadrilaterals final : public Sampler {
         rest_(triangles(source)) {
     // Whether the last column touches the first is seen at the middle row.
     const Neighbours near = neighbours(source);
-    const std::size_t first = ny_ / 2 * nx_;
-    closed_ = nx_ > 2 && std::binary_search(near.cell.begin() + static_cast<std::ptrdiff_t>(near.start[first]),
-                                            near.cell.begin() + static_cast<std::ptrdiff_t>(near.start[first + 1]),
-                                            static_cast<std::uint32_t>(first + nx_ - 1));
+    const std::size_t middle = ny_ / 2 * nx_;
+    const auto neighbour = [&](std::uint64_t n) { return near.cell.begin() + static_cast<std::ptrdiff_t>(n); };
+    closed_ = nx_ > 2 && std::binary_search(neighbour(near.start[middle]), neighbour(near.start[middle + 1]),
+                                            static_cast<std::uint32_t>(middle + nx_ - 1));
+    goes_on_.resize(source.size(), false);
+    for (std::size_t k = 0; k < source.size(); ++k) {
+      for (auto n = near.start[k]; n < near.start[k + 1]; ++n) {
+        if (!next_to(k, near.cell[n])) goes_on_[k] = true;
+      }
+    }
   }
 
   void weigh(const Place& place, std::size_t containing, std::vector<Weight>& out) const override {
@@ -66,13 +73,48 @@ class Quadrilaterals final : public Sampler {
       }
       if (best.outside <= kOnSide) break;
     }
-    if (best.outside > kOnSide) return rest_->weigh(place, containing, out);
+    if (best.outside > kOnSide) {
+      return goes_on_[containing] ? rest_->weigh(place, containing, out) : nearest_side(plane, containing, out);
+    }
     const double s = std::clamp(best.s, 0.0, 1.0), t = std::clamp(best.t, 0.0, 1.0);
     const std::array<double, 4> part{(1 - s) * (1 - t), s * (1 - t), (1 - s) * t, s * t};
     for (std::size_t k = 0; k < 4; ++k) out.push_back({static_cast<std::uint32_t>(cells[k]), part[k]});
   }
 
  private:
+  [[nodiscard]] bool next_to(std::size_t a, std::size_t b) const {
+    const std::size_t ja = a / nx_, ia = a % nx_, jb = b / nx_, ib = b % nx_;
+    const std::size_t dj = ja > jb ? ja - jb : jb - ja, di = ia > ib ? ia - ib : ib - ia;
+    return dj <= 1 && (di <= 1 || (closed_ && di == nx_ - 1));
+  }
+
+  // The nearest point of the lines between neighbouring centres around a cell: on the rim of the centres.
+  void nearest_side(const Plane& plane, std::size_t containing, std::vector<Weight>& out) const {
+    const std::size_t j = containing / nx_, i = containing % nx_;
+    std::vector<std::size_t> cells;
+    for (std::size_t row = j > 0 ? j - 1 : 0; row <= std::min(ny_ - 1, j + 1); ++row) {
+      for (std::size_t k = 0; k < 3; ++k) {
+        const std::size_t column = i + k;  // one more than the column meant
+        if (closed_ || (column >= 1 && column <= nx_)) cells.push_back(row * nx_ + (column + nx_ - 1) % nx_);
+      }
+    }
+    double least = std::numeric_limits<double>::infinity();
+    Weight from{static_cast<std::uint32_t>(containing), 1}, to{static_cast<std::uint32_t>(containing), 0};
+    for (const std::size_t a : cells) {
+      for (const std::size_t b : cells) {
+        const bool side = b > a && (a / nx_ == b / nx_ || a % nx_ == b % nx_) && next_to(a, b);
+        if (!side || !plane.near_side(centre_[a]) || !plane.near_side(centre_[b])) continue;
+        const Foot foot = foot_of_origin(plane(centre_[a]), plane(centre_[b]));
+        if (foot.distance2 >= least) continue;
+        least = foot.distance2;
+        from = {static_cast<std::uint32_t>(a), 1 - foot.along};
+        to = {static_cast<std::uint32_t>(b), foot.along};
+      }
+    }
+    out.push_back(from);
+    out.push_back(to);
+  }
+
   // The quadrilateral whose first corner is the centre of row j, column i; keeps it when it fits better.
   void try_quad(const Plane& plane, std::ptrdiff_t j, std::ptrdiff_t i, InQuad& best,
                 std::array<std::size_t, 4>& cells) const {
@@ -98,6 +140,7 @@ class Quadrilaterals final : public Sampler {
   std::vector<sphere::Vec3> centre_;
   std::unique_ptr<Sampler> rest_;
   bool closed_ = false;
+  std::vector<bool> goes_on_;  // touches cells that rows and columns do not tell: folds, poles
 };
 
 }  // namespace

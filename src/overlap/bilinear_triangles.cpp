@@ -142,13 +142,11 @@ class Triangles final : public Sampler {
       for (std::size_t b = a; b < cells.size(); ++b) {
         if (!plane.near_side(centre_[cells[b]])) continue;
         const PlanePoint q = plane(centre_[cells[b]]);
-        const double dx = q.x - p.x, dy = q.y - p.y, length2 = dx * dx + dy * dy;
-        const double f = length2 > 0 ? std::clamp(-(p.x * dx + p.y * dy) / length2, 0.0, 1.0) : 0.0;
-        const double x = p.x + f * dx, y = p.y + f * dy;
-        if (x * x + y * y < least) {
-          least = x * x + y * y;
-          from = {cells[a], 1 - f};
-          to = {cells[b], f};
+        const Foot foot = foot_of_origin(p, q);
+        if (foot.distance2 < least) {
+          least = foot.distance2;
+          from = {cells[a], 1 - foot.along};
+          to = {cells[b], foot.along};
         }
       }
     }

@@ -1,5 +1,7 @@
 // The plane that touches the sphere at a place, seen from the sphere's centre: great circles are straight lines there.
 #pragma once
+#include <algorithm>
+
 #include "centres.h"
 
 namespace windrow::overlap {
@@ -23,5 +25,16 @@ class Plane {
  private:
   sphere::Vec3 place_, first_, second_;
 };
+
+/// How far along from a to b (0..1) the point nearest to the origin lies, and the square of its distance.
+struct Foot {
+  double along = 0, distance2 = 0;
+};
+inline Foot foot_of_origin(const PlanePoint& a, const PlanePoint& b) {
+  const double dx = b.x - a.x, dy = b.y - a.y, length2 = dx * dx + dy * dy;
+  const double f = length2 > 0 ? std::clamp(-(a.x * dx + a.y * dy) / length2, 0.0, 1.0) : 0.0;
+  const double x = a.x + f * dx, y = a.y + f * dy;
+  return {f, x * x + y * y};
+}
 
 }  // namespace windrow::overlap

@@ -31,7 +31,7 @@ class Sampler {
 
 /// Between the rows and columns of a latitude-longitude grid, in its own coordinates.
 std::unique_ptr<Sampler> rows_and_columns(const mesh::Mesh& source);
-/// In the quadrilaterals of centres of any structured grid; in triangles where there are none (seams, folds, rims).
+/// In the quadrilaterals of centres of any structured grid; in triangles where cells meet without them (folds, poles).
 std::unique_ptr<Sampler> quadrilaterals(const mesh::Mesh& source);
 /// In the Delaunay triangles of centres; beyond them the nearest point of the hull.
 std::unique_ptr<Sampler> triangles(const mesh::Mesh& source);
