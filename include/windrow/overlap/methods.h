@@ -22,23 +22,28 @@ struct Neighbours {
 };
 Neighbours neighbours(const mesh::Mesh& mesh);
 
-/// Gradient of a field of cell means for conservative_linear: least squares over the neighbours that have a value, in the
-/// tangent plane at the area centroid. Limited (Barth & Jespersen 1989, AIAA-89-0366): no corner of a cell exceeds the
-/// cell means around it. A total is divided by its cell's area first, and multiplied again. Columns: [values | first |
-/// second].
+/// Gradient of a field of cell means for conservative_linear: least squares over the neighbours that have a value, in
+/// the tangent plane at the area centroid. Limited (Barth & Jespersen 1989, AIAA-89-0366): no corner of a cell exceeds
+/// the cell means around it. A total is divided by its cell's area first, and multiplied again. Columns: [values |
+/// first | second].
 std::unique_ptr<linear_map::Extension> make_gradient(const mesh::Mesh& source, linear_map::Quantity quantity,
                                                      bool limited);
 
 /// Mass-preserving smooth interpolation (Tobler 1979, JASA 74, 519): `sweeps` sweeps of neighbour means over the mesh,
 /// then every source cell's integral over its part of the mesh is restored (to 1e-10 relative; Error(defect) when that
 /// does not converge), by the least change of the mesh values, over the connected region where mesh cells straddle
-/// borders; with `non_negative` under the condition that no value is below zero. Columns: [values | multipliers].
+/// borders; with `non_negative` under the condition that no value is below zero (a source cell that is not above zero
+/// gives zero). A source cell without a mesh cell to itself (a sliver at the rim, cells finer than the mesh's) is
+/// restored together with the one it shares most area with: by itself it could not always be. Columns: [values |
+/// multipliers].
 struct Smooth {
   linear_map::LinearMap map;
   Closure closure;
   std::unique_ptr<linear_map::Extension> extension;
 };
 Smooth conservative_smooth(const mesh::Mesh& source, const mesh::Mesh& target, bool non_negative);
+/// The extension of such a map, also of one that was stored.
+std::unique_ptr<linear_map::Extension> make_multipliers(const linear_map::LinearMap& map, bool non_negative);
 
 /// Bilinear interpolation between source cell centres at the target's centres, on the sphere: in the quadrilateral of
 /// centres of a structured grid that holds the point, also across the date line and a closed grid's seam; in the
