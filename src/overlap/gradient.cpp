@@ -114,9 +114,10 @@ struct Task {
 
 class GradientExtender final : public linear_map::Extender {
  public:
-  GradientExtender(const Frames& frames, bool limited, std::size_t cells, const std::vector<std::uint32_t>& columns)
-      : frames_(frames), limited_(limited) {
-    const Neighbours& near = frames.neighbours;
+  GradientExtender(std::shared_ptr<const Frames> frames, bool limited, std::size_t cells,
+                   const std::vector<std::uint32_t>& columns)
+      : shared_(std::move(frames)), frames_(*shared_), limited_(limited) {
+    const Neighbours& near = frames_.neighbours;
     std::vector<std::uint32_t> place(cells, kNone), task(cells, kNone);
     for (const std::uint32_t column : columns) {
       const auto cell = static_cast<std::uint32_t>(column % cells);
@@ -193,6 +194,7 @@ class GradientExtender final : public linear_map::Extender {
     return part;
   }
 
+  std::shared_ptr<const Frames> shared_;
   const Frames& frames_;
   bool limited_;
   std::vector<std::uint32_t> needs_;
@@ -202,11 +204,10 @@ class GradientExtender final : public linear_map::Extender {
   std::vector<double> density_;
 };
 
-// Extenders refer to the frames of the Extension that made them.
 class Gradient final : public linear_map::Extension {
  public:
   Gradient(Frames frames, std::size_t cells, bool limited)
-      : frames_(std::move(frames)), cells_(cells), limited_(limited) {}
+      : frames_(std::make_shared<const Frames>(std::move(frames))), cells_(cells), limited_(limited) {}
   std::size_t cells() const override { return cells_; }
   std::size_t columns() const override { return 3 * cells_; }
   std::unique_ptr<linear_map::Extender> extender(const std::vector<std::uint32_t>& columns) const override {
@@ -214,7 +215,7 @@ class Gradient final : public linear_map::Extension {
   }
 
  private:
-  Frames frames_;
+  std::shared_ptr<const Frames> frames_;
   std::size_t cells_;
   bool limited_;
 };

@@ -210,3 +210,44 @@ TEST_CASE("the same columns of the same values give the same bits whatever else 
     CHECK((out[k] == all[some[k]] || (std::isnan(out[k]) && std::isnan(all[some[k]]))));
   }
 }
+
+TEST_CASE("a limited linear map makes no new extremes, also in the mean over small cells, and keeps integrals") {
+  std::mt19937_64 random(20260303);
+  std::normal_distribution<double> normal;
+  const auto source = regular(0, -90, 20, 15, 12, 18);
+  const std::size_t n = source->size();
+  const overlap::Neighbours near = overlap::neighbours(*source);
+  const auto limited = overlap::make_gradient(*source, Quantity::mean, true);
+  for (const mesh::MeshPtr& target : {regular(0.3, -90, 3.1, 2.9, 62, 116), azimuthal_mesh({10, 90}, 20, 20, 200e3)}) {
+    CAPTURE(target->describe());
+    const linear_map::LinearMap map = overlap::conservative_linear(*source, *target, Quantity::mean).map;
+    REQUIRE(map.columns == 3 * n);
+    double beyond = 0, off = 0, total = 0;
+    for (int trial = 0; trial < 5; ++trial) {
+      std::vector<double> field;
+      for (std::size_t k = 0; k < n; ++k) field.push_back(normal(random));
+      const std::vector<double> columns = all_columns(*limited, field);
+      for (std::size_t r = 0; r < map.rows(); ++r) {
+        double sum = 0, plain = 0, cover = 0, low = 1e9, high = -1e9;
+        for (auto p = map.row_start[r]; p < map.row_start[r + 1]; ++p) {
+          sum += map.share[p] * columns[map.column[p]];
+          const std::size_t k = map.column[p];
+          if (k >= n) continue;
+          plain += map.share[p] * field[k];
+          cover += map.share[p];
+          low = std::min(low, field[k]);
+          high = std::max(high, field[k]);
+          for (auto m = near.start[k]; m < near.start[k + 1]; ++m) {
+            low = std::min(low, field[near.cell[m]]);
+            high = std::max(high, field[near.cell[m]]);
+          }
+        }
+        beyond = std::max({beyond, sum / cover - high, low - sum / cover});
+        off += map.row_area[r] * (sum - plain);
+        total += map.row_area[r] * std::abs(sum);
+      }
+    }
+    CHECK(beyond < 1e-13);
+    if (target->latlon() != nullptr && target->on_rim(0) == false) CHECK(std::abs(off) < 1e-12 * total);
+  }
+}
