@@ -108,8 +108,24 @@ std::optional<int> vertex_dim(const Header& header, const nc::Var& bounds, const
       found = id;
     }
   }
-  if (shared != dims.size() || !found || header.dim(*found).length < 3) return std::nullopt;
+  // Two are enough for cells along one dimension: the ends of a rectangle.
+  const std::size_t fewest = dims.size() == 1 ? 2 : 3;
+  if (shared != dims.size() || !found || header.dim(*found).length < fewest) return std::nullopt;
   return found;
+}
+
+/// Both ends in latitude and in longitude become the four corners between them.
+void ends_to_corners(mesh::CellCorners& corners) {
+  std::vector<double> lon, lat;
+  for (std::size_t cell = 0; cell < corners.lat_deg.size() / 2; ++cell) {
+    const auto [x0, x1] = std::pair(corners.lon_deg[2 * cell], corners.lon_deg[2 * cell + 1]);
+    const auto [y0, y1] = std::pair(corners.lat_deg[2 * cell], corners.lat_deg[2 * cell + 1]);
+    lon.insert(lon.end(), {x0, x1, x1, x0});
+    lat.insert(lat.end(), {y0, y0, y1, y1});
+  }
+  corners.most = 4;
+  corners.lon_deg = std::move(lon);
+  corners.lat_deg = std::move(lat);
 }
 
 std::vector<double> take(const std::vector<double>& values, const std::vector<std::size_t>& cells, std::size_t width) {
@@ -175,9 +191,9 @@ std::optional<mesh::CellCorners> read_corners(const Context& context, const LatL
         bounds[i] == nullptr
             ? fmt::format("bounds '{}' of '{}' are not in the file", names[i],
                           (i == 0 ? pair.longitude : pair.latitude)->name)
-            : fmt::format("bounds '{}' have the shape {}, which is not that of '{}' and at least 3 vertices; they are "
-                          "not used",
-                          names[i], header.shape_text(*bounds[i]), (i == 0 ? pair.longitude : pair.latitude)->name));
+            : fmt::format(
+                  "bounds '{}' have the shape {}, which is not that of '{}' and its vertices; they are not used",
+                  names[i], header.shape_text(*bounds[i]), (i == 0 ? pair.longitude : pair.latitude)->name));
     return std::nullopt;
   }
   mesh::CellCorners corners;
@@ -190,6 +206,7 @@ std::optional<mesh::CellCorners> read_corners(const Context& context, const LatL
   corners.lon_deg = context.inputs.over(*bounds[0], all, pair.longitude);
   all.back() = *vertices[1];
   corners.lat_deg = context.inputs.over(*bounds[1], all, pair.latitude);
+  if (corners.most == 2) ends_to_corners(corners);
   for (std::size_t k = 0; k < corners.lat_deg.size(); ++k) {
     double& lat = corners.lat_deg[k];
     const bool missing = std::isnan(lat), after_gap = k % corners.most > 0 && std::isnan(corners.lat_deg[k - 1]);

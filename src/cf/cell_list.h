@@ -13,9 +13,10 @@ namespace windrow::cf {
 /// Latitudes or longitudes of cells over `dims`, in degrees, NaN where missing. Error(data) for what is no place.
 std::vector<double> read_degrees(const Context& context, const nc::Var& coordinate, const std::vector<int>& dims);
 
-/// Corners from the bounds of both coordinates: cells x vertices, trailing missing ones beyond a cell's own corners.
-/// Nothing (said, when there is something to say) without usable bounds. Error(data) when a missing corner stands
-/// before others, or the two disagree on how many there are.
+/// Corners from the bounds of both coordinates: cells x vertices, trailing missing ones beyond a cell's own corners;
+/// or, for cells along one dimension, two ends of each (a rectangle). Nothing (said, when there is something to say)
+/// without usable bounds. Error(data) when a missing corner stands before others, or the two disagree on how many there
+/// are.
 std::optional<mesh::CellCorners> read_corners(const Context& context, const LatLonPair& pair,
                                               const std::vector<int>& dims);
 /// How far the same corner may differ between cells of this file.

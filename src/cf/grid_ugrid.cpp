@@ -172,7 +172,8 @@ std::optional<FileGrid> find_ugrid(const Context& context) {
     }
   }
   result.grid.kind = GridKind::faces;
-  result.grid.sides = sides_of(context, false);
+  if (sides_of(context, false) == mesh::Sides::parallels)
+    context.remarks.push_back("the job's sides = \"parallels\" is not used: sides of UGRID faces are great circles");
   result.grid.mapping = mapping_records(context.mapping);
   result.grid.how = fmt::format("UGRID, {} faces of up to {} nodes, {} nodes, sides along great circles",
                                 faces.nodes.size() / faces.most, faces.most, faces.lon_deg.size());

@@ -54,6 +54,18 @@ std::string missing_coordinates(const Context& context) {
                   dims));
 }
 
+/// What the job says about a grid that the file shows to be of another kind.
+void say_unused_hints(const Context& context, const Grid& grid) {
+  const auto say = [&](const char* key, const char* what) {
+    context.remarks.push_back(
+        fmt::format("the job's grid.{} is not used: the file holds no {} ({})", key, what, grid.how));
+  };
+  if (!context.hints.crs.empty() && grid.kind != GridKind::projected) say("crs", "projected axes");
+  if (!context.hints.axis_units.empty() && grid.kind != GridKind::projected) say("axis_units", "projected axes");
+  if (context.hints.pole && grid.kind != GridKind::rotated && context.axis(Role::grid_latitude) == nullptr)
+    say("pole", "rotated axes");
+}
+
 }  // namespace
 
 Places Places::all(std::size_t rows, std::size_t columns) {
@@ -74,7 +86,10 @@ std::optional<FileGrid> find_structured(const Context& context) {
 
 FileGrid recognise_grid(const Context& context) {
   for (const auto find : {find_ugrid, find_healpix, find_gathered, find_structured, find_listed, find_points})
-    if (auto found = find(context)) return *std::move(found);
+    if (auto found = find(context)) {
+      say_unused_hints(context, found->grid);
+      return *std::move(found);
+    }
   refuse(context);
 }
 

@@ -127,6 +127,27 @@ TEST_CASE("listed cells that are latitude-longitude rectangles have sides along 
   CHECK(open(sample.write())->grid().sides == mesh::Sides::great_circles);
 }
 
+TEST_CASE("two bounds a listed cell are the ends of a rectangle") {
+  Listed sample;
+  sample.lon_v = {0, 1, 1, 2, 0, 2};
+  sample.lat_v = {0, 1, 0, 1, 1, 3};
+  const auto run = open(sample.write());
+  CHECK(run->grid().sides == mesh::Sides::parallels);
+  CHECK(run->grid().corners.most == 4);
+  CHECK(List(run->grid().corners.lon_deg.begin() + 8, run->grid().corners.lon_deg.end()) == List{0, 2, 2, 0});
+  CHECK(List(run->grid().corners.lat_deg.begin() + 8, run->grid().corners.lat_deg.end()) == List{1, 1, 3, 3});
+}
+
+TEST_CASE("what the job says of a grid of another kind is not used, and that is said") {
+  cf::GridHints hints;
+  hints.crs = "EPSG:3035";
+  hints.pole = {{0, 50}};
+  Notices notices;
+  open(Listed().write(), notices, hints);
+  CHECK(has(notices, "the job's grid.crs is not used: the file holds no projected axes (3 cells listed"));
+  CHECK(has(notices, "the job's grid.pole is not used: the file holds no rotated axes"));
+}
+
 TEST_CASE("listed cells without coordinates and repeated ones are left out and said") {
   Listed sample;
   sample.lon = {0.5, kFill, 360.5};
