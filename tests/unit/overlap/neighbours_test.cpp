@@ -55,6 +55,29 @@ TEST_CASE("cells touch across the date line and all round a pole") {
   CHECK(of(sides, 5 * 12 + 3) == std::set<std::uint32_t>{51, 62, 64});
 }
 
+TEST_CASE("a curvilinear grid's seam and poles are found by geometry, the rest by rows and columns") {
+  const auto grid = regular(-180, -90, 20, 15, 12, 18);
+  check_same(overlap::neighbours(*grid), overlap::neighbours(*curvilinear(*grid)));
+  const overlap::Neighbours by_sides = overlap::side_neighbours(*curvilinear(*grid));
+  check_same(overlap::side_neighbours(*grid), by_sides);
+}
+
+TEST_CASE("HEALPix cells touch eight others, but seven where three base cells meet") {
+  // Three of the twelve base cells meet at eight places (Gorski et al. 2005, ApJ 622, 759, fig. 3): 24 cells lie there.
+  std::vector<mesh::HealpixCell> cells;
+  for (std::uint64_t k = 0; k < 12 * 64; ++k) cells.push_back({3, k});
+  const overlap::Neighbours n =
+      overlap::neighbours(*mesh::make_healpix(cells, 0, mesh::Earth::sphere(kRadius_m), "healpix"));
+  CHECK(symmetric(n));
+  std::size_t seven = 0, eight = 0;
+  for (std::size_t k = 0; k < cells.size(); ++k) {
+    if (of(n, k).size() == 7) ++seven;
+    if (of(n, k).size() == 8) ++eight;
+  }
+  CHECK(seven == 24);
+  CHECK(eight == cells.size() - 24);
+}
+
 TEST_CASE("corners that hang on a side of a larger cell touch it") {
   const std::vector<std::size_t> count{4, 10, 16, 21, 16, 7, 3};
   const auto grid = reduced(count);

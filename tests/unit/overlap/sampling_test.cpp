@@ -70,8 +70,13 @@ void check_weights(const LinearMap& map) {
 
 /// Every kind of source that has a way of its own: rows and columns, a rotated frame, quadrilaterals, triangles.
 std::vector<mesh::MeshPtr> global_sources() {
+  std::vector<mesh::HealpixCell> cells;
+  for (std::uint64_t k = 0; k < 12 * 64; ++k) cells.push_back({3, k});
+  const auto healpix = mesh::make_healpix(cells, 0, mesh::Earth::sphere(kRadius_m), "healpix");
   const auto grid = regular(-180, -90, 10, 9, 20, 36);
   return {grid,
+          healpix,
+          curvilinear(*regular(-180, -90, 12, 9, 20, 30)),
           mesh::make_rotated({even_edges(-180, 12, 30), even_edges(-90, 10, 18)}, {-162, 39.25, 0},
                              mesh::Earth::sphere(kRadius_m), "rotated"),
           std::make_shared<Shapeless>(std::vector<mesh::MeshPtr>{grid}),

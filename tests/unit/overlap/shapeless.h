@@ -1,6 +1,7 @@
 // Meshes without rows and columns, made of latitude-longitude blocks: what structured grids look like to geometry
 // alone.
 #pragma once
+#include <tuple>
 #include <vector>
 
 #include "../mesh/azimuthal.h"
@@ -52,6 +53,25 @@ inline mesh::MeshPtr reduced(const std::vector<std::size_t>& cells_a_row) {
                           mesh::Earth::sphere(kRadius_m), "row"));
   }
   return std::make_shared<Shapeless>(std::move(rows));
+}
+
+/// A latitude-longitude grid as a curvilinear one: rows and columns, corners, but no coordinates of its own.
+inline mesh::MeshPtr curvilinear(const mesh::Mesh& grid) {
+  const mesh::LatLonEdges& edges = *grid.latlon();
+  mesh::CellCorners corners;
+  corners.most = 4;
+  std::tie(corners.ny, corners.nx) = grid.shape();
+  for (std::size_t k = 0; k < grid.size(); ++k) {
+    const std::size_t j = k / corners.nx, i = k % corners.nx;
+    corners.lon_deg.insert(corners.lon_deg.end(),
+                           {edges.lon_deg[i], edges.lon_deg[i + 1], edges.lon_deg[i + 1], edges.lon_deg[i]});
+    corners.lat_deg.insert(corners.lat_deg.end(),
+                           {edges.lat_deg[j], edges.lat_deg[j], edges.lat_deg[j + 1], edges.lat_deg[j + 1]});
+    corners.centre_lon_deg.push_back(grid.centre(k).longitude.degrees());
+    corners.centre_lat_deg.push_back(grid.centre(k).latitude.degrees());
+  }
+  Notices notices;
+  return mesh::make_cells(std::move(corners), mesh::Sides::parallels, grid.earth(), "curvilinear", notices);
 }
 
 }  // namespace windrow::test
