@@ -225,6 +225,26 @@ TEST_CASE("real files with odd metadata are understood") {
         }).ends_with("variable 'u': 2 levels along 'level' (millibars); a field with a single level is needed"));
 }
 
+TEST_CASE("real files on other grids are recognised") {
+  Notices notices;
+  const auto lambert = cf::open_run({WINDROW_TESTDATA "/cf/small_lambert_km_axes.nc"}, "prcp", notices);
+  CHECK(lambert->grid().kind == cf::GridKind::projected);
+  CHECK(lambert->grid().axis_units == "km");
+  CHECK(lambert->grid().x_edges.front() == -778.75);
+  CHECK(lambert->grid().y_edges.back() == -119.5);
+  const auto rotated = cf::open_run({WINDROW_TESTDATA "/cf/rcm_hsurf_rotated_alps.nc"}, "HSURF", notices);
+  CHECK(rotated->grid().rotation == mesh::Rotation{-162, 39.25, 0});
+  const auto stations = cf::open_run({WINDROW_TESTDATA "/cf/tiny_dsg_timeseries.nc"}, "pr", notices);
+  CHECK(stations->grid().points.size() == 10);
+  CHECK(stations->time().size() == 20);
+  CHECK(cf::open_run({WINDROW_TESTDATA "/cf/landsea_1deg.nc"}, "LSMASK", notices)
+            ->grid()
+            .how.starts_with("regular latitude-longitude, 1 x 1 degrees, 180 x 360 cells, global"));
+  CHECK(error_text(Failure::data, [&] {
+          cf::open_run({WINDROW_TESTDATA "/cf/sst_clim_2_months.nc"}, "sst", notices);
+        }).ends_with("time axis 'time' has the units 'Month', which name no date; expected '<unit> since <date>'"));
+}
+
 TEST_CASE("the real year of a global model has its known mean temperature") {
   // 287.5637 K: area mean by the file's bounds, weighted by month length; computed independently with numpy.
   Notices notices;
