@@ -21,6 +21,7 @@ using healpix::Place;
 using healpix::Side;
 using sphere::Vec3;
 
+constexpr double kSideTolerance = 1e-8;  // of a cell: how far an arc may stray from a side whose area it keeps
 constexpr double kOnEdge = 2e-14;        // rad: degrees that became radians are off by less
 constexpr std::size_t kBlock = 1 << 16;  // sides bent at a time
 
@@ -179,7 +180,8 @@ void Builder::bend(const std::vector<std::uint64_t>& middles) {
     }
     const std::vector<OpenLine> rough = split_lines(
         lines, [&](const std::vector<OpenLine>& open, std::size_t inner) { return place(open, inner, middles); },
-        [&](std::uint64_t number, std::vector<Vec3> inner) { bent[number - first] = std::move(inner); });
+        [&](std::uint64_t number, std::vector<Vec3> inner) { bent[number - first] = std::move(inner); },
+        {kSideTolerance, true});
     if (!rough.empty()) throw Error(Failure::defect, "HEALPix", "the side of a cell is no smooth line");
     for (std::size_t k = 0; k < count; ++k) {
       if (bent[k].empty()) {

@@ -24,15 +24,17 @@ std::vector<Vec3> every_second(const std::vector<Vec3>& inner) {
   return out;
 }
 
+// Area between the arc through a, m, b and its chord, positive to the right of the chord.
+double lens(const Vec3& a, const Vec3& m, const Vec3& b) {
+  if (norm(b - a) <= sphere::kOnCircle) return 0.0;
+  const sphere::Arc arc = arc_through(a, b, tilt_through(a, m, b));
+  return sphere::lens_area(arc.circle, arc.dtheta);
+}
+
 // `now`: inner points of the line at one level; `finer`: at the next. The area between them, part by part.
 double missed_area(const OpenLine& line, const std::vector<Vec3>& now, const std::vector<Vec3>& finer) {
   const auto point = [&](const std::vector<Vec3>& inner, std::size_t k) -> const Vec3& {
     return k == 0 ? line.from : k == inner.size() + 1 ? line.to : inner[k - 1];
-  };
-  const auto lens = [](const Vec3& a, const Vec3& m, const Vec3& b) {
-    if (norm(b - a) <= sphere::kOnCircle) return 0.0;
-    const sphere::Arc arc = arc_through(a, b, tilt_through(a, m, b));
-    return sphere::lens_area(arc.circle, arc.dtheta);
   };
   double sum = 0;
   for (std::size_t k = 0; k + 2 <= now.size() + 1; k += 2) {
@@ -44,7 +46,34 @@ double missed_area(const OpenLine& line, const std::vector<Vec3>& now, const std
   return sum;
 }
 
-std::vector<OpenLine> split_batch(std::vector<OpenLine> open, const PlacePoints& place, const TakeLine& take) {
+// Moves the middles of the parts until their lenses have the area that arcs an eighth as long find.
+void match_area(const OpenLine& line, const PlacePoints& place, std::vector<Vec3>& inner) {
+  constexpr std::size_t kFiner = 8;
+  const std::size_t fine_inner = (inner.size() + 1) * kFiner - 1;
+  const std::vector<Vec3> fine = place({line}, fine_inner);
+  const auto at = [&](std::size_t k) -> const Vec3& {
+    return k == 0 ? line.from : k == fine_inner + 1 ? line.to : fine[k - 1];
+  };
+  const std::size_t step = 2 * kFiner;  // from one end of a part to the other
+  for (std::size_t part = 0; part * step <= fine_inner; ++part) {
+    const Vec3 &a = at(part * step), &b = at((part + 1) * step);
+    const double length = norm(b - a);
+    if (length <= sphere::kOnCircle) continue;
+    double area = 0;
+    for (std::size_t k = part * step; k < (part + 1) * step; k += 2) {
+      area += lens(at(k), at(k + 1), at(k + 2)) + sphere::triangle_area(a, at(k), at(k + 2));
+    }
+    const Vec3 left = unit(cross(a + b, b - a));
+    Vec3& middle = inner[2 * part];
+    // A lens of sagitta s has an area near 2/3 s length; two steps leave nothing.
+    for (int again = 0; again < 2; ++again) {
+      middle = unit(middle + (1.5 * (lens(a, middle, b) - area) / length) * left);
+    }
+  }
+}
+
+std::vector<OpenLine> split_batch(std::vector<OpenLine> open, const PlacePoints& place, const TakeLine& take,
+                                  const LineRule& rule) {
   for (int level = 0; !open.empty() && level <= kMostLevels; ++level) {
     // Level L has 2^L parts and as many middles: 2^(L+1) - 1 inner points.
     const std::size_t inner = (std::size_t{2} << level) - 1;
@@ -60,7 +89,8 @@ std::vector<OpenLine> split_batch(std::vector<OpenLine> open, const PlacePoints&
       // A smooth line misses ever less; where halving does not help, only the projection's own rounding is left, which
       // on cells of some metres exceeds the criterion. The level before is as good then.
       const bool noise = area > 0.5 * line.missed && area <= kNoise * norm(line.to - line.from);
-      if (area <= kLensTolerance * line.cell_area) {
+      if (area <= rule.tolerance * line.cell_area) {
+        if (rule.match_area) match_area(line, place, now);
         take(line.number, std::move(now));
       } else if (noise) {
         take(line.number, every_second(now));
@@ -76,7 +106,8 @@ std::vector<OpenLine> split_batch(std::vector<OpenLine> open, const PlacePoints&
 
 }  // namespace
 
-std::vector<OpenLine> split_lines(const std::vector<OpenLine>& lines, const PlacePoints& place, const TakeLine& take) {
+std::vector<OpenLine> split_lines(const std::vector<OpenLine>& lines, const PlacePoints& place, const TakeLine& take,
+                                  const LineRule& rule) {
   std::vector<OpenLine> rough;
   std::exception_ptr failure;
 #pragma omp parallel for schedule(dynamic) if (lines.size() > kBatch)
@@ -84,7 +115,7 @@ std::vector<OpenLine> split_lines(const std::vector<OpenLine>& lines, const Plac
     try {
       const auto begin = lines.begin() + static_cast<std::ptrdiff_t>(first);
       const auto end = lines.begin() + static_cast<std::ptrdiff_t>(std::min(lines.size(), first + kBatch));
-      const std::vector<OpenLine> left = split_batch({begin, end}, place, take);
+      const std::vector<OpenLine> left = split_batch({begin, end}, place, take, rule);
 #pragma omp critical(windrow_rough_lines)
       rough.insert(rough.end(), left.begin(), left.end());
     } catch (...) {
