@@ -103,6 +103,10 @@ class Taker {
 
 void convex_parts(const sphere::Polygon& polygon, CellParts& out) {
   Taker taker(out);
+  out.core.clear();
+  if (polygon.pieces.size() == 1 && polygon.pieces.front().loops.size() == 1) {
+    for (const Arc& arc : polygon.pieces.front().loops.front()) out.core.push_back(left_of(arc));
+  }
   for (const sphere::Piece& piece : polygon.pieces) taker.piece(piece);
 }
 

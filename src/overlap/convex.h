@@ -15,6 +15,8 @@ struct ConvexPart {
 struct CellParts {
   std::vector<ConvexPart> parts;
   std::size_t used = 0;  ///< of `parts`; the rest is memory to be used again
+  /// Of a cell of one loop: the left sides of all its edges. What lies in all of them lies in the cell, convex or not.
+  std::vector<sphere::Circle> core;
 };
 
 /// A convex piece of one loop is one part. Any other piece, with holes too, is a fan of great-circle triangles about its

@@ -16,28 +16,34 @@ using sphere::Piece;
 class PartsStore {
  public:
   explicit PartsStore(const mesh::Mesh& mesh) : mesh_(mesh), slots_(kSlots) {}
-  const CellParts& of(std::uint32_t cell) {
-    Slot& slot = slots_[cell % kSlots];
-    if (!slot.held || slot.cell != cell) {
-      mesh_.cell_into(cell, polygon_);
-      convex_parts(polygon_, slot.parts);
-      slot.cell = cell;
-      slot.held = true;
-    }
-    return slot.parts;
-  }
-
- private:
-  static constexpr std::size_t kSlots = 4096;
   struct Slot {
     bool held = false;
     std::uint32_t cell = 0;
     CellParts parts;
+    sphere::Polygon polygon;
   };
+  const Slot& of(std::uint32_t cell) {
+    Slot& slot = slots_[cell % kSlots];
+    if (!slot.held || slot.cell != cell) {
+      mesh_.cell_into(cell, slot.polygon);
+      convex_parts(slot.polygon, slot.parts);
+      slot.cell = cell;
+      slot.held = true;
+    }
+    return slot;
+  }
+
+ private:
+  static constexpr std::size_t kSlots = 2048;
   const mesh::Mesh& mesh_;
   std::vector<Slot> slots_;
-  sphere::Polygon polygon_;
 };
+
+bool within(const std::vector<sphere::Circle>& sides, const Outline& outline) {
+  return !sides.empty() && std::all_of(sides.begin(), sides.end(), [&](const sphere::Circle& side) {
+    return side_of(side, outline) == Side::inside;
+  });
+}
 
 class CellOverlap {
  public:
@@ -74,34 +80,53 @@ class CellOverlap {
     if (!hull) return false;
     outline_.points.assign(hull->corner.begin(), hull->corner.end());
     outline_.margin = hull->margin;
-    const CellParts& parts = parts_.of(hint_);
-    const auto& sides = parts.parts.front().sides;
-    return std::all_of(sides.begin(), sides.end(),
-                       [&](const sphere::Circle& side) { return side_of(side, outline_) == Side::inside; });
+    return within(parts_.of(hint_).parts.core, outline_);
   }
 
   void add_piece(const Piece& piece, double whole, std::size_t row) {
     outline_of(piece, outline_);
+    own_known_ = false;
     for (const std::uint32_t cell : candidates_) {
-      const CellParts& parts = parts_.of(cell);
-      for (std::size_t k = 0; k < parts.used; ++k) {
-        bool cut = false;
-        const Piece* left = common(piece, parts.parts[k], cut);
-        if (left == nullptr) continue;
-        const double area = cut || whole == 0 ? signed_area(*left) : whole;
-        found_.add(*left, area, row, cell, parts.parts[k].sign);
-        if (cut || parts.used > 1) continue;
+      const PartsStore::Slot& clip_cell = parts_.of(cell);
+      if (within(clip_cell.parts.core, outline_)) {
+        found_.add(piece, whole == 0 ? signed_area(piece) : whole, row, cell);
         hinted_ = true;
         hint_ = cell;
+      } else if (clip_cell.parts.used > 1 && convex(piece)) {
+        add_turned(clip_cell.polygon, row, cell);
+      } else {
+        for (std::size_t k = 0; k < clip_cell.parts.used; ++k) {
+          const ConvexPart& part = clip_cell.parts.parts[k];
+          const Piece* left = common(piece, outline_, part);
+          if (left != nullptr) found_.add(*left, signed_area(*left), row, cell, part.sign);
+        }
       }
     }
   }
 
+  bool convex(const Piece& piece) {
+    if (!own_known_) {
+      own_polygon_.pieces.assign(1, piece);
+      convex_parts(own_polygon_, own_);
+      own_known_ = true;
+    }
+    return own_.used == 1;
+  }
+
+  // The other way round: a cell that would have to be taken apart is cut by the sides of the piece, which is convex.
+  void add_turned(const sphere::Polygon& polygon, std::size_t row, std::uint32_t cell) {
+    for (const Piece& part : polygon.pieces) {
+      outline_of(part, other_outline_);
+      const Piece* left = common(part, other_outline_, own_.parts.front());
+      if (left != nullptr) found_.add(*left, signed_area(*left), row, cell);
+    }
+  }
+
   // The part of the piece within all half-spaces: itself when nothing is cut, null when nothing is left.
-  const Piece* common(const Piece& piece, const ConvexPart& part, bool& cut) {
+  const Piece* common(const Piece& piece, const Outline& outline, const ConvexPart& part) {
     across_.clear();
     for (const sphere::Circle& side : part.sides) {
-      const Side where = side_of(side, outline_);
+      const Side where = side_of(side, outline);
       if (where == Side::outside) return nullptr;
       if (where == Side::across) across_.push_back(&side);
     }
@@ -109,7 +134,6 @@ class CellOverlap {
     Piece* into = &one_;
     for (const sphere::Circle* side : across_) {
       clip(*left, *side, *into);
-      cut = true;
       if (into->loops.empty()) return nullptr;
       left = into;
       into = into == &one_ ? &other_ : &one_;
@@ -123,8 +147,10 @@ class CellOverlap {
   bool moments_, hinted_ = false;
   std::uint32_t hint_ = 0;
   PartsStore parts_;
-  Outline outline_;
-  sphere::Polygon polygon_;
+  Outline outline_, other_outline_;
+  sphere::Polygon polygon_, own_polygon_;
+  CellParts own_;
+  bool own_known_ = false;
   std::vector<std::uint32_t> candidates_;
   std::vector<const sphere::Circle*> across_;
   Piece one_, other_;
