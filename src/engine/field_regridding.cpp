@@ -101,6 +101,11 @@ FieldRegridding regrid_field(Session& session, std::size_t field, std::size_t ru
   const Source& source = session.source(field, run);
   const auto& spec = session.job.fields[field];
   const Target& target = session.target();
+  if (spec.method == job::Method::conservative_smooth && !session.job.runs[run].land_fraction.empty()) {
+    throw Error(Failure::job, place_of(session, field, run),
+                "method conservative-smooth takes no land_fraction: integrals over parts of cells cannot be restored; "
+                "expected conservative-1 or conservative-2");
+  }
   const auto quantity = spec.total ? linear_map::Quantity::total : linear_map::Quantity::mean;
   out.regridding = session.maps().regrid(spec.method, *source.mesh, *target.mesh, quantity, non_negative(spec, affine));
   out.map = out.regridding.map;

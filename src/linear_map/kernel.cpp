@@ -160,7 +160,8 @@ WINDROW_CLONES void apply_row(const Weights& weights, std::size_t row, const Sou
                    : mean   ? (sum[lane] + increment[lane]) / present[lane]
                             : sum[lane] + increment[lane];
     value = value < weights.not_below ? weights.not_below : value;
-    out.value[lane] = present[lane] > 0 ? value : nan;
+    // A map with its own cover reaches beyond what overlaps a row: without any of that there is no value.
+    out.value[lane] = present[lane] > 0 && (!separate || cover[lane] > 0) ? value : nan;
     out.cover[lane] = cover[lane] > 1.0 ? 1.0 : cover[lane];
     out.weight[lane] = !mean ? 1.0 : separate ? cover[lane] : present[lane];
   }

@@ -16,6 +16,15 @@ namespace {
 
 using sphere::Vec3;
 
+// Of a WKT the name of its projection method, of any other key the key itself.
+std::string short_name(const std::string& key) {
+  const std::string mark = "METHOD[\"";
+  const auto at = key.find(mark);
+  if (at == std::string::npos) return key;
+  const auto from = at + mark.size();
+  return key.substr(from, key.find('"', from) - from);
+}
+
 class ProjectedMesh final : public Mesh {
  public:
   ProjectedMesh(std::vector<double> x, std::vector<double> y, ProjectedLines lines, Projector to_geographic,
@@ -68,7 +77,7 @@ class ProjectedMesh final : public Mesh {
     return hasher.add(earth_.e2).finish();
   }
   std::string describe() const override {
-    return fmt::format("projected ({}), {} x {} cells", crs_key_, lines_.ny, lines_.nx);
+    return fmt::format("projected ({}), {} x {} cells", short_name(crs_key_), lines_.ny, lines_.nx);
   }
 
  private:
