@@ -7,14 +7,14 @@
 namespace windrow::sphere {
 
 SinCos sincos_degrees(double degrees) {
-  double r = std::fmod(degrees, 360.0);
-  if (r < 0) r += 360.0;
-  // To the nearest multiple of 90, so that the remainder is exact and within 45 degrees.
-  const int quadrant = static_cast<int>(std::lround(r / 90.0));
+  const double r = std::fmod(degrees, 360.0);
+  // From the nearest multiple of 90, so that the remainder is exact and within 45 degrees, of small negative angles
+  // too.
+  const int quadrant = static_cast<int>(std::floor(r / 90.0 + 0.5));
   const double rest = Angle::degrees(r - 90.0 * quadrant).radians();
   const double s = std::sin(rest);
   const double c = std::cos(rest);
-  switch (quadrant % 4) {
+  switch ((quadrant + 4) % 4) {
     case 0:
       return {s, c};
     case 1:
