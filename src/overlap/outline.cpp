@@ -31,4 +31,14 @@ Side side_of(const sphere::Circle& half_space, const Outline& outline) {
   return Side::across;
 }
 
+Side side_of_region(const sphere::Circle& half_space, const Outline& outline) {
+  const Side side = side_of(half_space, outline);
+  // Only what lies around the smaller of both sides can hold the circle unseen, and it is wider than the circle.
+  if (side == Side::across || (side == Side::inside ? half_space.d >= 0 : half_space.d <= 0)) return side;
+  for (const Vec3& p : outline.points) {
+    if (norm(p - outline.points.front()) + outline.margin >= half_space.radius) return Side::across;
+  }
+  return side;
+}
+
 }  // namespace windrow::overlap

@@ -17,4 +17,8 @@ void outline_of(const sphere::Piece& piece, Outline& out);
 enum class Side { inside, outside, across };
 Side side_of(const sphere::Circle& half_space, const Outline& outline);
 
+/// The same for the region within the outline: `across` also when it is so large that it may lie around the circle, as
+/// a cell around a pole lies around parallels that its boundary does not come near.
+Side side_of_region(const sphere::Circle& half_space, const Outline& outline);
+
 }  // namespace windrow::overlap

@@ -41,7 +41,7 @@ class PartsStore {
 
 bool within(const std::vector<sphere::Circle>& sides, const Outline& outline) {
   return !sides.empty() && std::all_of(sides.begin(), sides.end(), [&](const sphere::Circle& side) {
-    return side_of(side, outline) == Side::inside;
+    return side_of_region(side, outline) == Side::inside;
   });
 }
 
@@ -126,7 +126,7 @@ class CellOverlap {
   const Piece* common(const Piece& piece, const Outline& outline, const ConvexPart& part) {
     across_.clear();
     for (const sphere::Circle& side : part.sides) {
-      const Side where = side_of(side, outline);
+      const Side where = side_of_region(side, outline);
       if (where == Side::outside) return nullptr;
       if (where == Side::across) across_.push_back(&side);
     }
