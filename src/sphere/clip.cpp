@@ -8,6 +8,8 @@ namespace windrow::sphere {
 namespace {
 
 constexpr double kPi = std::numbers::pi;
+constexpr double kNotch = 1e-12;    // rad: notches so narrow may have their ends in the wrong order
+constexpr double kAntipode = 1e-9;  // rad: well above rounding, well below any cell
 
 struct CutArc {
   Arc arc;
@@ -20,12 +22,21 @@ struct Chain {
   std::size_t first, count;  // in Scratch::kept
   bool used = false;
   bool on_circle = true;  // nothing but arcs of the clip circle: bounds no area
+  std::size_t next = 0;   // the chain that goes on, after
+  double turn = 0;        // this angle along the clip circle
+};
+
+struct Crossing {
+  double angle;
+  std::size_t chain;
 };
 
 struct Scratch {
   std::vector<CutArc> cut;
   std::vector<Arc> kept;
   std::vector<Chain> chains;
+  std::vector<Crossing> exits, entries;
+  std::vector<double> angles;
 };
 
 double squared(const Vec3& v) { return dot(v, v); }
@@ -145,15 +156,22 @@ class Rim {
     double delta = angle_of(q) - angle_of(p);
     if (delta > kPi) delta -= 2 * kPi;
     if (delta <= -kPi) delta += 2 * kPi;
-    if (std::abs(delta) < 0.1) {
-      const double exact = 2 * std::asin(std::min(1.0, 0.5 * norm(q - p) / c_.radius));
-      delta = std::copysign(exact, delta);
-    }
+    delta = refined(delta, p, q);
     if (delta < 0 && -delta * c_.radius <= kOnePoint) return 0;
     return delta < 0 ? delta + 2 * kPi : delta;
   }
+  // An angle between points, from their distance where that is better.
+  [[nodiscard]] double refined(double delta, const Vec3& p, const Vec3& q) const {
+    if (std::abs(delta) >= 0.1) return delta;
+    return std::copysign(2 * std::asin(std::min(1.0, 0.5 * norm(q - p) / c_.radius)), delta);
+  }
+  [[nodiscard]] double angle_of(const Vec3& p) const { return std::atan2(dot(p, v_), dot(p, u_)); }
   void add_arcs(const Vec3& p, const Vec3& q, double angle, Loop& loop) const {
     if (angle == 0) return;
+    if (angle < 0) {  // back over a crossing that rounding put first
+      loop.push_back({p, q, c_, angle});
+      return;
+    }
     const int parts = static_cast<int>(std::ceil(angle / (0.5 * kPi * (1 + kOnCircle))));
     const double start = angle_of(p);
     Vec3 from = p;
@@ -166,7 +184,6 @@ class Rim {
 
  private:
   static constexpr double kOnePoint = 16 * kOnCircle;  // two crossings, each off by a few kOnCircle
-  [[nodiscard]] double angle_of(const Vec3& p) const { return std::atan2(dot(p, v_), dot(p, u_)); }
   const Circle& c_;
   Vec3 u_, v_;
 };
@@ -212,30 +229,91 @@ class Loops {
   std::size_t used_ = 0;
 };
 
-// Joins every exit to the next entry in the positive sense of the clip circle.
-void join_chains(Scratch& s, const Circle& half_space, Loops& loops) {
-  const Rim rim(half_space);
-  for (Chain& head : s.chains) {
-    if (head.used) continue;
-    Loop& loop = loops.add();
-    Chain* current = &head;
+// Every exit goes on at the next entry in the positive sense of the clip circle. Returns the angle of all that.
+double link_nearest(Scratch& s, const Rim& rim) {
+  double total = 0;
+  for (std::size_t head = 0; head < s.chains.size(); ++head) {
+    if (s.chains[head].used) continue;
+    std::size_t current = head;
     do {
-      current->used = true;
-      loop.insert(loop.end(), s.kept.begin() + current->first, s.kept.begin() + current->first + current->count);
-      const Vec3 exit = loop.back().to;
-      Chain* next = nullptr;
-      double nearest = 0;
-      for (Chain& c : s.chains) {
-        if (c.used && &c != &head) continue;
-        const double angle = rim.angle(exit, s.kept[c.first].from);
-        if (next == nullptr || angle < nearest) {
-          next = &c;
-          nearest = angle;
-        }
+      Chain& chain = s.chains[current];
+      chain.used = true;
+      const Vec3& exit = s.kept[chain.first + chain.count - 1].to;
+      bool found = false;
+      for (std::size_t k = 0; k < s.chains.size(); ++k) {
+        if (s.chains[k].used && k != head) continue;
+        const double angle = rim.angle(exit, s.kept[s.chains[k].first].from);
+        if (found && !(angle < chain.turn)) continue;
+        chain.next = k;
+        chain.turn = angle;
+        found = true;
       }
-      rim.add_arcs(exit, s.kept[next->first].from, nearest, loop);
-      current = next;
-    } while (current != &head);
+      total += chain.turn;
+      current = chain.next;
+    } while (current != head);
+  }
+  return total;
+}
+
+// The same where crossings at a small angle may have come out in the wrong order: exits and entries take turns along
+// the circle, so the n-th exit belongs to the n-th entry, counted from a point that is clearly in or out of the region:
+// the middle of the widest gap between crossings.
+void link_in_order(Scratch& s, const Rim& rim, const Piece& piece) {
+  s.exits.clear();
+  s.entries.clear();
+  s.angles.clear();
+  for (std::size_t k = 0; k < s.chains.size(); ++k) {
+    const Chain& chain = s.chains[k];
+    s.exits.push_back({rim.angle_of(s.kept[chain.first + chain.count - 1].to), k});
+    s.entries.push_back({rim.angle_of(s.kept[chain.first].from), k});
+    s.angles.push_back(s.exits.back().angle);
+    s.angles.push_back(s.entries.back().angle);
+  }
+  std::sort(s.angles.begin(), s.angles.end());
+  double widest = 2 * kPi - (s.angles.back() - s.angles.front());
+  double base = s.angles.back() + 0.5 * widest;
+  for (std::size_t k = 1; k < s.angles.size(); ++k) {
+    const double gap = s.angles[k] - s.angles[k - 1];
+    if (gap <= widest) continue;
+    widest = gap;
+    base = s.angles[k - 1] + 0.5 * gap;
+  }
+  for (std::vector<Crossing>* crossed : {&s.exits, &s.entries}) {
+    for (Crossing& c : *crossed) {
+      c.angle -= base;
+      while (c.angle < 0) c.angle += 2 * kPi;
+      while (c.angle >= 2 * kPi) c.angle -= 2 * kPi;
+    }
+    std::sort(crossed->begin(), crossed->end(), [](const Crossing& a, const Crossing& b) { return a.angle < b.angle; });
+  }
+  const std::size_t n = s.chains.size(), shift = contains(piece, rim.at(base)) ? 1 : 0;
+  for (std::size_t k = 0; k < n; ++k) {
+    const Crossing& entry = s.entries[(k + shift) % n];
+    Chain& chain = s.chains[s.exits[k].chain];
+    chain.next = entry.chain;
+    const double turn = entry.angle - s.exits[k].angle + (k + shift >= n ? 2 * kPi : 0);
+    chain.turn = rim.refined(turn, s.kept[chain.first + chain.count - 1].to, s.kept[s.chains[entry.chain].first].from);
+  }
+}
+
+// Joins the chains along the clip circle. Whatever the order of crossings, the angle of all joints is right but for
+// whole turns, so less than half a turn is beyond doubt; only a small circle can lie in the region but for a notch.
+void join_chains(Scratch& s, const Circle& half_space, const Piece& piece, Loops& loops) {
+  const Rim rim(half_space);
+  const double total = link_nearest(s, rim);
+  if (total > kPi || (half_space.d != 0 && total * half_space.radius < kNotch)) link_in_order(s, rim, piece);
+  for (Chain& chain : s.chains) chain.used = false;
+  for (std::size_t head = 0; head < s.chains.size(); ++head) {
+    if (s.chains[head].used) continue;
+    Loop& loop = loops.add();
+    std::size_t current = head;
+    do {
+      Chain& chain = s.chains[current];
+      chain.used = true;
+      loop.insert(loop.end(), s.kept.begin() + chain.first, s.kept.begin() + chain.first + chain.count);
+      rim.add_arcs(loop.back().to, s.kept[s.chains[chain.next].first].from, chain.turn, loop);
+      current = chain.next;
+    } while (current != head);
   }
 }
 
@@ -243,13 +321,10 @@ void join_chains(Scratch& s, const Circle& half_space, Loops& loops) {
 // other side tells, which no edge comes near; only a ring around the circle needs a point of the circle itself.
 void add_whole_circle(const Piece& piece, const Circle& half_space, Piece& out) {
   if (piece.loops.empty()) return;
+  const bool all = out.loops.size() == piece.loops.size(), none = out.loops.empty();
+  if ((all && half_space.d >= 0) || (none && half_space.d <= 0)) return;  // the other side is no less than a hemisphere
   const Rim rim(half_space);
-  Vec3 probe = half_space.n;
-  if (out.loops.size() == piece.loops.size()) {
-    probe = -half_space.n;
-  } else if (!out.loops.empty()) {
-    probe = rim.at(0);
-  }
+  const Vec3 probe = all ? -half_space.n : none ? half_space.n : rim.at(0);
   if (!contains(piece, probe)) return;
   const Vec3 start = rim.at(0);
   out.loops.emplace_back();
@@ -281,7 +356,7 @@ void clip(const Piece& piece, const Circle& half_space, Piece& out) {
         loops.add() = loop;
       }
     }
-    if (crossed) join_chains(s, half_space, loops);
+    if (crossed && !s.chains.empty()) join_chains(s, half_space, piece, loops);
   }
   if (!crossed) add_whole_circle(piece, half_space, out);
 }
@@ -295,7 +370,11 @@ bool contains(const Piece& piece, const Vec3& p) {
       const double left = dot(p, cross(a, b));  // of the chord's great circle
       a = a - dot(p, a) * p;
       b = b - dot(p, b) * p;
-      turned += std::atan2(left, dot(a, b));
+      const double along = dot(a, b);
+      // An edge through the antipode has no angle, seen from the point; a region under a hemisphere holds but one of
+      // them.
+      if (std::abs(left) < kAntipode && along < kAntipode && dot(p, arc.from + arc.to) < -0.9) return false;
+      turned += std::atan2(left, along);
       // Between the chord and the arc, which is near both ends, the arc passes on the other side of the point.
       const double chord = squared(arc.to - arc.from);
       if (squared(p - arc.from) > chord || squared(p - arc.to) > chord) continue;

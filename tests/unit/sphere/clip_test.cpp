@@ -1,6 +1,7 @@
 // Laws of clipping: what is cut off and what is left make up the whole, and neighbours meet in the same points.
 #include <doctest/doctest.h>
 
+#include <algorithm>
 #include <numbers>
 #include <random>
 
@@ -106,6 +107,48 @@ TEST_CASE("what a half-space keeps and what it cuts off make up the whole") {
   }
   CHECK(worst <= 1);
   CHECK(both > 100000);
+}
+
+TEST_CASE("wedges at a pole that is nowhere special are cut by meridians and parallels through their own corners") {
+  Nasty nasty(4242);
+  double worst = 0;
+  for (int k = 0; k < 50000; ++k) {
+    // A frame turned anyhow: corners and circles are rounded apart.
+    const Vec3 z = nasty.direction(), x = unit(cross(z, nasty.direction())), y = cross(z, x);
+    const auto turned = [&](const Vec3& v) { return v.x * x + v.y * y + v.z * z; };
+    const auto turned_circle = [&](Circle c) {
+      c.n = turned(c.n);
+      return c;
+    };
+    const double west = nasty.uniform(-180, 180), east = west + nasty.log_uniform(1e-6, 89), phi = nasty.uniform(1, 89);
+    const Vec3 sw = turned(point_degrees(west, phi)), se = turned(point_degrees(east, phi));
+    const double down = (90 - phi) / 180 * kPi;
+    const Piece whole{{{{sw, se, turned_circle(Circle::parallel_degrees(phi)), (east - west) / 180 * kPi},
+                        {se, z, turned_circle(Circle::meridian_degrees(east)), -down},
+                        {z, sw, turned_circle(Circle::meridian_degrees(west)), down}}}};
+    for (Circle c : {Circle::parallel_degrees(phi), Circle::meridian_degrees(west), Circle::meridian_degrees(east),
+                     Circle::meridian_degrees(nasty.uniform(west, east)),
+                     Circle::meridian_degrees(west - nasty.log_uniform(1e-6, 89))}) {
+      c = turned_circle(c);
+      Piece in, out;
+      clip(whole, c, in);
+      clip(whole, c.reversed(), out);
+      const double a = area({{whole}}), a_in = area({{in}}), a_out = area({{out}});
+      const double bound = 2 * kOnCircle * (length(whole) + length(in) + length(out));
+      worst = std::max({worst, std::abs(a_in + a_out - a) / bound, (a_in - a) / bound, (a_out - a) / bound});
+    }
+  }
+  CHECK(worst <= 1);
+}
+
+TEST_CASE("a cell does not hold the antipode of its own corners and edges, rounding or not") {
+  Nasty nasty(17);
+  for (int k = 0; k < 20000; ++k) {
+    const Piece whole = nasty.quadrilateral();
+    const Arc& arc = whole.loops[0][static_cast<std::size_t>(k % 4)];
+    CHECK_FALSE(contains(whole, -arc.from));
+    CHECK_FALSE(contains(whole, unit(-point_on(arc, 0.3) + 1e-16 * nasty.direction())));
+  }
 }
 
 TEST_CASE("two circles cross in the same bits from either side") {
