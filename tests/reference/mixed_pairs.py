@@ -224,7 +224,7 @@ def bound(cell):
 
 
 def check_oracle():
-    """The oracle itself on areas that are known: an octant with the box between two parallels."""
+    """The oracle itself on areas that are known: an octant, a polar cap and what they share."""
     r = math.sqrt(0.5)
     octant = [[[1, 0, 0], [0, 1, 0], [0, 0, 1], 0, math.pi / 2], [[0, 1, 0], [0, 0, 1], [1, 0, 0], 0, math.pi / 2],
               [[0, 0, 1], [1, 0, 0], [0, 1, 0], 0, math.pi / 2]]
