@@ -122,7 +122,8 @@ double mean_area(const mesh::Mesh& mesh) {
 void check(const mesh::Mesh& mesh) {
   if (!mesh.has_area()) {
     throw Error(Failure::data, mesh.describe(),
-                "has points without area; expected cells: points take method bilinear or nearest");
+                "have no area, which conservative methods need; expected method bilinear or nearest, or grid = { "
+                "coordinates = \"...\" } naming a file with the cells' corners");
   }
   if (mesh.size() > std::numeric_limits<std::uint32_t>::max()) {
     throw Error(Failure::data, mesh.describe(), "has more cells than a linear map can number (2^32)");

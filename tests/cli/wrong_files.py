@@ -158,23 +158,6 @@ def _(folder):
     regrid(folder, mesh="[mesh]\nlon = { from = -60, to = -50, step = 1 }\nlat = { from = 40, to = 50, step = 1 }\n")
 
 
-@case("2-D coordinates", 65,
-      "windrow: FOLDER/in/tas.nc: variable 'tas': latitude and longitude are two-dimensional (lat(y, x)); only "
-      "latitude-longitude grids with one-dimensional axes can be read\n")
-def _(folder):
-    folder.write("job.toml", kit.job())
-    with netCDF4.Dataset(folder("in/tas.nc"), "w") as file:
-        for name, size in (("time", 2), ("y", 3), ("x", 3)):
-            file.createDimension(name, size)
-        time = file.createVariable("time", "f8", "time")
-        time.units, time[:] = "days since 2001-01-01", [0.5, 1.5]
-        for name, units in (("lat", "degrees_north"), ("lon", "degrees_east")):
-            axis = file.createVariable(name, "f8", ("y", "x"))
-            axis.units, axis[:] = units, np.arange(9).reshape(3, 3) + 10
-        data = file.createVariable("tas", "f4", ("time", "y", "x"))
-        data.units, data.coordinates, data[:] = "K", "lat lon", 280
-
-
 @case("several levels", 65,
       "windrow: FOLDER/in/tas.nc: variable 'tas': 3 levels along 'plev' (Pa); a field with a single level is "
       "needed\n")

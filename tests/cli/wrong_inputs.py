@@ -11,6 +11,7 @@ from concurrent.futures import ThreadPoolExecutor
 import cases
 import kit
 import wrong_files  # noqa: F401, registers its cases
+import wrong_grids  # noqa: F401
 import wrong_jobs  # noqa: F401
 
 

@@ -144,6 +144,27 @@ def vectors(folder):
         check("vectors: named after the grid", u["uas"].standard_name == "x_wind")
 
 
+def refusals(folder):
+    """Components that do not belong together are refused for both fields."""
+    for name, attribute, value, told in (
+            ("axes", "standard_name", "northward_wind", "runs along the grid's axes, but its partner 'vas' along east and "
+             "north, as their standard names say"),
+            ("units", "units", "km h-1", "has other units or times than its partner 'vas'")):
+        with netCDF4.Dataset(os.path.join(folder, "in.nc"), "a") as data:
+            before = data["vas"].getncattr(attribute)
+            data["vas"].setncattr(attribute, value)
+        path = os.path.join(folder, name + ".toml")
+        with open(path, "w") as out:
+            out.write(f'[job]\nworkspace = "w_{name}"\n[[run]]\nfiles = ["in.nc"]\n'
+                      + PAIR.format("bilinear", "") + LATLON + f'[output]\ndirectory = "{name}"\n')
+        done = subprocess.run([WINDROW, "run", path, "--quiet"], capture_output=True, text=True)
+        check(f"vectors: other {name} refused", done.returncode == 65 and
+              f"windrow: field 'uas', run 'run': {told}\n" in done.stderr and not os.path.exists(
+                  os.path.join(folder, name, "uas_run_mesh.nc")), done.stderr.strip().splitlines()[0])
+        with netCDF4.Dataset(os.path.join(folder, "in.nc"), "a") as data:
+            data["vas"].setncattr(attribute, before)
+
+
 def integrals(folder, area, f, holes):
     laea = ('[mesh]\nkind = "projected"\ncrs = "+proj=laea +lat_0=50 +lon_0=17 +R=6371007.1809"\n'
             "x = { from = -4500000, to = 4500000, step = 100000 }\ny = { from = -4500000, to = 4500000, step = 100000 }\n")
@@ -180,6 +201,7 @@ def main():
     with tempfile.TemporaryDirectory() as folder:
         area, f, holes = source(os.path.join(folder, "in.nc"))
         vectors(folder)
+        refusals(folder)
         integrals(folder, area, f, holes)
     print(f"{len(failures)} failures")
     return 1 if failures else 0
