@@ -101,12 +101,18 @@ class Taker {
 
 }  // namespace
 
-void convex_parts(const sphere::Polygon& polygon, CellParts& out) {
-  Taker taker(out);
+void find_sides(const sphere::Polygon& polygon, CellParts& out) {
   out.core.clear();
-  if (polygon.pieces.size() == 1 && polygon.pieces.front().loops.size() == 1) {
-    for (const Arc& arc : polygon.pieces.front().loops.front()) out.core.push_back(left_of(arc));
-  }
+  out.used = 0;
+  out.convex = false;
+  if (polygon.pieces.size() != 1 || polygon.pieces.front().loops.size() != 1) return;
+  const Loop& loop = polygon.pieces.front().loops.front();
+  for (const Arc& arc : loop) out.core.push_back(left_of(arc));
+  out.convex = is_convex(loop);
+}
+
+void take_apart(const sphere::Polygon& polygon, CellParts& out) {
+  Taker taker(out);
   for (const sphere::Piece& piece : polygon.pieces) taker.piece(piece);
 }
 

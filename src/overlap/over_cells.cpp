@@ -15,18 +15,19 @@ using sphere::Piece;
 // Cells of the clipping mesh taken apart, the latest few: neighbours meet the same ones again.
 class PartsStore {
  public:
-  explicit PartsStore(const mesh::Mesh& mesh) : mesh_(mesh), slots_(kSlots) {}
+  explicit PartsStore(const mesh::Mesh& mesh) : mesh_(mesh), slots_(std::size_t{1} << kSlotBits) {}
   struct Slot {
     bool held = false;
     std::uint32_t cell = 0;
     CellParts parts;
     sphere::Polygon polygon;
   };
-  const Slot& of(std::uint32_t cell) {
-    Slot& slot = slots_[cell % kSlots];
+  Slot& of(std::uint32_t cell) {
+    // Multiplied (Knuth 1998, 6.4), so that cells whose numbers differ by a power of two do not drive each other out.
+    Slot& slot = slots_[(cell * 2654435761U) >> (32 - kSlotBits)];
     if (!slot.held || slot.cell != cell) {
       mesh_.cell_into(cell, slot.polygon);
-      convex_parts(slot.polygon, slot.parts);
+      find_sides(slot.polygon, slot.parts);
       slot.cell = cell;
       slot.held = true;
     }
@@ -34,23 +35,17 @@ class PartsStore {
   }
 
  private:
-  static constexpr std::size_t kSlots = 2048;
+  static constexpr unsigned kSlotBits = 13;
   const mesh::Mesh& mesh_;
   std::vector<Slot> slots_;
 };
-
-bool within(const std::vector<sphere::Circle>& sides, const Outline& outline) {
-  return !sides.empty() && std::all_of(sides.begin(), sides.end(), [&](const sphere::Circle& side) {
-    return side_of_region(side, outline) == Side::inside;
-  });
-}
 
 class CellOverlap {
  public:
   CellOverlap(const mesh::Mesh& clip, const mesh::Index& index, const mesh::Mesh& cells, const MomentFrame& frame)
       : clip_(clip), index_(index), cells_(cells), moments_(frame.source != nullptr), parts_(clip), found_(frame) {}
 
-  void add(std::size_t row, Rows& rows) {
+  void add_row(std::size_t row, Rows& rows) {
     if (hinted_ && !moments_ && inside_hint(row)) {
       rows.count.push_back(1);
       rows.pairings.push_back({hint_, cells_.area(row)});
@@ -80,56 +75,42 @@ class CellOverlap {
     if (!hull) return false;
     outline_.points.assign(hull->corner.begin(), hull->corner.end());
     outline_.margin = hull->margin;
-    return within(parts_.of(hint_).parts.core, outline_);
+    return place(parts_.of(hint_).parts.core, outline_) == Side::inside;
   }
 
   void add_piece(const Piece& piece, double whole, std::size_t row) {
     outline_of(piece, outline_);
     own_known_ = false;
     for (const std::uint32_t cell : candidates_) {
-      const PartsStore::Slot& clip_cell = parts_.of(cell);
-      if (within(clip_cell.parts.core, outline_)) {
+      PartsStore::Slot& other = parts_.of(cell);
+      const Side where = other.parts.core.empty() ? Side::across : place(other.parts.core, outline_);
+      if (where == Side::inside) {
         found_.add(piece, whole == 0 ? signed_area(piece) : whole, row, cell);
         hinted_ = true;
         hint_ = cell;
-      } else if (clip_cell.parts.used > 1 && convex(piece)) {
-        add_turned(clip_cell.polygon, row, cell);
+      } else if (other.parts.convex) {
+        if (where == Side::across) add(cut(piece), row, cell, 1);
+      } else if (convex(piece)) {
+        add_turned(other.polygon, row, cell);
       } else {
-        for (std::size_t k = 0; k < clip_cell.parts.used; ++k) {
-          const ConvexPart& part = clip_cell.parts.parts[k];
-          const Piece* left = common(piece, outline_, part);
-          if (left != nullptr) found_.add(*left, signed_area(*left), row, cell, part.sign);
-        }
+        add_apart(piece, other, row, cell);
       }
     }
   }
 
-  bool convex(const Piece& piece) {
-    if (!own_known_) {
-      own_polygon_.pieces.assign(1, piece);
-      convex_parts(own_polygon_, own_);
-      own_known_ = true;
-    }
-    return own_.used == 1;
-  }
-
-  // The other way round: a cell that would have to be taken apart is cut by the sides of the piece, which is convex.
-  void add_turned(const sphere::Polygon& polygon, std::size_t row, std::uint32_t cell) {
-    for (const Piece& part : polygon.pieces) {
-      outline_of(part, other_outline_);
-      const Piece* left = common(part, other_outline_, own_.parts.front());
-      if (left != nullptr) found_.add(*left, signed_area(*left), row, cell);
-    }
-  }
-
-  // The part of the piece within all half-spaces: itself when nothing is cut, null when nothing is left.
-  const Piece* common(const Piece& piece, const Outline& outline, const ConvexPart& part) {
+  // Where the outlined region is with respect to the common part of the half-spaces; `across_` holds what cuts it.
+  Side place(const std::vector<sphere::Circle>& sides, const Outline& outline) {
     across_.clear();
-    for (const sphere::Circle& side : part.sides) {
+    for (const sphere::Circle& side : sides) {
       const Side where = side_of_region(side, outline);
-      if (where == Side::outside) return nullptr;
+      if (where == Side::outside) return where;
       if (where == Side::across) across_.push_back(&side);
     }
+    return across_.empty() ? Side::inside : Side::across;
+  }
+
+  // The part of the piece within all half-spaces of `across_`; null when nothing is left.
+  const Piece* cut(const Piece& piece) {
     const Piece* left = &piece;
     Piece* into = &one_;
     for (const sphere::Circle* side : across_) {
@@ -139,6 +120,35 @@ class CellOverlap {
       into = into == &one_ ? &other_ : &one_;
     }
     return left;
+  }
+
+  void add(const Piece* part, std::size_t row, std::uint32_t cell, double sign) {
+    if (part != nullptr) found_.add(*part, signed_area(*part), row, cell, sign);
+  }
+
+  bool convex(const Piece& piece) {
+    if (!own_known_) {
+      own_polygon_.pieces.assign(1, piece);
+      find_sides(own_polygon_, own_);
+      own_known_ = true;
+    }
+    return own_.convex;
+  }
+
+  // The other way round: a cell that would have to be taken apart is cut by the sides of the piece, which is convex.
+  void add_turned(const sphere::Polygon& polygon, std::size_t row, std::uint32_t cell) {
+    for (const Piece& part : polygon.pieces) {
+      outline_of(part, other_outline_);
+      if (place(own_.core, other_outline_) != Side::outside) add(cut(part), row, cell, 1);
+    }
+  }
+
+  void add_apart(const Piece& piece, PartsStore::Slot& other, std::size_t row, std::uint32_t cell) {
+    if (other.parts.used == 0) take_apart(other.polygon, other.parts);
+    for (std::size_t k = 0; k < other.parts.used; ++k) {
+      const ConvexPart& part = other.parts.parts[k];
+      if (place(part.sides, outline_) != Side::outside) add(cut(piece), row, cell, part.sign);
+    }
   }
 
   const mesh::Mesh& clip_;
@@ -163,7 +173,7 @@ Rows over_cells(const mesh::Mesh& clip, const mesh::Index& index, const mesh::Me
                 std::size_t first, std::size_t last) {
   Rows rows;
   CellOverlap overlap(clip, index, cells, frame);
-  for (std::size_t row = first; row < last; ++row) overlap.add(row, rows);
+  for (std::size_t row = first; row < last; ++row) overlap.add_row(row, rows);
   return rows;
 }
 

@@ -16,16 +16,19 @@
 namespace windrow::overlap {
 namespace {
 
-constexpr std::size_t kRun = 2048;  // cells a task; results do not depend on it
+// Cells a task; results do not depend on it. Long runs meet the same cells of the other mesh again, but every thread
+// wants some.
+std::size_t run_of(std::size_t cells) { return std::clamp<std::size_t>(cells / 64, 64, 16384); }
 
 template <typename RowsOf>
 std::vector<Rows> all_rows(std::size_t cells, const RowsOf& rows_of) {
-  std::vector<Rows> blocks((cells + kRun - 1) / kRun);
+  const std::size_t run = run_of(cells);
+  std::vector<Rows> blocks((cells + run - 1) / run);
   std::vector<std::exception_ptr> failures(blocks.size());
 #pragma omp parallel for schedule(dynamic)
   for (std::size_t b = 0; b < blocks.size(); ++b) {
     try {
-      blocks[b] = rows_of(b * kRun, std::min(cells, (b + 1) * kRun));
+      blocks[b] = rows_of(b * run, std::min(cells, (b + 1) * run));
     } catch (...) {
       failures[b] = std::current_exception();
     }
