@@ -199,7 +199,8 @@ Summary Runner::run() {
     write_make_deps(session_.options.make_deps, all, session_.job.path);
   }
   if (wanted) {
-    (void)session_.target();  // without its mesh nothing of the job can be made
+    // Without its mesh nothing of the job can be made.
+    for (const auto& notice : session_.target().notices) notices_.add(notice.place, notice.text);
     os::make_folder(session_.job.workspace);
     const os::Lease lease(session_.job.workspace, session_.options.wait_s);
     session_.digests().save();
