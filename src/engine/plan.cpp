@@ -74,7 +74,11 @@ Report plan(const std::string& job_file, const Options& options) {
   Totals totals;
   Fact& mesh = root.add(Fact("mesh"));
   mesh.add({"cells", fmt::format("{}; {}", session.target().mesh->describe(), session.job.mesh.name)});
-  mesh.add({"crs", session.target().crs.name});
+  const geo::Crs& crs = session.target().crs;
+  mesh.add({"crs", crs.name == "unknown" ? crs.grid_mapping.name : crs.name});
+  for (const auto& notice : session.target().notices) {
+    mesh.add({"note", fmt::format("{}: {}", told_path(notice.place, session.folder()), notice.text)});
+  }
   for (std::size_t field = 0; field < session.job.fields.size(); ++field) {
     for (std::size_t run = 0; run < session.job.runs.size(); ++run) {
       Fact& fact = root.add(Fact(fmt::format("{} of {}", session.job.fields[field].name, session.job.runs[run].name)));
