@@ -40,12 +40,17 @@ inline Grid with_means(mesh::MeshPtr mesh, std::vector<Integral> integral) {
 }
 
 /// 2 rows columns; `shift` turns the columns by a part of their width.
-inline Grid latlon_grid(int rows, double shift) {
+inline mesh::MeshPtr latlon_mesh(int rows, double shift) {
   std::vector<double> lon, lat;
   const double step = 180.0 / rows;
   for (int k = 0; k <= 2 * rows; ++k) lon.push_back((k + shift) * step);
   for (int k = 0; k <= rows; ++k) lat.push_back(k == rows ? 90 : -90 + k * step);
-  return with_means(mesh::make_latlon({lon, lat}, {}, "lat-lon"), usual_quadrature().latlon(lon, lat));
+  return mesh::make_latlon({lon, lat}, {}, "lat-lon");
+}
+inline Grid latlon_grid(int rows, double shift) {
+  mesh::MeshPtr mesh = latlon_mesh(rows, shift);
+  const mesh::LatLonEdges edges = *mesh->latlon();
+  return with_means(std::move(mesh), usual_quadrature().latlon(edges.lon_deg, edges.lat_deg));
 }
 
 inline Grid healpix_grid(int level) {
@@ -117,6 +122,14 @@ inline Ranges ranges_near(const linear_map::LinearMap& plain, const overlap::Nei
   return out;
 }
 
+inline double most_beyond(const Ranges& ranges, const std::vector<double>& result) {
+  double most = 0;
+  for (std::size_t row = 0; row < result.size(); ++row) {
+    most = std::max({most, ranges.lowest[row] - result[row], result[row] - ranges.highest[row]});
+  }
+  return most;
+}
+
 struct Measured {
   double l1 = 0, l2 = 0, most = 0;  ///< L1, L2, L infinity of the error, each relative to that of the exact means
   double under = 0, over = 0;       ///< Lmin, Lmax: beyond the source's extremes, relative to the exact means' range
@@ -141,8 +154,8 @@ inline Measured measured(const std::vector<double>& result, const std::vector<do
     largest = std::max(largest, f);
     out.under = std::max(out.under, *low - result[row]);
     out.over = std::max(out.over, result[row] - *high);
-    out.beyond_near = std::max({out.beyond_near, ranges.lowest[row] - result[row], result[row] - ranges.highest[row]});
   }
+  out.beyond_near = most_beyond(ranges, result);
   for (std::size_t k = 0; k < source.size(); ++k) before.add(plain.column_area[k] * source[k]);
   out.l1 = e1.value() / f1.value();
   out.l2 = std::sqrt(e2.value() / f2.value());
