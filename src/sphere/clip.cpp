@@ -2,6 +2,7 @@
 #include "windrow/sphere/clip.h"
 
 #include <algorithm>
+#include <array>
 #include <numbers>
 
 namespace windrow::sphere {
@@ -331,9 +332,54 @@ void add_whole_circle(const Piece& piece, const Circle& half_space, Piece& out) 
   rim.add_arcs(start, start, 2 * kPi, out.loops.back());
 }
 
+// The plain case, most by far: one loop that leaves the half-space once and comes back once, with no vertex near the
+// clip circle and no edge that might dip through it. Returns false, with `out` in any state, when it is not that plain.
+bool clip_plainly(const Piece& piece, const Circle& half_space, Piece& out) {
+  constexpr std::size_t kMost = 12;
+  if (piece.loops.size() != 1 || piece.loops.front().size() > kMost) return false;
+  const Loop& loop = piece.loops.front();
+  const std::size_t n = loop.size();
+  std::array<double, kMost> h;
+  for (std::size_t k = 0; k < n; ++k) {
+    h[k] = height(half_space, loop[k].from);
+    if (std::abs(h[k]) <= kOnCircle * half_space.radius) return false;
+  }
+  std::size_t entry = n, exit = n;
+  for (std::size_t k = 0; k < n; ++k) {
+    const double from = h[k], to = h[k + 1 == n ? 0 : k + 1];
+    if ((from > 0) != (to > 0)) {
+      std::size_t& crossing = from > 0 ? exit : entry;
+      if (crossing != n) return false;
+      crossing = k;
+    } else if (std::min(std::abs(from), std::abs(to)) <= loop[k].circle.radius * loop[k].dtheta * loop[k].dtheta / 8) {
+      return false;
+    }
+  }
+  if (entry == n) return false;
+  const auto meet = [&](const Arc& arc) {
+    return crossings(arc.dtheta > 0 ? arc.circle : arc.circle.reversed(), half_space);
+  };
+  const Arc &in = loop[entry], &last = loop[exit];
+  const Vec3 enters = within(in, meet(in).entering), leaves = within(last, meet(last).leaving);
+  const Vec3 a = leaves - half_space.d * half_space.n, b = enters - half_space.d * half_space.n;
+  const double chord = norm(enters - leaves);
+  if (!(chord > 64 * kOnCircle) || dot(half_space.n, cross(a, b)) <= 0 || dot(a, b) <= 0) return false;
+  out.loops.resize(1);
+  Loop& result = out.loops.front();
+  result.clear();
+  const double first = part_angle(in.circle, enters, in.to, in.dtheta);
+  if (first != 0) result.push_back({enters, in.to, in.circle, first});
+  for (std::size_t k = entry + 1 == n ? 0 : entry + 1; k != exit; k = k + 1 == n ? 0 : k + 1) result.push_back(loop[k]);
+  const double rest = part_angle(last.circle, last.from, leaves, last.dtheta);
+  if (rest != 0) result.push_back({last.from, leaves, last.circle, rest});
+  result.push_back({leaves, enters, half_space, 2 * std::asin(std::min(1.0, 0.5 * chord / half_space.radius))});
+  return true;
+}
+
 }  // namespace
 
 void clip(const Piece& piece, const Circle& half_space, Piece& out) {
+  if (clip_plainly(piece, half_space, out)) return;
   thread_local Scratch s;
   s.kept.clear();
   s.chains.clear();
