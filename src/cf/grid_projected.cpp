@@ -23,7 +23,7 @@ std::string axis_units_of(const Context& context, const nc::Var& x, const nc::Va
         fmt::format("axes '{}' and '{}' have no units; add grid = {{ axis_units = \"m\" }} (or \"km\", "
                     "\"radian\") to the [[run]]",
                     x.name, y.name));
-  if (const std::string plain = plain_axis_units(units); !plain.empty()) return plain;
+  if (std::string plain = plain_axis_units(units); !plain.empty()) return plain;
   try {
     const units::Affine affine = units::conversion(units, "m", "", context.header().path).affine;
     if (affine.offset == 0 && affine.scale > 0) {

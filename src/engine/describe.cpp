@@ -23,7 +23,11 @@ constexpr const char* kTimeUnits = "days since 1850-01-01 00:00:00";
 class Describer {
  public:
   Describer(const StageContext& context, const Product& product, const pipeline::TileStats& stats)
-      : context_(context), product_(product), stats_(stats), target_(context.target), mesh_(describe_mesh(context.target)) {}
+      : context_(context),
+        product_(product),
+        stats_(stats),
+        target_(context.target),
+        mesh_(describe_mesh(context.target)) {}
 
   cf::ProductFile describe(const report::Balance& balance);
 
@@ -65,8 +69,12 @@ void Describer::add_time() {
     bounds.insert(bounds.end(), {units.encode(step.begin), units.encode(step.end)});
   }
   add("time", Type::float64, {"time"}, std::move(time),
-      {{"standard_name", "time"}, {"long_name", "time"}, {"axis", "T"}, {"units", kTimeUnits},
-       {"calendar", variable.calendar().cf_name()}, {"bounds", "time_bnds"}});
+      {{"standard_name", "time"},
+       {"long_name", "time"},
+       {"axis", "T"},
+       {"units", kTimeUnits},
+       {"calendar", variable.calendar().cf_name()},
+       {"bounds", "time_bnds"}});
   add("time_bnds", Type::float64, {"time", "bnds"}, std::move(bounds), {});
 }
 
@@ -80,7 +88,8 @@ void Describer::add_height() {
        {"standard_name", "surface_altitude"},
        {"long_name", "mean height of the mesh cell, to which values were brought"},
        {"units", "m"},
-       {"grid_mapping", "crs"}}, true);
+       {"grid_mapping", "crs"}},
+      true);
 }
 
 std::vector<NamedValue> cover_attributes() {
@@ -102,10 +111,12 @@ void Describer::add_status() {
        {"flag_masks", std::vector<std::int8_t>{pipeline::kAdjusted, pipeline::kFilled, pipeline::kTooLittleCover,
                                                pipeline::kTooLittleLand, pipeline::kBeyondReach, pipeline::kAllSurface,
                                                pipeline::kBeyondRange}},
-       {"flag_meanings", "adjusted_to_stations filled_from_nearest_source_cell too_little_cover_at_some_time "
-                         "too_little_land beyond_reach_of_stations all_surface_value_without_land "
-                         "some_values_beyond_calibrated_range"},
-       {"units", "1"}}, true);
+       {"flag_meanings",
+        "adjusted_to_stations filled_from_nearest_source_cell too_little_cover_at_some_time "
+        "too_little_land beyond_reach_of_stations all_surface_value_without_land "
+        "some_values_beyond_calibrated_range"},
+       {"units", "1"}},
+      true);
 }
 
 void Describer::add_quantization() {
@@ -124,8 +135,9 @@ std::string Describer::comment() const {
     }
     if (!job.stations.day_note.empty()) text += job.stations.day_note + ". ";
     if (context_.calibration->period_mismatch) {
-      text += "The years of stations and model do not match: the climate change between them is part of the "
-              "correction. ";
+      text +=
+          "The years of stations and model do not match: the climate change between them is part of the "
+          "correction. ";
     }
   }
   if (!context_.conversion.note.empty()) text += context_.conversion.note + ". ";
@@ -139,7 +151,8 @@ std::string Describer::method_words() const {
   return target_.mesh->has_area() || sampled ? name_of(method) : "value of the cell that contains the town";
 }
 
-/// What a value stands for on the mesh: a mean or sum over the cell, its commonest category, or the value at its centre.
+/// What a value stands for on the mesh: a mean or sum over the cell, its commonest category, or the value at its
+/// centre.
 std::string cell_methods_of(const std::string& source, const std::string& area) {
   if (source.find("area:") != std::string::npos) return source;
   return source.empty() ? area : source + " " + area;
@@ -151,8 +164,8 @@ std::string Describer::standard_name() const {
   std::string name = context_.conversion.standard_name;
   if (field.pair == job::Pair::none) return name;
   const bool first = field.pair == job::Pair::eastward;
-  const std::string wanted = field.axes == job::VectorAxes::mesh ? (first ? "x_" : "y_")
-                                                                 : (first ? "eastward_" : "northward_");
+  const std::string wanted =
+      field.axes == job::VectorAxes::mesh ? (first ? "x_" : "y_") : (first ? "eastward_" : "northward_");
   for (const char* old : {"grid_eastward_", "grid_northward_", "eastward_", "northward_", "x_", "y_"}) {
     const auto at = name.find(old);
     if (at != 0 && (at == std::string::npos || name[at - 1] != '_')) continue;
@@ -215,13 +228,34 @@ void Describer::add_data() {
   }
 }
 
-/// What the source says about itself and still holds for the product. Left out: identifiers and dates of the source file.
+/// What the source says about itself and still holds for the product. Left out: identifiers and dates of the source
+/// file.
 const std::set<std::string>& kept_globals() {
-  static const std::set<std::string> kNames = {
-      "institution", "institute_id", "institution_id", "model_id", "source_id", "experiment", "experiment_id",
-      "forcing", "realization", "initialization_method", "physics_version", "variant_label", "activity_id",
-      "parent_experiment", "parent_experiment_id", "parent_experiment_rip", "branch_time", "project_id", "frequency",
-      "modeling_realm", "realm", "references", "license", "driving_model_id", "driving_experiment"};
+  static const std::set<std::string> kNames = {"institution",
+                                               "institute_id",
+                                               "institution_id",
+                                               "model_id",
+                                               "source_id",
+                                               "experiment",
+                                               "experiment_id",
+                                               "forcing",
+                                               "realization",
+                                               "initialization_method",
+                                               "physics_version",
+                                               "variant_label",
+                                               "activity_id",
+                                               "parent_experiment",
+                                               "parent_experiment_id",
+                                               "parent_experiment_rip",
+                                               "branch_time",
+                                               "project_id",
+                                               "frequency",
+                                               "modeling_realm",
+                                               "realm",
+                                               "references",
+                                               "license",
+                                               "driving_model_id",
+                                               "driving_experiment"};
   return kNames;
 }
 
@@ -241,8 +275,9 @@ void Describer::add_globals(const report::Balance& balance) {
   auto& out = file_.global;
   set(out, "Conventions", mesh_.conventions);
   for (const auto& [name, value] : mesh_.global) set(out, name, value);
-  set(out, "title", job.title.empty() ? fmt::format("{} of {} on {}", job.fields[context_.field].name, run.name,
-                                                    job.mesh.name) : job.title);
+  set(out, "title",
+      job.title.empty() ? fmt::format("{} of {} on {}", job.fields[context_.field].name, run.name, job.mesh.name)
+                        : job.title);
   std::string source_history, source_source;
   for (const auto& attribute : context_.source.variable->info().global_attributes) {
     if (attribute.name == "history") source_history = attribute.text;
@@ -256,12 +291,14 @@ void Describer::add_globals(const report::Balance& balance) {
   }
   const bool adjusted = context_.calibration != nullptr;
   const std::string method = method_words();
-  set(out, "source", fmt::format("{}, {}{}", source_source.empty() ? "model output" : source_source,
-                                 context_.regridding.keeps_integrals ? "regridded conservatively" : "regridded by " + method,
-                                 adjusted ? " and adjusted to stations" : ""));
-  set(out, "history", fmt::format("{}{} windrow {}: {}", source_history.empty() ? "" : source_history + "\n",
-                                  newest_input_date(product_), WINDROW_VERSION,
-                                  fmt::format("regridding ({}){}", method, adjusted ? ", adjustment" : "")));
+  set(out, "source",
+      fmt::format("{}, {}{}", source_source.empty() ? "model output" : source_source,
+                  context_.regridding.keeps_integrals ? "regridded conservatively" : "regridded by " + method,
+                  adjusted ? " and adjusted to stations" : ""));
+  set(out, "history",
+      fmt::format("{}{} windrow {}: {}", source_history.empty() ? "" : source_history + "\n",
+                  newest_input_date(product_), WINDROW_VERSION,
+                  fmt::format("regridding ({}){}", method, adjusted ? ", adjustment" : "")));
   set(out, "run", run.name);
   set(out, "family", run.family);
   if (!run.forcing.empty()) set(out, "run_forcing", run.forcing);
@@ -274,15 +311,14 @@ void Describer::add_globals(const report::Balance& balance) {
   set(out, "windrow_balance_largest_relative_residual", balance.all.relative);
   if (adjusted) {
     const auto& spec = job.fields[context_.field].adjust;
-    const char* method = context_.calibration->setup.method == adjust::Method::mean_shift   ? "mean-shift"
-                         : context_.calibration->setup.method == adjust::Method::mean_ratio ? "mean-ratio"
-                                                                                            : "quantile-mapping";
-    set(out, "windrow_adjustment", fmt::format("{}, calibrated on run {}, {} stations{}", method,
-                                               job.runs[context_.session.anchor_of(context_.run)].name,
-                                               context_.calibration->level_stations,
-                                               spec.accept_period_mismatch && context_.calibration->period_mismatch
-                                                   ? ", period mismatch accepted"
-                                                   : ""));
+    const char* transfer = context_.calibration->setup.method == adjust::Method::mean_shift   ? "mean-shift"
+                           : context_.calibration->setup.method == adjust::Method::mean_ratio ? "mean-ratio"
+                                                                                              : "quantile-mapping";
+    set(out, "windrow_adjustment",
+        fmt::format(
+            "{}, calibrated on run {}, {} stations{}", transfer,
+            job.runs[context_.session.anchor_of(context_.run)].name, context_.calibration->level_stations,
+            spec.accept_period_mismatch && context_.calibration->period_mismatch ? ", period mismatch accepted" : ""));
   }
   std::string cautions;
   for (const auto& text : report::cautions()) cautions += (cautions.empty() ? "" : " ") + text;

@@ -67,7 +67,7 @@ void VectorReader::read(const std::vector<std::uint32_t>& columns, std::size_t t
   const auto cells = static_cast<std::uint32_t>(axes_.first.size());
   const auto increments = static_cast<std::uint32_t>(scalar_ == nullptr ? 0 : scalar_->columns() - cells);
   const auto split = [&](std::uint32_t c) {
-    if (c < 3 * cells) return std::pair(c / cells, c % cells);
+    if (c < 3 * cells || increments == 0) return std::pair(c / cells, c % cells);
     return std::pair((c - 3 * cells) / increments, cells + (c - 3 * cells) % increments);
   };
   constexpr double sphere::Vec3::*kParts[3] = {&sphere::Vec3::x, &sphere::Vec3::y, &sphere::Vec3::z};

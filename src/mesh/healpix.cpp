@@ -21,7 +21,7 @@ using healpix::Place;
 using healpix::Side;
 using sphere::Vec3;
 
-constexpr double kSideTolerance = 1e-8;  // of a cell: how far an arc may stray from a side whose area it keeps
+constexpr double kSideTolerance = 1e-6;  // of a cell: area between a side and its arcs, whose sum keeps the side's own
 constexpr double kOnEdge = 2e-14;        // rad: degrees that became radians are off by less
 constexpr std::size_t kBlock = 1 << 16;  // sides bent at a time
 

@@ -31,8 +31,22 @@ double lens(const Vec3& a, const Vec3& m, const Vec3& b) {
   return sphere::lens_area(arc.circle, arc.dtheta);
 }
 
+// Area between the arc through a, m, b and the arcs through its halves, where those lie on either side of it: a line
+// that bends like an S hides nothing.
+double strayed(const Vec3& a, const Vec3& first, const Vec3& m, const Vec3& second, const Vec3& b) {
+  const sphere::Arc arc = arc_through(a, b, tilt_through(a, m, b));
+  const auto half = [&](const Vec3& from, const Vec3& middle, const Vec3& to) {
+    const double length = norm(to - from);
+    if (length <= sphere::kOnCircle) return 0.0;
+    const double dtheta = 2 * std::asin(std::min(1.0, 0.5 * length / arc.circle.radius));
+    return std::abs(sphere::lens_area(arc.circle, std::copysign(dtheta, arc.dtheta)) - lens(from, middle, to));
+  };
+  return half(a, first, m) + half(m, second, b);
+}
+
 // `now`: inner points of the line at one level; `finer`: at the next. The area between them, part by part.
-double missed_area(const OpenLine& line, const std::vector<Vec3>& now, const std::vector<Vec3>& finer) {
+double missed_area(const OpenLine& line, const std::vector<Vec3>& now, const std::vector<Vec3>& finer,
+                   bool halves_apart) {
   const auto point = [&](const std::vector<Vec3>& inner, std::size_t k) -> const Vec3& {
     return k == 0 ? line.from : k == inner.size() + 1 ? line.to : inner[k - 1];
   };
@@ -40,6 +54,10 @@ double missed_area(const OpenLine& line, const std::vector<Vec3>& now, const std
   for (std::size_t k = 0; k + 2 <= now.size() + 1; k += 2) {
     const Vec3 &a = point(now, k), &m = point(now, k + 1), &b = point(now, k + 2);
     if (!(norm(b - a) < kLongestChord)) return std::numeric_limits<double>::infinity();
+    if (halves_apart) {
+      sum += strayed(a, point(finer, 2 * k + 1), m, point(finer, 2 * k + 3), b);
+      continue;
+    }
     const double halves = lens(a, point(finer, 2 * k + 1), m) + lens(m, point(finer, 2 * k + 3), b);
     sum += std::abs(lens(a, m, b) - halves - sphere::triangle_area(a, m, b));
   }
@@ -85,7 +103,7 @@ std::vector<OpenLine> split_batch(std::vector<OpenLine> open, const PlacePoints&
       const std::vector<Vec3> finer(first, first + static_cast<std::ptrdiff_t>(next));
       std::vector<Vec3> now = every_second(finer);
       const OpenLine& line = open[k];
-      const double area = missed_area(line, now, finer);
+      const double area = missed_area(line, now, finer, rule.match_area);
       // A smooth line misses ever less; where halving does not help, only the projection's own rounding is left, which
       // on cells of some metres exceeds the criterion. The level before is as good then.
       const bool noise = area > 0.5 * line.missed && area <= kNoise * norm(line.to - line.from);

@@ -324,6 +324,13 @@ void add_whole_circle(const Piece& piece, const Circle& half_space, Piece& out) 
   if (piece.loops.empty()) return;
   const bool all = out.loops.size() == piece.loops.size(), none = out.loops.empty();
   if ((all && half_space.d >= 0) || (none && half_space.d <= 0)) return;  // the other side is no less than a hemisphere
+  // A boundary around the circle is no shorter than the circle, within a hemisphere: cells far smaller than the circle
+  // are not asked where a point is that rounding could misplace.
+  double length = 0;
+  for (const Loop& loop : piece.loops) {
+    for (const Arc& arc : loop) length += arc.length();
+  }
+  if (length < 2 * kPi * half_space.radius * (1 - 1e-9)) return;
   const Rim rim(half_space);
   const Vec3 probe = all ? -half_space.n : none ? half_space.n : rim.at(0);
   if (!contains(piece, probe)) return;

@@ -29,13 +29,13 @@ Neighbours neighbours(const mesh::Mesh& mesh);
 std::unique_ptr<linear_map::Extension> make_gradient(const mesh::Mesh& source, linear_map::Quantity quantity,
                                                      bool limited);
 
-/// Mass-preserving smooth interpolation (Tobler 1979, JASA 74, 519): `sweeps` sweeps of neighbour means over the mesh,
+/// Mass-preserving smooth interpolation (Tobler 1979, JASA 74, 519): some sweeps of neighbour means over the mesh,
 /// then every source cell's integral over its part of the mesh is restored (to 1e-10 relative; Error(defect) when that
 /// does not converge), by the least change of the mesh values, over the connected region where mesh cells straddle
 /// borders; with `non_negative` under the condition that no value is below zero (a source cell that is not above zero
 /// gives zero). A source cell without a mesh cell to itself (a sliver at the rim, cells finer than the mesh's) is
 /// restored together with the one it shares most area with: by itself it could not always be. Columns: [values |
-/// multipliers].
+/// multipliers]. With `non_negative` the map is to be applied with linear_map::Weights::not_below = 0.
 struct Smooth {
   linear_map::LinearMap map;
   Closure closure;
