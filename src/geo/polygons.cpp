@@ -127,7 +127,7 @@ int id_column(OGRLayerH layer, const std::string& id, const Source& source) {
 std::string id_of(OGRFeatureH feature, int column, std::size_t number, const Source& source) {
   if (column < 0) return std::to_string(number);
   const bool given = OGR_F_IsFieldSetAndNotNull(feature, column) != 0;
-  const std::string id = given ? text::trimmed(OGR_F_GetFieldAsString(feature, column)) : "";
+  std::string id = given ? text::trimmed(OGR_F_GetFieldAsString(feature, column)) : "";
   if (id.empty()) source.fail(number, "has no id; expected one in every feature, or another column");
   if (!CPLIsUTF8(id.c_str(), static_cast<int>(id.size()))) source.fail(number, "has an id that is no UTF-8 text");
   return id;
