@@ -148,7 +148,8 @@ TEST_CASE("units of the axes scale coordinates and nothing else") {
   const auto [x, y] = projected(geo::crs_from_mapping(kConic, "m", "t"), 12, 50);
   for (const auto& [units, metres] : {std::pair{"km", 1000.0}, std::pair{"US_survey_foot", kUsFoot_m},
                                       std::pair{"metres", 1.0}, std::pair{"100 km", 1e5}}) {
-    CAPTURE(units);
+    const auto& told = units;  // a lambda cannot capture a binding
+    CAPTURE(told);
     const auto [u, v] = projected(geo::crs_from_mapping(kConic, units, "t"), 12, 50);
     CHECK(u * metres == doctest::Approx(x).epsilon(1e-14));
     CHECK(v * metres == doctest::Approx(y).epsilon(1e-14));
@@ -172,7 +173,8 @@ TEST_CASE("a CRS given as text takes coordinates in the units of the file") {
   const auto [x, y] = projected(geo::make_crs("EPSG:3035", "t"), 12, 50);
   for (const auto& [units, metres] :
        {std::pair{"m", 1.0}, std::pair{"km", 1000.0}, std::pair{"US_survey_foot", kUsFoot_m}}) {
-    CAPTURE(units);
+    const auto& told = units;  // a lambda cannot capture a binding
+    CAPTURE(told);
     const geo::Crs crs = geo::crs_with_units("EPSG:3035", units, "t");
     const auto [u, v] = projected(crs, 12, 50);
     CHECK(u * metres == doctest::Approx(x).epsilon(1e-14));
@@ -256,10 +258,10 @@ TEST_CASE("longitudes count from the mapping's own prime meridian") {
 
 TEST_CASE("crs_wkt serves where single attributes do not, and must agree where they do") {
   const std::string wkt = geo::crs_from_mapping(kConic, "m", "t").wkt;
-  const auto [x, y] = projected(geo::crs_from_mapping(kConic, "km", "t"), 12, 50);
+  const auto at = projected(geo::crs_from_mapping(kConic, "km", "t"), 12, 50);
   const auto same = [&](const geo::GridMapping& m) {
     const auto [u, v] = projected(geo::crs_from_mapping(m, "km", "t"), 12, 50);
-    return std::hypot(u - x, v - y) < 1e-9;
+    return std::hypot(u - at.first, v - at.second) < 1e-9;
   };
   CHECK(same(with(kConic, "crs_wkt", wkt)));
   CHECK(same(mapping("", {{"crs_wkt", wkt}})));

@@ -116,7 +116,8 @@ TEST_CASE("parts and holes of a feature are read in every format alike") {
   const Folder folder;
   for (const auto& [driver, name] :
        {std::pair{"GPKG", "b.gpkg"}, std::pair{"ESRI Shapefile", "basins.shp"}, std::pair{"FlatGeobuf", "b.fgb"}}) {
-    CAPTURE(driver);
+    const auto& told = driver;  // a lambda cannot capture a binding
+    CAPTURE(told);
     const std::string path = make(folder, driver, name, {kBasins});
     CHECK(geo::looks_like_vector(path));
     const geo::PolygonLayer layer = geo::read_polygons(path, "", "code", "t");
@@ -245,7 +246,8 @@ TEST_CASE("files that are no local vector file are refused, whatever else they m
            {"v.vrt", "<OGRVRTDataSource></OGRVRTDataSource>"},
            {"k.kml", "<kml xmlns=\"http://www.opengis.net/kml/2.2\"></kml>"},
            {"e.geojson", "{}"}}) {
-    CAPTURE(name);
+    const auto& told = name;  // a lambda cannot capture a binding
+    CAPTURE(told);
     const std::string path = folder.write(name, bytes);
     CHECK_FALSE(geo::looks_like_vector(path));
     CHECK(refusal(path, Failure::data)
@@ -279,7 +281,8 @@ TEST_CASE("a vector file damaged or cut at any byte is read or refused, never mo
   std::filesystem::copy_file(folder.path / "whole.shx", folder.path / "cut.shx");
   for (const auto& [name, whole] : std::vector<std::pair<std::string, std::string>>{
            {"cut.geojson", text}, {"cut.fgb", bytes}, {"cut.shp", shapes}}) {
-    CAPTURE(name);
+    const auto& told = name;  // a lambda cannot capture a binding
+    CAPTURE(told);
     REQUIRE(whole.size() > 100);
     for (std::size_t i = 0; i < whole.size(); ++i) {
       std::string damaged = whole;

@@ -284,7 +284,8 @@ TEST_CASE("every regridding method is read, and totals go with those that conser
                                                             {"nearest", Method::nearest},
                                                             {"majority", Method::majority}};
   for (const auto& [word, method] : methods) {
-    CAPTURE(word);
+    const auto& told = word;  // a lambda cannot capture a binding
+    CAPTURE(told);
     CHECK(field("method = \"" + word + "\"\n").method == method);
     if (word.starts_with("conservative")) CHECK(field("quantity = \"total\"\nmethod = \"" + word + "\"\n").total);
   }

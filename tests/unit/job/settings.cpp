@@ -222,7 +222,8 @@ TEST_CASE("the job files to start from are right ones, and stay right with all t
   const std::vector<std::pair<std::string, MeshKind>> kinds{
       {"grid", MeshKind::latlon}, {"catchments", MeshKind::catchments}, {"towns", MeshKind::towns}};
   for (const auto& [kind, mesh] : kinds) {
-    CAPTURE(kind);
+    const auto& told = kind;  // a lambda cannot capture a binding
+    CAPTURE(told);
     const JobSpec job = parse_job("/proj/job.toml", template_text(kind), {});
     CHECK(job.fields[0].variable == "tas");
     CHECK(job.mesh.kind == mesh);

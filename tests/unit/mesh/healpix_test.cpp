@@ -281,7 +281,7 @@ TEST_CASE("a point on HEALPix edges belongs to the lowest-numbered of the cells 
     }
   }
   for (const auto& [at, cell] : lowest) {
-    const auto [x, y, z] = at;
+    const double x = std::get<0>(at), y = std::get<1>(at), z = std::get<2>(at);
     const GeoPoint p{Angle::radians(std::atan2(y, x)), Angle::radians(std::atan2(z, std::hypot(x, y)))};
     CAPTURE(x);
     CAPTURE(y);
