@@ -10,6 +10,7 @@
 #include "windrow/base/exact_sum.h"
 #include "windrow/linear_map/kernel.h"
 #include "windrow/overlap/methods.h"
+#include "windrow/sphere/area.h"
 
 using namespace windrow;
 using namespace windrow::test;
@@ -201,4 +202,29 @@ TEST_CASE("cells of every kind of global mesh add up to 4 pi") {
     CAPTURE(kind.name);
     CHECK(relative(total_area(*kind.mesh), 4 * std::numbers::pi) < 1e-12);
   }
+}
+
+TEST_CASE("a grid with two northern poles covers what its outermost sides enclose, no cell twice") {
+  const mesh::MeshPtr m = folded(24, 80);
+  // Arcs that no other cell runs through the other way bound the grid; chained up they are one loop around it.
+  std::map<std::tuple<double, double, double, double>, sphere::Arc> open;
+  for (std::size_t k = 0; k < m->size(); ++k) {
+    const sphere::Polygon cell = m->cell(k);
+    for (const sphere::Arc& arc : cell.pieces.front().loops.front()) {
+      if (open.erase({arc.to.x, arc.to.y, arc.from.x, arc.from.y}) == 0) {
+        open[{arc.from.x, arc.from.y, arc.to.x, arc.to.y}] = arc;
+      }
+    }
+  }
+  REQUIRE(open.size() == 80);
+  sphere::Loop rim{open.begin()->second};
+  while (rim.size() < open.size()) {
+    const auto next =
+        std::find_if(open.begin(), open.end(), [&](const auto& o) { return o.second.from == rim.back().to; });
+    REQUIRE(next != open.end());
+    rim.push_back(next->second);
+  }
+  const double enclosed = sphere::area({{{{rim}}}});
+  CHECK(enclosed > 1);
+  CHECK(relative(total_area(*m), enclosed) < 1e-12);
 }
