@@ -20,7 +20,7 @@ std::string axis_units_of(const Context& context, const nc::Var& x, const nc::Va
   if (units.empty()) units = context.hints.axis_units;
   if (units.empty())
     context.fail(
-        fmt::format("axes '{}' and '{}' have no units; add grid = {{ axis_units = \"m\" }} (or \"km\", "
+        fmt::format("axes '{}' and '{}' have no units; add grid = {{ units = \"m\" }} (or \"km\", "
                     "\"radian\") to the [[run]]",
                     x.name, y.name));
   if (std::string plain = plain_axis_units(units); !plain.empty()) return plain;

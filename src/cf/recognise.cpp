@@ -61,7 +61,7 @@ void say_unused_hints(const Context& context, const Grid& grid) {
         fmt::format("the job's grid.{} is not used: the file holds no {} ({})", key, what, grid.how));
   };
   if (!context.hints.crs.empty() && grid.kind != GridKind::projected) say("crs", "projected axes");
-  if (!context.hints.axis_units.empty() && grid.kind != GridKind::projected) say("axis_units", "projected axes");
+  if (!context.hints.axis_units.empty() && grid.kind != GridKind::projected) say("units", "projected axes");
   if (context.hints.pole && grid.kind != GridKind::rotated && context.axis(Role::grid_latitude) == nullptr)
     say("pole", "rotated axes");
 }

@@ -10,12 +10,6 @@
 namespace windrow::engine {
 namespace {
 
-std::vector<std::uint32_t> sorted_unique(std::vector<std::uint32_t> values) {
-  std::sort(values.begin(), values.end());
-  values.erase(std::unique(values.begin(), values.end()), values.end());
-  return values;
-}
-
 std::size_t position(const std::vector<std::uint32_t>& sorted, std::uint32_t value) {
   return static_cast<std::size_t>(std::lower_bound(sorted.begin(), sorted.end(), value) - sorted.begin());
 }
@@ -44,6 +38,12 @@ class Component final : public pipeline::SourceReader {
 };
 
 }  // namespace
+
+std::vector<std::uint32_t> sorted_unique(std::vector<std::uint32_t> values) {
+  std::sort(values.begin(), values.end());
+  values.erase(std::unique(values.begin(), values.end()), values.end());
+  return values;
+}
 
 void RunReader::read(const std::vector<std::uint32_t>& columns, std::size_t t0, std::size_t t1, double* out) const {
   // A first pass over a long run takes longer than a user waits who asked to stop.

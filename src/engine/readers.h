@@ -11,6 +11,9 @@
 
 namespace windrow::engine {
 
+/// Ascending, each once: how readers are asked for columns.
+std::vector<std::uint32_t> sorted_unique(std::vector<std::uint32_t> values);
+
 /// Reads a run's variable.
 class RunReader : public pipeline::SourceReader {
  public:

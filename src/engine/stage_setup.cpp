@@ -51,12 +51,6 @@ std::vector<double> land_fraction(Session& session, std::size_t run, const Sourc
   return field.values;
 }
 
-std::vector<std::uint32_t> sorted_unique(std::vector<std::uint32_t> values) {
-  std::sort(values.begin(), values.end());
-  values.erase(std::unique(values.begin(), values.end()), values.end());
-  return values;
-}
-
 /// Model height on the mesh: with the run's own weights where the grids are the same, so that cells with the same
 /// pairings have the same height too.
 std::vector<double> model_height_on_mesh(Session& session, std::size_t field, std::size_t run, const Source& source,

@@ -22,11 +22,4 @@ class Frame {
   sphere::Vec3 x_, y_, z_;
 };
 
-inline sphere::Vec3 to_frame(const Rotation& rotation, const sphere::Vec3& geographic) {
-  return Frame(rotation).to_frame(geographic);
-}
-inline sphere::Vec3 from_frame(const Rotation& rotation, const sphere::Vec3& own) {
-  return Frame(rotation).from_frame(own);
-}
-
 }  // namespace windrow::mesh

@@ -211,7 +211,7 @@ TEST_CASE("without a mapping the CRS comes from the job, else it is asked for") 
   CHECK(open(sample.write(), hints)->grid().crs == "EPSG:3035");
   sample.units.clear();
   CHECK(refusal(sample.write(), hints) ==
-        "projected.nc: variable 'v': axes 'x' and 'y' have no units; add grid = { axis_units = \"m\" } (or \"km\", "
+        "projected.nc: variable 'v': axes 'x' and 'y' have no units; add grid = { units = \"m\" } (or \"km\", "
         "\"radian\") to the [[run]]");
   hints.axis_units = "km";
   CHECK(open(sample.write(), hints)->grid().axis_units == "km");

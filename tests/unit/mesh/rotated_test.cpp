@@ -56,7 +56,8 @@ TEST_CASE("rotated positions are those of an independent implementation") {
     mesh::geographic_to_rotated_projector(c.rotation)(x, y);
     CHECK(norm(sphere::point_degrees(x[0], y[0]) - sphere::point_degrees(c.x, c.y)) < 1e-14);
     const sphere::Vec3 own = sphere::point_degrees(c.x, c.y);
-    CHECK(norm(mesh::to_frame(c.rotation, mesh::from_frame(c.rotation, own)) - own) < 1e-15);
+    const mesh::Frame frame(c.rotation);
+    CHECK(norm(frame.to_frame(frame.from_frame(own)) - own) < 1e-15);
   }
 }
 
