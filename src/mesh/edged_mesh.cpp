@@ -105,6 +105,12 @@ std::uint32_t EdgedCells::add_bent(std::uint32_t from, std::uint32_t to, std::sp
   if (points.size() == 1) return add_edge(from, to, sphere::tilt_through(node[from], points[0], node[to]));
   const auto first = static_cast<std::uint32_t>(inner.size());
   inner.insert(inner.end(), points.begin(), points.end());
+  inner_tilt.resize(inner.size());
+  for (std::size_t k = 0; k < points.size(); k += 2) {
+    const Vec3& before = k == 0 ? node[from] : points[k - 1];
+    const Vec3& after = k + 1 == points.size() ? node[to] : points[k + 1];
+    inner_tilt[first + k] = sphere::tilt_through(before, points[k], after);
+  }
   edge.push_back({from, to, 0, first, static_cast<std::uint16_t>((points.size() + 1) / 2), Run::split});
   return static_cast<std::uint32_t>(edge.size() - 1);
 }
@@ -120,9 +126,8 @@ void EdgedCells::arcs(Use use_of_edge, sphere::Loop& out) const {
   } else {
     Vec3 a = from;
     for (std::size_t k = 0; k < e.parts; ++k) {
-      const Vec3& middle = inner[e.inner + 2 * k];
       const Vec3 b = k + 1 == e.parts ? to : inner[e.inner + 2 * k + 1];
-      out.push_back(arc_through(a, b, sphere::tilt_through(a, middle, b)));
+      out.push_back(arc_through(a, b, inner_tilt[e.inner + 2 * k]));
       a = b;
     }
   }
@@ -182,6 +187,7 @@ void EdgedMesh::cell_into(std::size_t index, sphere::Polygon& out) const {
 
 void EdgedMesh::measure(const std::string& place) {
   area_.resize(cells_.cells());
+  perimeter_.resize(area_.size());
 #pragma omp parallel
   {
     sphere::Polygon polygon;
@@ -194,6 +200,7 @@ void EdgedMesh::measure(const std::string& place) {
         sum += part > -kSliver ? std::max(0.0, part) : std::numeric_limits<double>::quiet_NaN();
       }
       area_[k] = sum;
+      perimeter_[k] = sphere::perimeter(polygon);
     }
   }
   const auto bad = std::find_if(area_.begin(), area_.end(), [](double a) { return !(a > 0); });
@@ -239,12 +246,6 @@ void EdgedMesh::make_digest() {
   }
   add_values(hasher, edges);
   digest_ = hasher.finish();
-}
-
-double EdgedMesh::perimeter(std::size_t index) const {
-  sphere::Polygon polygon;
-  cell_into(index, polygon);
-  return sphere::perimeter(polygon);
 }
 
 std::optional<Hull> EdgedMesh::hull(std::size_t index) const {

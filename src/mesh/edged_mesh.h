@@ -31,6 +31,7 @@ struct EdgedCells {
   std::vector<sphere::Vec3> node;  ///< unit vectors on the sphere of areas (authalic)
   std::vector<Edge> edge;
   std::vector<sphere::Vec3> inner;  ///< points of split edges
+  std::vector<double> inner_tilt;   ///< of the arc through each inner point that is a middle; 0 for those between arcs
   std::vector<Use> use;             ///< loops one after another, each anticlockwise about its cell (holes clockwise)
   std::vector<std::uint64_t> loop_start{0};  ///< loops + 1, places in `use`
   std::vector<std::uint64_t> piece_start;    ///< pieces + 1, numbers of loops (outer one first); empty: one loop each
@@ -82,7 +83,7 @@ class EdgedMesh : public Mesh {
   /// Of cells with three or four edges, none of them split.
   std::optional<Hull> hull(std::size_t index) const override;
   double area(std::size_t index) const override { return area_[index]; }
-  double perimeter(std::size_t index) const override;
+  double perimeter(std::size_t index) const override { return perimeter_[index]; }
   GeoPoint centre(std::size_t index) const override;
   /// By search; the index is built when first asked.
   std::optional<std::size_t> find(GeoPoint point) const override;
@@ -109,7 +110,7 @@ class EdgedMesh : public Mesh {
 
   EdgedCells cells_;
   EdgedTraits traits_;
-  std::vector<double> area_;
+  std::vector<double> area_, perimeter_;
   std::vector<bool> rim_;
   codec::Digest digest_;
   mutable std::once_flag index_once_;

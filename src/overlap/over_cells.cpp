@@ -3,6 +3,7 @@
 #include "over_cells.h"
 
 #include <algorithm>
+#include <memory>
 
 #include "convex.h"
 #include "windrow/sphere/clip.h"
@@ -45,6 +46,14 @@ class CellOverlap {
   CellOverlap(const mesh::Mesh& clip, const mesh::Index& index, const mesh::Mesh& cells, const MomentFrame& frame)
       : clip_(clip), index_(index), cells_(cells), moments_(frame.source != nullptr), parts_(clip), found_(frame) {}
 
+  Rows rows(std::size_t first, std::size_t last) {
+    hinted_ = false;  // so that bits do not depend on what this thread did before
+    Rows rows;
+    for (std::size_t row = first; row < last; ++row) add_row(row, rows);
+    return rows;
+  }
+
+ private:
   void add_row(std::size_t row, Rows& rows) {
     if (hinted_ && !moments_ && inside_hint(row)) {
       rows.count.push_back(1);
@@ -69,7 +78,6 @@ class CellOverlap {
     rows.bound.push_back(closure_bound(perimeter, whole));
   }
 
- private:
   bool inside_hint(std::size_t row) {
     const std::optional<mesh::Hull> hull = cells_.hull(row);
     if (!hull) return false;
@@ -169,12 +177,10 @@ class CellOverlap {
 
 }  // namespace
 
-Rows over_cells(const mesh::Mesh& clip, const mesh::Index& index, const mesh::Mesh& cells, const MomentFrame& frame,
-                std::size_t first, std::size_t last) {
-  Rows rows;
-  CellOverlap overlap(clip, index, cells, frame);
-  for (std::size_t row = first; row < last; ++row) overlap.add_row(row, rows);
-  return rows;
+std::function<Rows(std::size_t first, std::size_t last)> over_cells(const mesh::Mesh& clip, const mesh::Index& index,
+                                                                    const mesh::Mesh& cells, const MomentFrame& frame) {
+  const auto overlap = std::make_shared<CellOverlap>(clip, index, cells, frame);
+  return [overlap](std::size_t first, std::size_t last) { return overlap->rows(first, last); };
 }
 
 }  // namespace windrow::overlap

@@ -3,10 +3,12 @@
 #include "overlaps.h"
 
 #include <fmt/format.h>
+#include <omp.h>
 
 #include <algorithm>
 #include <exception>
 
+#include "convex.h"
 #include "frame_view.h"
 #include "latlon_pair.h"
 #include "over_cells.h"
@@ -20,15 +22,18 @@ namespace {
 // wants some.
 std::size_t run_of(std::size_t cells) { return std::clamp<std::size_t>(cells / 64, 64, 16384); }
 
-template <typename RowsOf>
-std::vector<Rows> all_rows(std::size_t cells, const RowsOf& rows_of) {
+// `make_rows_of` makes what finds the rows [first, last) of a run; every thread makes its own.
+template <typename MakeRowsOf>
+std::vector<Rows> all_rows(std::size_t cells, const MakeRowsOf& make_rows_of) {
   const std::size_t run = run_of(cells);
   std::vector<Rows> blocks((cells + run - 1) / run);
   std::vector<std::exception_ptr> failures(blocks.size());
+  std::vector<decltype(make_rows_of())> rows_of;
+  for (int thread = 0; thread < omp_get_max_threads(); ++thread) rows_of.push_back(make_rows_of());
 #pragma omp parallel for schedule(dynamic)
   for (std::size_t b = 0; b < blocks.size(); ++b) {
     try {
-      blocks[b] = rows_of(b * run, std::min(cells, (b + 1) * run));
+      blocks[b] = rows_of[static_cast<std::size_t>(omp_get_thread_num())](b * run, std::min(cells, (b + 1) * run));
     } catch (...) {
       failures[b] = std::current_exception();
     }
@@ -88,8 +93,8 @@ bool same_frame(const mesh::Mesh& a, const mesh::Mesh& b) {
 std::vector<Rows> against_block(const mesh::Mesh& block, const mesh::Mesh& cells, const MomentFrame& frame) {
   const SourceBlock wedges(block);
   if (block.rotation() == nullptr) {
-    return all_rows(cells.size(), [&](std::size_t first, std::size_t last) {
-      return over_latlon(wedges, cells, frame, first, last);
+    return all_rows(cells.size(), [&] {
+      return [&](std::size_t first, std::size_t last) { return over_latlon(wedges, cells, frame, first, last); };
     });
   }
   const FrameView view(cells, *block.rotation());
@@ -102,16 +107,28 @@ std::vector<Rows> against_block(const mesh::Mesh& block, const mesh::Mesh& cells
     for (const auto& v : frame.source->second) turned_centroids.second.push_back(into.to_frame(v));
     turned_frame.source = &turned_centroids;
   }
-  return all_rows(cells.size(), [&](std::size_t first, std::size_t last) {
-    return over_latlon(wedges, view, turned_frame, first, last);
+  return all_rows(cells.size(), [&] {
+    return [&](std::size_t first, std::size_t last) { return over_latlon(wedges, view, turned_frame, first, last); };
   });
 }
 
 std::vector<Rows> against_cells(const mesh::Mesh& clip, const mesh::Mesh& cells, const MomentFrame& frame) {
   const mesh::Index index(clip);
-  return all_rows(cells.size(), [&](std::size_t first, std::size_t last) {
-    return over_cells(clip, index, cells, frame, first, last);
-  });
+  return all_rows(cells.size(), [&] { return over_cells(clip, index, cells, frame); });
+}
+
+// Can cells of the mesh clip as they are, without being taken apart? Told from some of them.
+bool convex_cells(const mesh::Mesh& mesh) {
+  constexpr std::size_t kSamples = 50;
+  const std::size_t step = std::max<std::size_t>(1, mesh.size() / kSamples);
+  sphere::Polygon polygon;
+  CellParts parts;
+  for (std::size_t k = 0; k < mesh.size(); k += step) {
+    mesh.cell_into(k, polygon);
+    find_sides(polygon, parts);
+    if (!parts.convex) return false;
+  }
+  return true;
 }
 
 double mean_area(const mesh::Mesh& mesh) {
@@ -120,6 +137,20 @@ double mean_area(const mesh::Mesh& mesh) {
   std::size_t count = 0;
   for (std::size_t k = 0; k < mesh.size(); k += step, ++count) sum += mesh.area(k);
   return sum / static_cast<double>(count);
+}
+
+// Blocks clip whatever the other mesh is. Of two others the finer one is clipped: most of its cells lie within one of
+// the other's. Only convex cells clip quickly, so of like sizes they do it; and polygons of many corners never do.
+bool target_is_to_clip(const mesh::Mesh& source, const mesh::Mesh& target) {
+  constexpr double kLikeSize = 4;
+  const double ratio = mean_area(target) / mean_area(source);
+  if (target.latlon() != nullptr) return source.latlon() == nullptr || ratio > 1;
+  if (source.latlon() != nullptr || target.cells_may_overlap()) return false;
+  if (std::max(ratio, 1 / ratio) < kLikeSize) {
+    const bool source_convex = convex_cells(source), target_convex = convex_cells(target);
+    if (source_convex != target_convex) return target_convex;
+  }
+  return ratio > 1;
 }
 
 void check(const mesh::Mesh& mesh) {
@@ -141,14 +172,10 @@ std::vector<Rows> overlaps(const mesh::Mesh& source, const mesh::Mesh& target, c
   const bool both = source.latlon() != nullptr && target.latlon() != nullptr;
   if (both && centroids == nullptr && same_frame(source, target)) {
     const LatLonPair pair(source, target);
-    return all_rows(target.size(), [&](std::size_t first, std::size_t last) { return pair.rows(first, last); });
+    return all_rows(target.size(),
+                    [&] { return [&](std::size_t first, std::size_t last) { return pair.rows(first, last); }; });
   }
-  // The finer mesh is the one to be clipped: most of its cells lie within one of the other's. Only blocks and convex
-  // cells clip quickly, so polygons of many corners never do.
-  const bool source_finer = mean_area(source) < mean_area(target);
-  const bool target_clips = target.latlon() != nullptr
-                                ? source.latlon() == nullptr || source_finer
-                                : source.latlon() == nullptr && source_finer && !target.cells_may_overlap();
+  const bool target_clips = target_is_to_clip(source, target);
   const MomentFrame frame{centroids, target_clips};
   if (!target_clips) {
     return source.latlon() != nullptr ? against_block(source, target, frame) : against_cells(source, target, frame);

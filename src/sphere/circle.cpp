@@ -62,6 +62,7 @@ Arc arc_through(const Vec3& from, const Vec3& to, double tilt) {
   const double half = 0.5 * norm(chord);
   const Vec3 sum = from + to;
   const Vec3 left = unit(cross(sum, chord));
+  if (tilt == 0) return {from, to, Circle::great(left), 2 * std::asin(std::min(1.0, half))};
   const double cos_tilt = 1 / std::sqrt(1 + tilt * tilt);
   const double sin_tilt = tilt * cos_tilt;
   const double d = -sin_tilt * std::sqrt(1 - half * half);

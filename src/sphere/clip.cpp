@@ -340,7 +340,8 @@ void add_whole_circle(const Piece& piece, const Circle& half_space, Piece& out) 
 }
 
 // The plain case, most by far: one loop that leaves the half-space once and comes back once, with no vertex near the
-// clip circle and no edge that might dip through it. Returns false, with `out` in any state, when it is not that plain.
+// clip circle and no edge that might dip through it; or lies on one side of a great circle, which it cannot be around.
+// Returns false, with `out` in any state, when it is not that plain.
 bool clip_plainly(const Piece& piece, const Circle& half_space, Piece& out) {
   constexpr std::size_t kMost = 12;
   if (piece.loops.size() != 1 || piece.loops.front().size() > kMost) return false;
@@ -362,7 +363,15 @@ bool clip_plainly(const Piece& piece, const Circle& half_space, Piece& out) {
       return false;
     }
   }
-  if (entry == n) return false;
+  if (entry == n) {
+    if (half_space.d != 0) return false;
+    if (h[0] > 0) {
+      out = piece;
+    } else {
+      out.loops.clear();
+    }
+    return true;
+  }
   const auto meet = [&](const Arc& arc) {
     return crossings(arc.dtheta > 0 ? arc.circle : arc.circle.reversed(), half_space);
   };
