@@ -1,7 +1,10 @@
-// Correction tables of one cell from carried targets, and their evaluation. Tile code: + - * / and comparisons only.
+// Correction tables of one cell from carried targets, and their evaluation. Tile code: + - * / and comparisons only,
+// and gamma distributions where they are asked for. Wet days have their own file.
 #include <algorithm>
 
+#include "blend.h"
 #include "det_exp.h"
+#include "wet_days.h"
 #include "windrow/adjust/transfer.h"
 #include "windrow/base/error.h"
 #include "windrow/stats/stats.h"
@@ -9,44 +12,12 @@
 namespace windrow::adjust {
 namespace {
 
-/// fade * near + (1 - fade) * far, where a side without weight need not exist.
-double blend(double fade, double near, double far) {
-  if (fade >= 1) return near;
-  if (fade <= 0) return far;
-  return fade * near + (1 - fade) * far;
-}
-
-double at(std::span<const double> values, std::size_t i) { return values.empty() ? 0 : values[i]; }
-
 /// The level a season shall have: additive methods.
 double level_of(const Setup& setup, const RowClimate& climate, const CellTarget& target, std::size_t season) {
   const double own = climate.mean[season];
   const double carried = at(target.level, season);
   return blend(target.fade_level, setup.carry_target ? carried : own + carried,
                own + at(target.mean_correction_level, season));
-}
-
-/// The ratio of a season, capped; counts caps and seasons whose own mean allows no ratio.
-double ratio_of(const Setup& setup, const RowClimate& climate, const CellTarget& target, std::size_t season,
-                int& capped) {
-  const double own = climate.mean[season];
-  if (!(own == own)) return own;
-  if (own <= 0) {
-    ++capped;
-    return 1;
-  }
-  double near = 1, far = 1;
-  if (target.fade_level > 0) {
-    near = det_exp(at(target.level, season));
-    if (setup.carry_target) near /= own;
-  }
-  if (target.fade_level < 1) far = det_exp(at(target.mean_correction_level, season));
-  const double ratio = blend(target.fade_level, near, far);
-  if (ratio > setup.max_ratio || ratio < 1 / setup.max_ratio) {
-    ++capped;
-    return ratio > setup.max_ratio ? setup.max_ratio : 1 / setup.max_ratio;
-  }
-  return ratio;
 }
 
 /// Daily ratios from smoothed monthly ones: never negative, and rescaled so that the calibration total of each month is
@@ -106,12 +77,48 @@ int map_season(const Setup& setup, const RowClimate& climate, const CellTarget& 
   return moved;
 }
 
+/// Factor and offset of one season of variance-scaling: (x - own) * ratio + level.
+void scale_season(const Setup& setup, const RowClimate& climate, const CellTarget& target, std::size_t season,
+                  Correction& out) {
+  const double own = climate.deviation[season], level = level_of(setup, climate, target, season);
+  double ratio = 1;
+  if (own > 0) {
+    const double near =
+        setup.carry_target ? det_exp(at(target.shape, season)) / own : det_exp(at(target.shape, season));
+    ratio =
+        blend(target.shape.empty() ? 0 : target.fade_shape, near, det_exp(at(target.mean_correction_shape, season)));
+    ratio = capped(setup, ratio, out.capped);
+  }
+  out.table[2 * season] = ratio;
+  out.table[2 * season + 1] = level - ratio * climate.mean[season];
+}
+
 }  // namespace
 
-void make_correction(const Setup& setup, const RowClimate& climate, const CellTarget& target, Correction& out) {
+double season_ratio(const Setup& setup, const RowClimate& climate, const CellTarget& target, std::size_t season,
+                    int& caps) {
+  const double own = climate.mean[season];
+  if (!(own == own)) return own;
+  if (own <= 0) {
+    ++caps;
+    return 1;
+  }
+  double near = 1, far = 1;
+  if (target.fade_level > 0) {
+    near = det_exp(at(target.level, season));
+    if (setup.carry_target) near /= own;
+  }
+  if (target.fade_level < 1) far = det_exp(at(target.mean_correction_level, season));
+  return capped(setup, blend(target.fade_level, near, far), caps);
+}
+
+void make_correction(const Setup& setup, const Steps& anchor_steps, const RowClimate& climate,
+                     std::span<const double> anchor_series, const CellTarget& target, const CellDraws* draws,
+                     Correction& out) {
   const std::size_t seasons = climate.mean.size();
   out.reordered = out.capped = 0;
-  if (setup.method == Method::quantile_mapping) {
+  if (setup.wet_days()) return make_wet_correction(setup, anchor_steps, climate, anchor_series, target, draws, out);
+  if (setup.maps_quantiles()) {
     const auto quantiles = static_cast<std::size_t>(setup.quantiles);
     out.table.resize(seasons * quantiles);
     for (std::size_t s = 0; s < seasons; ++s) {
@@ -124,25 +131,38 @@ void make_correction(const Setup& setup, const RowClimate& climate, const CellTa
     }
     return;
   }
+  if (setup.method == Method::variance_scaling) {
+    out.table.resize(2 * seasons);
+    for (std::size_t s = 0; s < seasons; ++s) scale_season(setup, climate, target, s, out);
+    return;
+  }
   out.table.resize(seasons);
   for (std::size_t s = 0; s < seasons; ++s) {
-    out.table[s] = setup.multiplicative() ? ratio_of(setup, climate, target, s, out.capped)
+    out.table[s] = setup.multiplicative() ? season_ratio(setup, climate, target, s, out.capped)
                                           : level_of(setup, climate, target, s) - climate.mean[s];
   }
   if (climate.smoothing) spread_to_days(setup, climate, out.table);
 }
 
 void evaluate(const Setup& setup, const Steps& steps, std::span<const double> series, const Ranks& ranks,
-              const Correction& correction, std::span<double> out) {
+              const Correction& correction, const CellDraws* draws, std::span<double> out) {
+  if (setup.wet_days()) return evaluate_wet(setup, steps, series, ranks, correction, draws, out);
   const std::size_t n = series.size();
   const double* x = series.data();
   const double* table = correction.table.data();
   double* y = out.data();
-  if (setup.method == Method::quantile_mapping) {
+  if (setup.maps_quantiles()) {
     const auto quantiles = static_cast<std::size_t>(setup.quantiles);
     for (std::size_t t = 0; t < n; ++t) {
       const double* c = table + static_cast<std::size_t>(steps.season[t]) * quantiles + ranks.node[t];
       y[t] = x[t] + (c[0] + static_cast<double>(ranks.weight[t]) * (c[1] - c[0]));
+    }
+    return;
+  }
+  if (setup.method == Method::variance_scaling) {
+    for (std::size_t t = 0; t < n; ++t) {
+      const double* c = table + 2 * static_cast<std::size_t>(steps.season[t]);
+      y[t] = x[t] * c[0] + c[1];
     }
     return;
   }

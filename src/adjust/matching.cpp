@@ -72,13 +72,6 @@ std::vector<std::uint8_t> common_months(const ModelMonths& months, const Observe
   return use;
 }
 
-void quantile_correction(std::span<const double> observed, std::span<const double> modelled, std::span<double> out) {
-  for (std::size_t k = 0; k < out.size(); ++k) {
-    const double tau = (static_cast<double>(k) + 0.5) / static_cast<double>(out.size());
-    out[k] = stats::quantile(observed, tau, 7) - stats::quantile(modelled, tau, 7);
-  }
-}
-
 }  // namespace
 
 std::vector<std::array<double, 12>> month_weights(const calendar::Seasons& seasons) {
@@ -174,27 +167,26 @@ Matched match_daily(const Setup& setup, const Steps& steps, std::span<const doub
     use.clear();
   }
   auto samples = observed_samples(setup, months, observed, use);
-  const bool mapping = setup.method == Method::quantile_mapping;
-  const auto quantiles = static_cast<std::size_t>(setup.quantiles);
-  if (mapping) out.correction.assign(samples.size() * quantiles, kMissing);
-  const auto& start = out.whole_period ? steps.sample_start : steps.member_start;
-  const auto& step = out.whole_period ? steps.sample : steps.member;
+  const bool shaped = setup.width() > 0;
+  const StepGroups& groups = out.whole_period ? steps.sample : steps.member;
   std::vector<double> modelled;
   for (std::size_t s = 0; s < samples.size(); ++s) {
     modelled.clear();
-    for (std::uint32_t i = start[s]; i < start[s + 1]; ++i) {
-      const std::uint32_t t = step[i];
+    for (std::uint32_t i = groups.start[s]; i < groups.start[s + 1]; ++i) {
+      const std::uint32_t t = groups.step[i];
       if (!use.empty() && !use[months.index(steps.year[t], steps.month[t])]) continue;
       if (present(model[t])) modelled.push_back(model[t]);
     }
-    if (samples[s].empty() || modelled.empty()) continue;
-    out.observed[s] = stats::mean(samples[s]);
-    out.modelled[s] = stats::mean(modelled);
-    if (!mapping) continue;
+    if (!samples[s].empty() && !modelled.empty()) {
+      out.observed[s] = stats::mean(samples[s]);
+      out.modelled[s] = stats::mean(modelled);
+    }
+    if (!shaped) continue;
     std::sort(samples[s].begin(), samples[s].end());
     std::sort(modelled.begin(), modelled.end());
-    quantile_correction(samples[s], modelled, std::span(out.correction).subspan(s * quantiles, quantiles));
+    out.modelled_sample.push_back(modelled);
   }
+  if (shaped) out.observed_sample = std::move(samples);
   return out;
 }
 

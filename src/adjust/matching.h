@@ -1,4 +1,4 @@
-// Station values against model values of the same months: season means and quantile corrections. No targets here.
+// Station values against model values of the same months: season means and samples. No targets here.
 #pragma once
 #include <array>
 #include <span>
@@ -11,9 +11,10 @@ namespace windrow::adjust {
 /// Season means on both sides, NaN where either is missing, and what they rest on.
 struct Matched {
   std::vector<double> observed, modelled;  // [season]
-  std::vector<double> correction;          // [season * quantiles]: Q_observed - Q_model; empty without daily data
-  int months = 0;                          // pairs of the run
-  bool whole_period = false;               // nothing in common: the calibration period was used
+  // [season], ascending, the same months on both sides; empty without daily data or where no shape is asked for
+  std::vector<std::vector<double>> observed_sample, modelled_sample;
+  int months = 0;             // pairs of the run
+  bool whole_period = false;  // nothing in common: the calibration period was used
 };
 
 /// Days of a 365-day year that belong to each season, by calendar month: [season][month].

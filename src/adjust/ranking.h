@@ -8,6 +8,26 @@
 
 namespace windrow::adjust {
 
+/// tau of node k of n.
+inline double node_tau(std::size_t k, std::size_t n) { return (static_cast<double>(k) + 0.5) / static_cast<double>(n); }
+
+/// Pair of nodes about tau and the upper one's weight; the outermost node beyond its own tau.
+struct Between {
+  std::size_t node;
+  double weight;
+};
+inline Between between_nodes(double tau, std::size_t n) {
+  const double at = tau * static_cast<double>(n) - 0.5;
+  if (!(at > 0)) return {0, 0};
+  if (at >= static_cast<double>(n - 1)) return {n - 2, 1};
+  const auto node = static_cast<std::size_t>(at);
+  return {node, at - static_cast<double>(node)};
+}
+inline double at_tau(std::span<const double> nodes, double tau) {
+  const Between b = between_nodes(tau, nodes.size());
+  return nodes[b.node] + b.weight * (nodes[b.node + 1] - nodes[b.node]);
+}
+
 struct Standing {
   std::uint16_t node = 0;
   float weight = 0;
@@ -50,6 +70,17 @@ class NodeRow {
     if (lower == x) return tie_[below - 1];
     if (below == nodes_.size()) return {static_cast<std::uint16_t>(below - 2), 1.0F};
     return {static_cast<std::uint16_t>(below - 1), static_cast<float>((x - lower) / (nodes_[below] - lower))};
+  }
+
+  /// The same with the weight in full precision.
+  [[nodiscard]] Between between(double x) const {
+    const std::size_t below = count_below(x);
+    const Standing place = standing(x, below);
+    Between out{place.node, static_cast<double>(place.weight)};
+    if (below > 0 && below < nodes_.size() && nodes_[below - 1] != x) {
+      out.weight = (x - nodes_[below - 1]) / (nodes_[below] - nodes_[below - 1]);
+    }
+    return out;
   }
 
   [[nodiscard]] std::span<const double> nodes() const { return nodes_; }

@@ -2,6 +2,7 @@
 #include <cmath>
 
 #include "matching.h"
+#include "station_shape.h"
 #include "windrow/adjust/transfer.h"
 
 namespace windrow::adjust {
@@ -36,23 +37,6 @@ std::string level(const Setup& setup, double calibration, double observed, doubl
   correction = observed > 0 ? std::log(observed / modelled) : -std::log(setup.max_ratio);
   target = std::log(calibration) + correction;
   return {};
-}
-
-void add_shape(const Setup& setup, const RowClimate& climate, const Matched& matched, StationFit& fit) {
-  const auto quantiles = static_cast<std::size_t>(setup.quantiles);
-  fit.target_shape.resize(matched.correction.size());
-  fit.correction_shape.resize(matched.correction.size());
-  for (std::size_t i = 0; i < matched.correction.size(); ++i) {
-    const std::size_t s = i / quantiles;
-    if (!present(matched.correction[i])) {
-      fit.target_shape.clear();
-      fit.correction_shape.clear();
-      return;
-    }
-    fit.target_shape[i] = climate.node[i] + matched.correction[i] - fit.target_level[s];
-    fit.correction_shape[i] = matched.correction[i] - fit.correction_level[s];
-  }
-  fit.shape = !fit.target_shape.empty();
 }
 
 }  // namespace
@@ -95,7 +79,7 @@ StationFit fit_station(const Setup& setup, const Steps& steps, std::span<const d
     return fit;
   }
   fit.level = true;
-  if (!matched.correction.empty()) add_shape(setup, climate, matched, fit);
+  if (!matched.observed_sample.empty()) fit.shape = add_shape(setup, climate, matched, fit);
   return fit;
 }
 

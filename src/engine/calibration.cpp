@@ -7,6 +7,8 @@
 #include <limits>
 #include <optional>
 
+#include "carrying.h"
+#include "lapse_fit.h"
 #include "windrow/base/error.h"
 #include "windrow/os/files.h"
 #include "windrow/station/station.h"
@@ -27,7 +29,8 @@ bool is_rate(const std::string& units) {
   return false;
 }
 
-/// Impossible values when the job gives no range: outside the records of the WMO archive of weather and climate extremes
+/// Impossible values when the job gives no range: outside the records of the WMO archive of weather and climate
+/// extremes
 /// (-89.2 and 56.7 degC; 1825 mm in 24 h; from memory) with some room.
 std::pair<double, double> possible_range(const job::FieldSpec& field, const std::string& units,
                                          const std::string& standard_name) {
@@ -41,6 +44,48 @@ std::pair<double, double> possible_range(const job::FieldSpec& field, const std:
     return {0.0, units::conversion("mm/day", units, "", "").affine(2000.0)};
   }
   return {-far, far};
+}
+
+bool is_water(const std::string& standard_name) {
+  return standard_name.find("precipitation") != std::string::npos ||
+         standard_name.find("rainfall") != std::string::npos || standard_name.find("snowfall") != std::string::npos;
+}
+
+adjust::Method method_of(job::Adjustment method) {
+  switch (method) {
+    case job::Adjustment::mean_ratio:
+      return adjust::Method::mean_ratio;
+    case job::Adjustment::variance_scaling:
+      return adjust::Method::variance_scaling;
+    case job::Adjustment::quantile_mapping:
+      return adjust::Method::quantile_mapping;
+    case job::Adjustment::detrended_quantile_mapping:
+      return adjust::Method::detrended_quantile_mapping;
+    case job::Adjustment::quantile_delta_mapping:
+      return adjust::Method::quantile_delta_mapping;
+    case job::Adjustment::gamma_mapping:
+      return adjust::Method::gamma_mapping;
+    default:
+      return adjust::Method::mean_shift;
+  }
+}
+
+/// The wet-day threshold in output units; 0: none. 1 mm/day for precipitation by the quantile methods, unless given.
+double wet_day_of(const job::AdjustSpec& spec, const units::Conversion& conversion, const std::string& output_units,
+                  const std::string& place) {
+  if (spec.form != job::Form::multiplicative) return 0;
+  const bool rain = is_water(conversion.standard_name) && is_rate(output_units);
+  if (!spec.wet_day) {
+    const bool by_itself = rain && spec.method != job::Adjustment::mean_ratio;
+    return by_itself ? units::conversion("mm/day", output_units, "", place).affine(1.0) : 0;
+  }
+  try {
+    return units::conversion(spec.wet_day->second, output_units, "", place).affine(spec.wet_day->first);
+  } catch (const Error&) {
+    throw Error(Failure::job, place,
+                fmt::format("wet_day is in '{}', the field in '{}'; expected a threshold in units that convert",
+                            spec.wet_day->second, output_units));
+  }
 }
 
 std::vector<text::CsvTable> tables(const std::vector<std::string>& paths) {
@@ -58,8 +103,7 @@ std::vector<station::Record> records(const CalibrationNeeds& needs, Notices& not
   options.observed = needs.field.adjust.observed;
   options.units = needs.output_units;
   const std::string& name = needs.conversion.standard_name;
-  const bool water = name.find("precipitation") != std::string::npos || name.find("rainfall") != std::string::npos ||
-                     name.find("snowfall") != std::string::npos;
+  const bool water = is_water(name);
   options.kind = water ? station::Kind::sum : station::Kind::mean;
   options.per_day_rate = water && is_rate(needs.output_units);
   std::tie(options.low, options.high) = possible_range(needs.field, needs.output_units, name);
@@ -67,13 +111,6 @@ std::vector<station::Record> records(const CalibrationNeeds& needs, Notices& not
   if (spec.normals_period) std::tie(options.normals_first, options.normals_last) = *spec.normals_period;
   return station::read_records(files, {spec.columns, spec.units}, options, notices);
 }
-
-/// A record with its place in the model.
-struct Placed {
-  const station::Record* record;
-  std::uint32_t column = 0;
-  double model_height = 0;
-};
 
 std::vector<Placed> place(const CalibrationNeeds& needs, const std::vector<station::Record>& all, Notices& notices,
                           std::vector<report::StationRecord>& outcomes) {
@@ -93,11 +130,13 @@ std::vector<Placed> place(const CalibrationNeeds& needs, const std::vector<stati
       continue;
     }
     Placed placed{&record, static_cast<std::uint32_t>(*column), 0};
+    const bool drift = needs.job.reach.method == job::ReachMethod::kriging_height;
+    if ((needs.field.terrain || drift) && std::isnan(record.site.elevation_m)) {
+      leave_out(record, fmt::format("has no elevation, which {} needs",
+                                    needs.field.terrain ? "[field.terrain]" : "kriging-height"));
+      continue;
+    }
     if (needs.field.terrain) {
-      if (std::isnan(record.site.elevation_m)) {
-        leave_out(record, "has no elevation, which [field.terrain] needs");
-        continue;
-      }
       const auto cell = needs.model_height->mesh->find(record.site.position);
       placed.model_height = cell ? needs.model_height->values[*cell] : std::nan("");
       if (std::isnan(placed.model_height)) {
@@ -110,9 +149,8 @@ std::vector<Placed> place(const CalibrationNeeds& needs, const std::vector<stati
   return out;
 }
 
-/// The anchor's reduced series at every placed station.
-std::vector<std::vector<double>> model_series(const CalibrationNeeds& needs, const std::vector<Placed>& placed,
-                                              const adjust::Steps& steps, const std::array<double, 12>& lapse) {
+/// The anchor's series at every placed station, in output units.
+std::vector<std::vector<double>> model_series(const CalibrationNeeds& needs, const std::vector<Placed>& placed) {
   std::vector<std::uint32_t> columns;
   columns.reserve(placed.size());
   for (const auto& place : placed) columns.push_back(place.column);
@@ -123,73 +161,20 @@ std::vector<std::vector<double>> model_series(const CalibrationNeeds& needs, con
   needs.anchor.variable->read(0, count, columns, values.data());
   std::vector<std::vector<double>> out;
   for (const auto& place : placed) {
-    const auto at = static_cast<std::size_t>(std::lower_bound(columns.begin(), columns.end(), place.column) -
-                                             columns.begin());
+    const auto at =
+        static_cast<std::size_t>(std::lower_bound(columns.begin(), columns.end(), place.column) - columns.begin());
     std::vector<double> series(count);
     for (std::size_t t = 0; t < count; ++t) {
-      series[t] = needs.conversion.affine(values[t * columns.size() + at]) - lapse[steps.month[t]] * place.model_height;
+      series[t] = needs.conversion.affine(values[t * columns.size() + at]);
     }
     out.push_back(std::move(series));
   }
   return out;
 }
 
-void add_to(std::vector<double>& sum, const std::vector<double>& values) {
-  if (sum.empty()) sum.assign(values.size(), 0.0);
-  for (std::size_t i = 0; i < values.size(); ++i) sum[i] += values[i];
-}
-
-void divide(std::vector<double>& sum, std::size_t count) {
-  for (double& x : sum) x /= static_cast<double>(count);
-}
-
-struct Fitted {
-  GeoPoint position;
-  adjust::StationFit fit;
-};
-
-reach::ReachMap reach_of(const CalibrationNeeds& needs, const std::vector<GeoPoint>& stations) {
-  const auto& spec = needs.job.reach;
-  std::vector<GeoPoint> cells;
-  cells.reserve(needs.target.mesh->size());
-  for (std::size_t i = 0; i < needs.target.mesh->size(); ++i) cells.push_back(needs.target.mesh->centre(i));
-  reach::Options options;
-  options.method = spec.method == job::ReachMethod::nearest ? reach::Method::nearest : reach::Method::inverse_distance;
-  options.radius_m = spec.radius_m;
-  options.power = spec.power;
-  options.neighbours = spec.neighbours;
-  return reach::make_reach(stations, cells, options);
-}
-
-/// Targets (or corrections) of all stations in a row, their means, and the reach maps.
-void carry_over(const CalibrationNeeds& needs, const std::vector<Fitted>& fitted, Calibration& out) {
-  std::vector<GeoPoint> level, shape;
-  const bool target = needs.field.adjust.carry == job::Carry::target;
-  for (const auto& [position, fit] : fitted) {
-    level.push_back(position);
-    const auto& values = target ? fit.target_level : fit.correction_level;
-    out.station_level.insert(out.station_level.end(), values.begin(), values.end());
-    add_to(out.mean_correction_level, fit.correction_level);
-    if (!fit.shape) continue;
-    shape.push_back(position);
-    const auto& shapes = target ? fit.target_shape : fit.correction_shape;
-    out.station_shape.insert(out.station_shape.end(), shapes.begin(), shapes.end());
-    add_to(out.mean_correction_shape, fit.correction_shape);
-  }
-  out.level_stations = level.size();
-  out.shape_stations = shape.size();
-  divide(out.mean_correction_level, level.size());
-  if (!shape.empty()) divide(out.mean_correction_shape, shape.size());
-  if (needs.job.reach.beyond == job::Beyond::raw) {
-    std::fill(out.mean_correction_level.begin(), out.mean_correction_level.end(), 0.0);
-    std::fill(out.mean_correction_shape.begin(), out.mean_correction_shape.end(), 0.0);
-  }
-  out.level = reach_of(needs, level);
-  if (out.setup.method == adjust::Method::quantile_mapping) out.shape = reach_of(needs, shape);
-}
-
 [[noreturn]] void no_station(const CalibrationNeeds& needs, const std::vector<report::StationRecord>& outcomes) {
-  std::string why = outcomes.empty() ? "of those in the tables none can be used; the notes say why" : outcomes.front().outcome;
+  std::string why =
+      outcomes.empty() ? "of those in the tables none can be used; the notes say why" : outcomes.front().outcome;
   for (const auto& outcome : outcomes) {
     if (outcome.outcome != why) {
       why = fmt::format("{}: {}, ...", outcomes.front().id, outcomes.front().outcome);
@@ -219,22 +204,26 @@ std::vector<calendar::Date> step_dates(const cf::RunVariable& variable) {
   return out;
 }
 
-adjust::Setup adjust_setup(const job::AdjustSpec& spec, const cf::RunVariable& variable, const std::string& place) {
+adjust::Setup adjust_setup(const job::AdjustSpec& spec, const cf::RunVariable& variable,
+                           const units::Conversion& conversion, const std::string& output_units,
+                           const std::string& place) {
   adjust::Setup out;
   const auto frequency = variable.frequency();
   if (frequency != cf::Frequency::daily && frequency != cf::Frequency::monthly) {
     throw Error(Failure::data, place, "adjustment needs daily or monthly means; this variable has neither");
   }
   out.daily = frequency == cf::Frequency::daily;
-  out.method = spec.method == job::Adjustment::mean_shift   ? adjust::Method::mean_shift
-               : spec.method == job::Adjustment::mean_ratio ? adjust::Method::mean_ratio
-                                                            : adjust::Method::quantile_mapping;
+  out.method = method_of(spec.method);
+  out.ratio_form = spec.form == job::Form::multiplicative;
+  out.window_years = spec.window_years;
+  out.window_step = spec.window_step;
+  out.wet_day = wet_day_of(spec, conversion, output_units, place);
   if (!out.daily && spec.season_given && spec.season != job::SeasonKind::month) {
     throw Error(Failure::data, place, "monthly values need season = \"month\"");
   }
   out.seasons = !out.daily || spec.season == job::SeasonKind::month ? calendar::Seasons::by_month()
                 : spec.season == job::SeasonKind::year              ? calendar::Seasons::by_year()
-                                                      : calendar::Seasons::moving(spec.window_days, spec.day_step);
+                                                       : calendar::Seasons::moving(spec.window_days, spec.day_step);
   out.quantiles = spec.quantiles;
   out.max_ratio = spec.max_ratio;
   out.carry_target = spec.carry == job::Carry::target;
@@ -252,14 +241,23 @@ std::array<double, 12> lapse_in(const job::TerrainSpec& terrain, const std::stri
 Calibration calibrate(const CalibrationNeeds& needs, Notices& notices) {
   const std::string place_text = fmt::format("field '{}', run '{}'", needs.field.name, needs.anchor_name);
   Calibration out;
-  out.setup = adjust_setup(needs.field.adjust, *needs.anchor.variable, place_text);
+  out.setup =
+      adjust_setup(needs.field.adjust, *needs.anchor.variable, needs.conversion, needs.output_units, place_text);
   out.steps = adjust::make_steps(out.setup, needs.anchor.variable->calendar(), step_dates(*needs.anchor.variable),
                                  needs.field.adjust.period, true, place_text);
-  if (needs.field.terrain) out.lapse = lapse_in(*needs.field.terrain, needs.output_units);
   const auto all = records(needs, notices);
   const auto placed = place(needs, all, notices, out.stations);
   if (placed.empty()) no_station(needs, out.stations);
-  const auto series = model_series(needs, placed, out.steps, out.lapse);
+  auto series = model_series(needs, placed);
+  if (needs.field.terrain) {
+    out.lapse = needs.field.terrain->fit ? fit_lapse(placed, series, out.steps, place_text, notices)
+                                         : lapse_in(*needs.field.terrain, needs.output_units);
+    for (std::size_t i = 0; i < placed.size(); ++i) {
+      for (std::size_t t = 0; t < series[i].size(); ++t) {
+        series[i][t] -= out.lapse[out.steps.month[t]] * placed[i].model_height;
+      }
+    }
+  }
   std::vector<Fitted> fitted;
   for (std::size_t i = 0; i < placed.size(); ++i) {
     const auto& record = *placed[i].record;
@@ -275,12 +273,13 @@ Calibration calibrate(const CalibrationNeeds& needs, Notices& notices) {
       continue;
     }
     out.period_mismatch = out.period_mismatch || fit.period_mismatch;
-    fitted.push_back({record.site.position, std::move(fit)});
+    fitted.push_back({&record, std::move(fit)});
   }
   if (fitted.empty()) no_station(needs, out.stations);
-  carry_over(needs, fitted, out);
-  if (out.setup.method == adjust::Method::quantile_mapping && out.shape_stations == 0) {
-    throw Error(Failure::data, place_text, "quantile-mapping needs stations with daily series; there are none");
+  carry_over(needs, fitted, out, notices);
+  if (out.setup.width() > 0 && out.shape_stations == 0) {
+    throw Error(Failure::data, place_text,
+                job::word(needs.field.adjust.method) + " needs stations with daily series; there are none");
   }
   if (out.period_mismatch) tell_mismatch(needs, notices);
   return out;

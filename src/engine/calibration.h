@@ -16,14 +16,15 @@ namespace windrow::engine {
 /// Everything a field's adjustment needs apart from the run it is applied to.
 struct Calibration {
   adjust::Setup setup;
-  adjust::Steps steps;                       ///< of the anchor run
+  adjust::Steps steps;  ///< of the anchor run
   reach::ReachMap level, shape;
+  reach::Drift drift;  ///< kriging-height: taken off station_level, added at the cells
   std::vector<double> station_level, station_shape;
   std::vector<double> mean_correction_level, mean_correction_shape;
-  std::array<double, 12> lapse{};            ///< output units per metre
-  std::vector<double> model_height;          ///< anchor's, on the mesh; empty without terrain
+  std::array<double, 12> lapse{};    ///< output units per metre
+  std::vector<double> model_height;  ///< anchor's, on the mesh; empty without terrain
   std::vector<report::StationRecord> stations;
-  bool period_mismatch = false;              ///< some station's years could not be matched
+  bool period_mismatch = false;  ///< some station's years could not be matched
   std::size_t level_stations = 0, shape_stations = 0;
 };
 
@@ -33,7 +34,7 @@ struct CalibrationNeeds {
   const Target& target;
   const Source& anchor;
   const std::string& anchor_name;
-  const units::Conversion& conversion;       ///< model units -> output units
+  const units::Conversion& conversion;  ///< model units -> output units
   const std::string& output_units;
   const FixedField* model_height = nullptr;  ///< on the anchor's grid, with terrain
 };
@@ -46,7 +47,9 @@ std::vector<calendar::Date> step_dates(const cf::RunVariable& variable);
 
 /// Method, seasons and limits of a field for a run of the given frequency. Error(data) for what is neither daily nor
 /// monthly.
-adjust::Setup adjust_setup(const job::AdjustSpec& spec, const cf::RunVariable& variable, const std::string& place);
+adjust::Setup adjust_setup(const job::AdjustSpec& spec, const cf::RunVariable& variable,
+                           const units::Conversion& conversion, const std::string& output_units,
+                           const std::string& place);
 
 /// Lapse rate of each month in output units per metre.
 std::array<double, 12> lapse_in(const job::TerrainSpec& terrain, const std::string& output_units);

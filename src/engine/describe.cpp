@@ -311,9 +311,7 @@ void Describer::add_globals(const report::Balance& balance) {
   set(out, "windrow_balance_largest_relative_residual", balance.all.relative);
   if (adjusted) {
     const auto& spec = job.fields[context_.field].adjust;
-    const char* transfer = context_.calibration->setup.method == adjust::Method::mean_shift   ? "mean-shift"
-                           : context_.calibration->setup.method == adjust::Method::mean_ratio ? "mean-ratio"
-                                                                                              : "quantile-mapping";
+    const std::string transfer = job::word(spec.method);
     set(out, "windrow_adjustment",
         fmt::format(
             "{}, calibrated on run {}, {} stations{}", transfer,

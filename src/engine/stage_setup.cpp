@@ -12,6 +12,8 @@
 namespace windrow::engine {
 namespace {
 
+constexpr std::uint64_t kDrawSeed = 20260101;
+
 // Beside what is resident when a stage starts: chunk caches of the libraries, the description of a product being
 // assembled (below, per cell) and the heap's own slack.
 constexpr std::int64_t kSlackBytes = 48 << 20;
@@ -21,9 +23,8 @@ constexpr double kBitsPerDigit = 3.321928094887362;
 
 bool same_edges(const std::vector<double>& a, const std::vector<double>& b) {
   constexpr double kSame_deg = 1e-5;  // float32 coordinates of the same grid differ by less
-  return a.size() == b.size() && std::equal(a.begin(), a.end(), b.begin(), [](double x, double y) {
-           return std::fabs(x - y) <= kSame_deg;
-         });
+  return a.size() == b.size() &&
+         std::equal(a.begin(), a.end(), b.begin(), [](double x, double y) { return std::fabs(x - y) <= kSame_deg; });
 }
 
 /// The same cells, as far as two files' rounding tells.
@@ -45,8 +46,9 @@ std::vector<double> land_fraction(Session& session, std::size_t run, const Sourc
   const auto field = read_fixed(path, "land_area_fraction", "1", session.target().earth, notices,
                                 hints_of(session.job.runs[run].grid));
   if (!same_grid(*field.mesh, *source.mesh)) {
-    throw Error(Failure::data, path, fmt::format("is on another grid ({}) than run '{}' ({})", field.mesh->describe(),
-                                                 session.job.runs[run].name, source.mesh->describe()));
+    throw Error(Failure::data, path,
+                fmt::format("is on another grid ({}) than run '{}' ({})", field.mesh->describe(),
+                            session.job.runs[run].name, source.mesh->describe()));
   }
   return field.values;
 }
@@ -54,8 +56,8 @@ std::vector<double> land_fraction(Session& session, std::size_t run, const Sourc
 /// Model height on the mesh: with the run's own weights where the grids are the same, so that cells with the same
 /// pairings have the same height too.
 std::vector<double> model_height_on_mesh(Session& session, std::size_t field, std::size_t run, const Source& source,
-                                         const linear_map::Weights& weights,
-                                         const linear_map::Extension* extension, Notices& notices) {
+                                         const linear_map::Weights& weights, const linear_map::Extension* extension,
+                                         Notices& notices) {
   const auto height = read_height(session.height_path(field, run), session.target().earth, notices,
                                   hints_of(session.job.runs[run].grid));
   if (!same_grid(*height.mesh, *source.mesh)) return onto_mesh(height, *session.target().mesh, session.maps());
@@ -134,7 +136,8 @@ pipeline::StepBins step_bins(const Scan& scan, const linear_map::LinearMap& map,
   // Clamped values, taken back to source units, may be larger than any source value.
   double limit = 0;
   if (math.has_range) {
-    limit = std::max(std::fabs((math.low - math.offset) / math.scale), std::fabs((math.high - math.offset) / math.scale));
+    limit =
+        std::max(std::fabs((math.low - math.offset) / math.scale), std::fabs((math.high - math.offset) / math.scale));
   }
   pipeline::StepBins out;
   for (const double largest : scan.largest) {
@@ -181,25 +184,41 @@ void set_adjustment(Session& session, SharedFits& fits, std::size_t field, std::
                   fmt::format("has another time step than its anchor run '{}'", session.job.runs[anchor].name));
     }
   }
-  adjust.run_steps = adjust.run_is_anchor
-                         ? adjust.anchor_steps
-                         : adjust::make_steps(adjust.setup, source.variable->calendar(), step_dates(*source.variable),
-                                              session.job.fields[field].adjust.period, false,
-                                              place_of(session, field, run));
+  adjust.run_steps =
+      adjust.run_is_anchor
+          ? adjust.anchor_steps
+          : adjust::make_steps(adjust.setup, source.variable->calendar(), step_dates(*source.variable),
+                               session.job.fields[field].adjust.period, false, place_of(session, field, run));
   adjust.level = &fit.calibration.level;
   adjust.shape = &fit.calibration.shape;
   adjust.station_level = fit.calibration.station_level;
   adjust.station_shape = fit.calibration.station_shape;
   adjust.mean_correction_level = fit.calibration.mean_correction_level;
   adjust.mean_correction_shape = fit.calibration.mean_correction_shape;
+  if (adjust.setup.wet_days() && adjust.setup.wet_day > 0) {
+    // One field for the whole job: the seed is fixed, so that every product of every family shares its days.
+    adjust.anchor_draws = std::make_shared<adjust::Draws>(kDrawSeed, adjust.anchor_steps.date);
+    adjust.run_draws =
+        adjust.run_is_anchor ? adjust.anchor_draws : std::make_shared<adjust::Draws>(kDrawSeed, adjust.run_steps.date);
+    const auto& mesh = *session.target().mesh;
+    for (std::size_t i = 0; i < mesh.size(); ++i) adjust.cell_centre.push_back(mesh.centre(i));
+  }
+  if (fit.calibration.drift.used) {
+    adjust.drift_slope = fit.calibration.drift.slope;
+    for (const double height : fits.cell_height(session)) {
+      adjust.drift_height.push_back(reach::drift_height(fit.calibration.drift, height));
+    }
+  }
   adjust.missing_beyond = session.job.reach.beyond == job::Beyond::missing;
   adjust.terrain = session.job.fields[field].terrain.has_value();
   if (!adjust.terrain) return;
   adjust.lapse = fit.calibration.lapse;
   adjust.cell_height = fits.cell_height(session);
-  adjust.model_height = model_height_on_mesh(session, field, run, source, out.weights, out.regridding.extension.get(), notices);
+  adjust.model_height =
+      model_height_on_mesh(session, field, run, source, out.weights, out.regridding.extension.get(), notices);
   if (!adjust.run_is_anchor) {
-    adjust.anchor_model_height = model_height_on_mesh(session, field, anchor, source, out.weights, out.regridding.extension.get(), notices);
+    adjust.anchor_model_height =
+        model_height_on_mesh(session, field, anchor, source, out.weights, out.regridding.extension.get(), notices);
   }
 }
 
@@ -207,8 +226,8 @@ std::vector<std::uint32_t> value_columns(const std::vector<std::uint32_t>& colum
   return {columns.begin(), std::lower_bound(columns.begin(), columns.end(), map.value_columns)};
 }
 
-/// Conservative methods balance with their own map; sampled fields are compared with what overlaps the mesh. Vectors and
-/// points have no integral.
+/// Conservative methods balance with their own map; sampled fields are compared with what overlaps the mesh. Vectors
+/// and points have no integral.
 void scan(Session& session, StageSetup& out, std::vector<std::uint32_t> columns) {
   const auto& context = *out.context;
   std::vector<double> weight(out.map->columns, 0.0);
@@ -216,13 +235,25 @@ void scan(Session& session, StageSetup& out, std::vector<std::uint32_t> columns)
   if (scalar && out.regridding.keeps_integrals) {
     weight = column_weights(*out.map, out.fraction);
   } else if (scalar && context.target.mesh->has_area() && context.source.mesh->has_area()) {
-    const auto overlap = session.maps().conservative(*context.source.mesh, *context.target.mesh,
-                                                     linear_map::Quantity::mean);
+    const auto overlap =
+        session.maps().conservative(*context.source.mesh, *context.target.mesh, linear_map::Quantity::mean);
     weight = column_weights(*overlap, {});
     columns.insert(columns.end(), overlap->column.begin(), overlap->column.end());
     columns = sorted_unique(std::move(columns));
   }
   out.scan = scan_source(*out.run_readers.top(), columns, weight, context.source.variable->time().size());
+}
+
+/// What a worker holds of one row's distributions: tables, own windows' samples or nodes, a number or two a step.
+std::size_t adjustment_bytes(const pipeline::AdjustInput& adjust) {
+  const auto quantiles = static_cast<std::size_t>(adjust.setup.quantiles);
+  const std::size_t groups = adjust.run_steps.window_years.size() * adjust.seasons();
+  std::size_t numbers = adjust.seasons() * quantiles * 6 + groups * quantiles;
+  if (adjust.setup.wet_days()) {
+    numbers += adjust.anchor_steps.sample.step.size() + adjust.run_steps.window_sample.step.size() +
+               2 * adjust.run_steps.date.size();
+  }
+  return 8 * numbers;
 }
 
 void plan_stage(Session& session, StageSetup& out, const std::string& place) {
@@ -236,7 +267,7 @@ void plan_stage(Session& session, StageSetup& out, const std::string& place) {
   if (out.calibration != nullptr) {
     needs.anchor_steps = out.adjust.anchor_steps.month.size();
     needs.run_is_anchor = out.adjust.run_is_anchor;
-    needs.table_bytes = out.adjust.seasons() * static_cast<std::size_t>(out.adjust.setup.quantiles) * 8 * 6;
+    needs.table_bytes = adjustment_bytes(out.adjust);
   }
   for (const auto& product : input.products) {
     needs.products.push_back(product.span);
@@ -244,8 +275,8 @@ void plan_stage(Session& session, StageSetup& out, const std::string& place) {
   }
   needs.block_columns = columns_by_block(input);
   needs.memory = memory_ceiling(session.job);
-  needs.resident = os::current_memory() + kSlackBytes +
-                   static_cast<std::int64_t>(input.ny * input.nx) * kAssemblyBytesPerCell;
+  needs.resident =
+      os::current_memory() + kSlackBytes + static_cast<std::int64_t>(input.ny * input.nx) * kAssemblyBytesPerCell;
   needs.threads = thread_count(session);
   out.stage = plan::make_stage(needs, place);
 }
@@ -256,8 +287,8 @@ plan::Chunk chunk_of(const Session& session, const Target& target, const Source&
             std::min(static_cast<std::size_t>((*tile)[2]), target.nx)};
   }
   const auto frequency = source.variable->frequency();
-  return plan::automatic_chunk({target.ny, target.nx, adjusted, frequency == cf::Frequency::monthly,
-                                frequency == cf::Frequency::fixed});
+  return plan::automatic_chunk(
+      {target.ny, target.nx, adjusted, frequency == cf::Frequency::monthly, frequency == cf::Frequency::fixed});
 }
 
 }  // namespace
@@ -327,16 +358,27 @@ std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size
   out->map = std::move(regridded.map);
   out->run_readers = std::move(regridded.readers);
   if (out->map->pairings() == 0) {
-    throw Error(Failure::data, place, fmt::format("the mesh lies outside the model grid ({})",
-                                                  source.mesh->describe()));
+    throw Error(Failure::data, place,
+                fmt::format("the mesh lies outside the model grid ({})", source.mesh->describe()));
   }
   out->fraction = land_fraction(session, run, source, notices);
   out->weights = linear_map::make_weights(*out->map, out->fraction);
   out->weights.categories = out->regridding.categories;
   if (non_negative(spec, conversion.affine)) out->weights.not_below = 0;
-  out->context = std::make_unique<StageContext>(StageContext{session, field, run, source, target, out->weights,
-                                                             out->regridding, out->scan, nullptr, {}, conversion, units,
-                                                             std::move(products), {}});
+  out->context = std::make_unique<StageContext>(StageContext{session,
+                                                             field,
+                                                             run,
+                                                             source,
+                                                             target,
+                                                             out->weights,
+                                                             out->regridding,
+                                                             out->scan,
+                                                             nullptr,
+                                                             {},
+                                                             conversion,
+                                                             units,
+                                                             std::move(products),
+                                                             {}});
   auto& context = *out->context;
   auto& input = context.input;
   if (session.adjusted(field)) {
@@ -357,8 +399,8 @@ std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size
   input.level = session.job.output.deflate ? session.job.output.level : 0;
   input.bins = step_bins(out->scan, *out->map, input.field);
   for (const auto& product : context.products) {
-    input.products.push_back({product.key_digest, product.span,
-                              out->scan.mask_varies(product.span.t0, product.span.t1)});
+    input.products.push_back(
+        {product.key_digest, product.span, out->scan.mask_varies(product.span.t0, product.span.t1)});
   }
   context.notices = session.notices(field, run);
   for (const auto& notice : notices.list()) context.notices.push_back(notice);

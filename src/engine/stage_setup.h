@@ -33,16 +33,16 @@ class SharedFits {
 /// Everything of a stage; members refer to one another, so it stays where it is made.
 struct StageSetup {
   Regridding regridding;
-  MapPtr map;                                ///< the regridding's, or made from it: vectors, masked cells
+  MapPtr map;  ///< the regridding's, or made from it: vectors, masked cells
   ReaderSet run_readers, anchor_readers;
-  std::vector<double> fraction;              ///< land fraction of every source cell; empty: none
+  std::vector<double> fraction;  ///< land fraction of every source cell; empty: none
   linear_map::Weights weights;
   Scan scan;
   const Calibration* calibration = nullptr;
   std::unique_ptr<StageContext> context;
   pipeline::AdjustInput adjust;
   plan::Stage stage;
-  const Source* anchor = nullptr;            ///< when it is another run
+  const Source* anchor = nullptr;  ///< when it is another run
 };
 
 /// Error(data) when mesh and source do not meet, units do not convert, grids of fixed fields differ... `notices` takes

@@ -67,6 +67,9 @@ void check_fields(const Tables& tables, const JobSpec& job) {
     // Towns bring the elevations of their table of sites.
     if (field.terrain && job.mesh.height.empty() && job.mesh.kind != MeshKind::towns)
       table.fail("terrain", "[field.terrain] needs the mesh's heights; expected 'height' in [mesh]");
+    if (field.adjust.method != Adjustment::none && job.reach.method == ReachMethod::kriging_height &&
+        job.mesh.height.empty() && job.mesh.kind != MeshKind::towns)
+      table.fail("adjust", "reach method \"kriging-height\" needs the mesh's heights; expected 'height' in [mesh]");
     const bool land =
         std::any_of(job.runs.begin(), job.runs.end(), [](const RunSpec& run) { return !run.land_fraction.empty(); });
     if (field.min_land > 0 && !land)

@@ -9,8 +9,8 @@ namespace windrow::job {
 namespace {
 
 const Keys kAdjustKeys{{"method", "form", "observed", "period", "season", "day_step", "quantiles", "max_ratio", "tails",
-                        "carry", "period_mismatch"},
-                       {"window", "window_step", "wet_day"}};
+                        "carry", "period_mismatch", "window", "window_step", "wet_day"},
+                       {}};
 const Keys kTerrainKeys{{"lapse", "model_height"}, {}};
 
 calendar::Date date(const Table& table, const Value& written) {
@@ -75,27 +75,71 @@ void read_season(const Table& table, AdjustSpec& adjust) {
   }
 }
 
+/// The form a method has by itself; nothing where it has both.
+std::optional<Form> form_of(Adjustment method) {
+  switch (method) {
+    case Adjustment::mean_shift:
+    case Adjustment::variance_scaling:
+      return Form::additive;
+    case Adjustment::mean_ratio:
+    case Adjustment::gamma_mapping:
+      return Form::multiplicative;
+    default:
+      return std::nullopt;
+  }
+}
+
 void read_form(const Table& table, AdjustSpec& adjust) {
   const bool form_given = table.has("form");
   adjust.form = table.word<Form>("form", {{{"additive", Form::additive}, {"multiplicative", Form::multiplicative}}, {}},
                                  Form::additive);
-  const Adjustment natural =
-      adjust.form == Form::multiplicative ? Adjustment::mean_ratio : Adjustment::quantile_mapping;
-  adjust.method = table.word<Adjustment>(
-      "method",
-      {{{"none", Adjustment::none},
-        {"mean-shift", Adjustment::mean_shift},
-        {"mean-ratio", Adjustment::mean_ratio},
-        {"quantile-mapping", Adjustment::quantile_mapping}},
-       {"variance-scaling", "quantile-delta-mapping", "detrended-quantile-mapping", "gamma-mapping"}},
-      natural);
+  adjust.method = table.word<Adjustment>("method",
+                                         {{{"none", Adjustment::none},
+                                           {"mean-shift", Adjustment::mean_shift},
+                                           {"mean-ratio", Adjustment::mean_ratio},
+                                           {"variance-scaling", Adjustment::variance_scaling},
+                                           {"quantile-mapping", Adjustment::quantile_mapping},
+                                           {"detrended-quantile-mapping", Adjustment::detrended_quantile_mapping},
+                                           {"quantile-delta-mapping", Adjustment::quantile_delta_mapping},
+                                           {"gamma-mapping", Adjustment::gamma_mapping}},
+                                          {}},
+                                         Adjustment::quantile_delta_mapping);
   if (adjust.method == Adjustment::none) return;
-  const Form goes_with = adjust.method == Adjustment::mean_ratio ? Form::multiplicative : Form::additive;
-  if (form_given && adjust.form != goes_with)
-    table.fail("form", fmt::format("method '{}' does not go with form '{}' in this version; expected '{}'",
-                                   table.text("method", ""), table.text("form", ""),
-                                   goes_with == Form::additive ? "additive" : "multiplicative"));
-  adjust.form = goes_with;
+  const std::optional<Form> natural = form_of(adjust.method);
+  if (form_given && natural && adjust.form != *natural)
+    table.fail("form", fmt::format("method '{}' does not go with form '{}'; expected '{}'", table.text("method", ""),
+                                   table.text("form", ""), *natural == Form::additive ? "additive" : "multiplicative"));
+  if (natural) adjust.form = *natural;
+}
+
+void read_windows(const Table& table, AdjustSpec& adjust) {
+  const auto years = [&](const char* key, int fallback) {
+    const auto written = table.text(key);
+    if (!written) return fallback;
+    const std::optional<int> value = text::parse_years(*written);
+    if (!value || *value < 1 || *value > 500)
+      table.fail(key, fmt::format("'{}' is no number of years; expected one such as \"{} years\"", printable(*written),
+                                  fallback));
+    return *value;
+  };
+  adjust.window_years = years("window", adjust.window_years);
+  adjust.window_step = years("window_step", adjust.window_step);
+  if (adjust.window_step > adjust.window_years)
+    table.fail(table.has("window_step") ? "window_step" : "window",
+               fmt::format("a window of {} years stepped by {}; expected a step of at most the window",
+                           adjust.window_years, adjust.window_step));
+}
+
+/// In the field's units; those of the source are not known here, so a field without units keeps what is written.
+void read_wet_day(const Table& table, AdjustSpec& adjust) {
+  const auto written = table.text("wet_day");
+  if (!written) return;
+  if (adjust.form != Form::multiplicative) table.fail("wet_day", "'wet_day' goes with form = \"multiplicative\"");
+  const auto quantity = text::parse_quantity(*written);
+  if (!quantity || quantity->second.empty() || !(quantity->first >= 0))
+    table.fail("wet_day",
+               fmt::format("'{}' is no wet-day threshold; expected one such as \"1 mm/day\"", printable(*written)));
+  adjust.wet_day = *quantity;
 }
 
 // Units of one degree of height: those of the field (or K) over a metre. A lapse is a difference, so an offset of the
@@ -115,11 +159,9 @@ double lapse_per_metre(const Table& table, double value, const std::string& unit
 std::array<double, 12> lapse(const Table& table, const FieldSpec& field) {
   std::array<double, 12> out{};
   const Value* value = table.find("lapse");
-  if (value == nullptr) table.missing("lapse", "a lapse such as \"-6.5 K/km\", or 12 of them");
+  if (value == nullptr) table.missing("lapse", "a lapse such as \"-6.5 K/km\", 12 of them, or \"fit\"");
   const auto one = [&](const Value& written) {
     if (written.kind == Value::Kind::text) {
-      if (written.text == "fit")
-        table.document().fail(written.at, "'fit' is not in this version; expected a lapse such as \"-6.5 K/km\"");
       const auto quantity = text::parse_quantity(written.text);
       if (quantity && !quantity->second.empty())
         return lapse_per_metre(table, quantity->first, quantity->second, field, written.at);
@@ -160,6 +202,8 @@ AdjustSpec read_adjust(const Table& field_table, const FieldSpec& field) {
                                         adjust.observed.size()));
   adjust.period = period(*table);
   read_season(*table, adjust);
+  read_windows(*table, adjust);
+  read_wet_day(*table, adjust);
   adjust.quantiles = table->whole("quantiles", adjust.quantiles, 2, 1000);
   adjust.max_ratio = table->number("max_ratio", adjust.max_ratio, 1, 1e6);
   table->word<int>("tails", {{{"constant", 0}}, {}}, 0);
@@ -174,7 +218,11 @@ std::optional<TerrainSpec> read_terrain(const Table& field_table, const FieldSpe
   const std::optional<Table> table = field_table.table("terrain", "[field.terrain]", kTerrainKeys);
   if (!table) return std::nullopt;
   TerrainSpec terrain;
-  terrain.lapse_per_m = lapse(*table, field);
+  terrain.fit = table->find("lapse") != nullptr && table->find("lapse")->kind == Value::Kind::text &&
+                table->find("lapse")->text == "fit";
+  if (terrain.fit && field.adjust.method == Adjustment::none)
+    table->fail("lapse", "a lapse is fitted to stations; expected [field.adjust], or a lapse such as \"-6.5 K/km\"");
+  if (!terrain.fit) terrain.lapse_per_m = lapse(*table, field);
   if (!table->has("model_height")) table->missing("model_height", "the model's own heights (a NetCDF file)");
   terrain.model_height = table->path("model_height");
   return terrain;

@@ -88,10 +88,10 @@ FieldSpec read_field(const Table& table) {
   if (field.total && field.adjust.method != Adjustment::none)
     table.fail("quantity",
                "a cell sum cannot be adjusted to stations, which measure at points; expected quantity \"mean\"");
-  if (field.terrain && field.adjust.method == Adjustment::mean_ratio)
+  if (field.terrain && field.adjust.method != Adjustment::none && field.adjust.form == Form::multiplicative)
     table.fail("terrain",
-               "[field.terrain] adds to the values and does not go with the ratios of 'mean-ratio'; expected "
-               "mean-shift or quantile-mapping, or no [field.terrain]");
+               "[field.terrain] adds to the values and does not go with multiplicative corrections; expected "
+               "form = \"additive\", or no [field.terrain]");
   return field;
 }
 

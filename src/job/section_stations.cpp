@@ -1,4 +1,4 @@
-// [stations] and [reach]: what was observed where, and how far it counts.
+// [stations]: what was observed where.
 #include <fmt/format.h>
 
 #include <algorithm>
@@ -13,7 +13,6 @@ namespace windrow::job {
 const Keys kStationKeys{
     {"sites", "daily", "monthly", "normals", "columns", "units", "normals_period", "min_years", "day", "undercatch"},
     {}};
-const Keys kReachKeys{{"method", "radius", "power", "beyond", "neighbours"}, {"variogram"}};
 
 namespace {
 
@@ -73,22 +72,6 @@ std::optional<std::pair<int, int>> normals_period(const Table& table) {
   return std::pair{static_cast<int>((*years)[0]), static_cast<int>((*years)[1])};
 }
 
-double radius_m(const Table& table, double otherwise) {
-  const std::optional<std::string> written = table.text("radius");
-  if (!written) return otherwise;
-  std::optional<double> metres;
-  if (const auto quantity = text::parse_quantity(*written)) {
-    try {
-      metres = units::conversion(quantity->second, "m", "", table.title()).affine(quantity->first);
-    } catch (const Error&) {
-      metres.reset();
-    }
-  }
-  if (!metres || !(*metres > 0) || *metres > 1e8)
-    table.fail("radius", fmt::format("'{}' is no distance; expected one such as \"300 km\"", printable(*written)));
-  return *metres;
-}
-
 }  // namespace
 
 StationSpec read_stations(const Table& table) {
@@ -110,21 +93,6 @@ StationSpec read_stations(const Table& table) {
   if (table.text("undercatch", "none") != "none")
     table.fail("undercatch", "a factor for 'undercatch' is not in this version; expected none");
   return stations;
-}
-
-ReachSpec read_reach(const Table& table) {
-  ReachSpec reach;
-  reach.method =
-      table.word<ReachMethod>("method",
-                              {{{"nearest", ReachMethod::nearest}, {"inverse-distance", ReachMethod::inverse_distance}},
-                               {"kriging", "kriging-height"}},
-                              reach.method);
-  reach.radius_m = radius_m(table, reach.radius_m);
-  reach.power = table.number("power", reach.power, 0.1, 16);
-  reach.beyond = table.word<Beyond>(
-      "beyond", {{{"taper", Beyond::taper}, {"raw", Beyond::raw}, {"missing", Beyond::missing}}, {}}, reach.beyond);
-  reach.neighbours = table.whole("neighbours", reach.neighbours, 1, 10000);
-  return reach;
 }
 
 }  // namespace windrow::job

@@ -63,6 +63,8 @@ std::string joined_pairs(const Map& map) {
   return or_none(out);
 }
 
+}  // namespace
+
 std::string word(Adjustment method) {
   switch (method) {
     case Adjustment::none:
@@ -71,11 +73,21 @@ std::string word(Adjustment method) {
       return "mean-shift";
     case Adjustment::mean_ratio:
       return "mean-ratio";
+    case Adjustment::variance_scaling:
+      return "variance-scaling";
     case Adjustment::quantile_mapping:
       return "quantile-mapping";
+    case Adjustment::detrended_quantile_mapping:
+      return "detrended-quantile-mapping";
+    case Adjustment::quantile_delta_mapping:
+      return "quantile-delta-mapping";
+    case Adjustment::gamma_mapping:
+      return "gamma-mapping";
   }
   return {};
 }
+
+namespace {
 
 std::string season_text(const AdjustSpec& adjust) {
   std::string text = adjust.season == SeasonKind::month  ? "month"
@@ -117,11 +129,23 @@ void add_adjust(List& list, const std::string& prefix, const AdjustSpec& adjust)
                                             : "all of the anchor run");
   list.add(prefix + "season", season_text(adjust));
   if (adjust.season == SeasonKind::moving) list.add(prefix + "day_step", adjust.day_step);
-  if (adjust.method == Adjustment::quantile_mapping) {
+  if (adjust.method >= Adjustment::quantile_mapping) {
     list.add(prefix + "quantiles", adjust.quantiles);
     list.add(prefix + "tails", "constant");
   }
-  if (adjust.method == Adjustment::mean_ratio) list.add(prefix + "max_ratio", adjust.max_ratio);
+  if (adjust.method == Adjustment::quantile_delta_mapping || adjust.method == Adjustment::detrended_quantile_mapping) {
+    list.add(prefix + "window", fmt::format("{} years", adjust.window_years));
+    list.add(prefix + "window_step", fmt::format("{} years", adjust.window_step));
+  }
+  if (adjust.form == Form::multiplicative) {
+    list.add(prefix + "wet_day", adjust.wet_day
+                                     ? fmt::format("{:.12g} {}", adjust.wet_day->first, adjust.wet_day->second)
+                                 : adjust.method == Adjustment::mean_ratio ? "none"
+                                                                           : "1 mm/day (precipitation), none (others)");
+  }
+  if (adjust.form == Form::multiplicative || adjust.method == Adjustment::variance_scaling) {
+    list.add(prefix + "max_ratio", adjust.max_ratio);
+  }
   list.add(prefix + "carry", adjust.carry == Carry::target ? "target" : "correction");
   list.add(prefix + "period_mismatch", adjust.accept_period_mismatch ? "accept" : "refuse");
 }
@@ -133,7 +157,8 @@ void add_terrain(List& list, const std::string& prefix, const TerrainSpec& terra
     lapse += fmt::format("{}{:.12g}", lapse.empty() ? "" : ", ", value);
     constant = constant && value == terrain.lapse_per_m[0];
   }
-  list.add(prefix + "lapse", (constant ? fmt::format("{:.12g}", terrain.lapse_per_m[0]) : lapse) + " per metre");
+  list.add(prefix + "lapse",
+           terrain.fit ? "fit" : (constant ? fmt::format("{:.12g}", terrain.lapse_per_m[0]) : lapse) + " per metre");
   list.add_path(prefix + "model_height", terrain.model_height);
 }
 
@@ -221,9 +246,21 @@ void add_stations(List& list, const StationSpec& stations) {
 
 void add_reach(List& list, const ReachSpec& reach) {
   const bool nearest = reach.method == ReachMethod::nearest;
-  list.add("reach.method", nearest ? "nearest" : "inverse-distance");
+  list.add("reach.method", nearest                                         ? "nearest"
+                           : reach.method == ReachMethod::inverse_distance ? "inverse-distance"
+                           : reach.method == ReachMethod::kriging          ? "kriging"
+                                                                           : "kriging-height");
   list.add("reach.radius", fmt::format("{} m", reach.radius_m));
-  if (!nearest) list.add("reach.power", reach.power);
+  if (reach.method == ReachMethod::inverse_distance) list.add("reach.power", reach.power);
+  if (reach.kriges()) {
+    const VariogramSpec& v = reach.variogram;
+    const char* model = v.model == VariogramModel::exponential ? "exponential"
+                        : v.model == VariogramModel::spherical ? "spherical"
+                                                               : "gaussian";
+    list.add("reach.variogram",
+             v.fit ? fmt::format("fit, {}", model)
+                   : fmt::format("{}, nugget {:.12g}, sill {:.12g}, range {} m", model, v.nugget, v.sill, v.range_m));
+  }
   list.add("reach.beyond", reach.beyond == Beyond::taper ? "taper" : reach.beyond == Beyond::raw ? "raw" : "missing");
   if (!nearest) list.add("reach.neighbours", reach.neighbours);
 }

@@ -66,21 +66,26 @@ variable = "tas"              # name in the model files
 constexpr const char* kAdjust =
     R"toml(# Bias adjustment to stations; leave it out for regridding only. Needs [stations].
 #[field.adjust]
-#method   = "quantile-mapping"    # none | mean-shift | mean-ratio | quantile-mapping
-#form     = "additive"        # additive | multiplicative (mean-ratio)
+#method   = "quantile-delta-mapping"   # none | mean-shift | mean-ratio | variance-scaling | quantile-mapping |
+#                             # detrended-quantile-mapping | quantile-delta-mapping | gamma-mapping
+#form     = "additive"        # additive | multiplicative (rain, wind speed, radiation)
 #observed = "tas"             # station column; default: the field's name. Two are averaged: ["tmin", "tmax"]
 #period   = ["1981-01-01", "2010-12-31"]   # calibration period; default: all of the anchor run
 #season   = "31 days"         # "31 days" (moving window, default for daily data) | month (for monthly data) | year
 #day_step = 5                 # days between the centres of those windows
-#quantiles = 100              # of quantile-mapping
-#max_ratio = 10               # cap of a mean-ratio correction
+#window   = "30 years"        # quantile-delta- and detrended-quantile-mapping: the run's own window,
+#window_step = "10 years"     # stepped by so much
+#quantiles = 100              # of the quantile methods
+# With form = "multiplicative" also:
+#   wet_day = "1 mm/day"      # from here on a day is wet; default for precipitation with the quantile methods
+#max_ratio = 10               # cap of a multiplicative correction, and of the factor of variance-scaling
 #tails    = "constant"        # beyond the calibrated range: the correction of the outermost quantile
 #carry    = "target"          # target | correction: what is carried from stations to cells
 #period_mismatch = "refuse"   # refuse | accept: station and model years that cannot be matched
 
 # Height adjustment before the transfer. Needs [mesh] height; towns bring their own.
 #[field.terrain]
-#lapse    = "-6.5 K/km"       # or 12 monthly values
+#lapse    = "-6.5 K/km"       # or 12 monthly values, or "fit": from the stations
 #model_height = "in/orog.nc"
 )toml";
 
@@ -136,11 +141,14 @@ constexpr const char* kStations = R"toml(#[stations]
 
 # How a station's correction reaches the cells between stations.
 #[reach]
-#method   = "inverse-distance"    # nearest | inverse-distance
+#method   = "inverse-distance"    # nearest | inverse-distance | kriging | kriging-height (elevation as drift)
 #radius   = "300 km"
 #power    = 2                 # of the distance
 #beyond   = "taper"           # cells farther from any station: taper (to the mean correction) | raw | missing
 #neighbours = 32              # up to 500 stations all are used
+# With method = "kriging" or "kriging-height" also:
+#   variogram = "fit"         # or { model = "exponential", nugget = 0.1, sill = 1.0, range = "120 km" };
+#                             # models: exponential | spherical | gaussian; a model alone is fitted
 )toml";
 
 constexpr const char* kOutput = R"toml([output]

@@ -3,6 +3,7 @@
 #include <algorithm>
 #include <cmath>
 #include <map>
+#include <optional>
 #include <string>
 
 #include "lanes.h"
@@ -57,6 +58,7 @@ struct ColumnWorker::State {
   adjust::RowClimate climate;
   adjust::Ranks ranks;
   adjust::Correction correction;
+  std::optional<adjust::CellDraws> anchor_draws, run_draws;
   std::vector<double> level, shape, out;
   std::size_t first = 0, steps = 0;  ///< steps of the segment on the run's axis
   std::vector<float> values;         ///< [cell][step of the segment]
@@ -69,10 +71,8 @@ struct ColumnWorker::State {
   bool correct_cell(std::size_t mesh_row);
   void make_cell(std::size_t mesh_row, std::size_t cell, const std::vector<plan::Piece>& pieces);
   void count_cell(std::size_t mesh_row, std::size_t cell, bool adjusted, const plan::Piece& piece, TileStats& tile);
-  void write(const plan::Piece& piece, TileStats& tile, std::uint32_t block_index,
-             const linear_map::SourceBlock& run);
-  void write_cover(const plan::Piece& piece, const Block& block, const TileId& id,
-                   const linear_map::SourceBlock& run);
+  void write(const plan::Piece& piece, TileStats& tile, std::uint32_t block_index, const linear_map::SourceBlock& run);
+  void write_cover(const plan::Piece& piece, const Block& block, const TileId& id, const linear_map::SourceBlock& run);
 };
 
 ColumnWorker::ColumnWorker(const StageInput& input, ChunkEncoder& data, ChunkEncoder& cover)
@@ -95,9 +95,7 @@ void ColumnWorker::State::prepare_row(std::size_t mesh_row, const linear_map::So
                     anchor_row);
     climate = adjust::fit_row(adjust.setup, adjust.anchor_steps, anchor_row.reduced);
   }
-  if (adjust.setup.method == adjust::Method::quantile_mapping) {
-    adjust::rank_series(adjust.setup, adjust.run_steps, climate, row.reduced, ranks);
-  }
+  adjust::rank_series(adjust.setup, adjust.run_steps, climate, row.reduced, ranks);
 }
 
 /// False when the cell cannot be adjusted (beyond reach and told to be missing).
@@ -110,16 +108,24 @@ bool ColumnWorker::State::correct_cell(std::size_t mesh_row) {
     target.fade_level = 1;
   }
   carry(adjust.level->map, mesh_row, adjust.station_level, seasons, level);
+  for (std::size_t s = 0; s < adjust.drift_slope.size(); ++s) {
+    level[s] += adjust.drift_slope[s] * adjust.drift_height[mesh_row];
+  }
   target.level = level;
   target.mean_correction_level = adjust.mean_correction_level;
-  if (adjust.setup.method == adjust::Method::quantile_mapping) {
-    carry(adjust.shape->map, mesh_row, adjust.station_shape, seasons * static_cast<std::size_t>(adjust.setup.quantiles),
-          shape);
+  if (adjust.setup.width() > 0) {
+    carry(adjust.shape->map, mesh_row, adjust.station_shape, seasons * adjust.setup.width(), shape);
     target.shape = shape;
     target.mean_correction_shape = adjust.mean_correction_shape;
     target.fade_shape = adjust.shape->fade[mesh_row];
   }
-  adjust::make_correction(adjust.setup, climate, target, correction);
+  if (adjust.anchor_draws) {
+    anchor_draws.emplace(*adjust.anchor_draws, adjust.cell_centre[mesh_row]);
+    run_draws.emplace(*adjust.run_draws, adjust.cell_centre[mesh_row]);
+  }
+  const RowSeries& calibration = adjust.run_is_anchor ? row : anchor_row;
+  adjust::make_correction(adjust.setup, adjust.anchor_steps, climate, calibration.reduced, target,
+                          anchor_draws ? &*anchor_draws : nullptr, correction);
   return true;
 }
 
@@ -133,8 +139,6 @@ void ColumnWorker::State::count_cell(std::size_t mesh_row, std::size_t cell, boo
   if (!land_ok) flags |= kTooLittleLand;
   if (input.weights->all_surface[mesh_row] != 0) flags |= kAllSurface;
   if (adjusted && adjust.level->fade[mesh_row] <= 0) flags |= kBeyondReach;
-  const bool ranked = adjusted && !ranks.node.empty();
-  const auto nodes = static_cast<std::uint16_t>(adjust.setup.quantiles - 2);
   for (std::size_t t = t0; t < t0 + count; ++t) {
     if (row.kept[t] == 0) {
       if (land_ok) flags |= kTooLittleCover;
@@ -143,9 +147,9 @@ void ColumnWorker::State::count_cell(std::size_t mesh_row, std::size_t cell, boo
         ++tile.count[kFilledValues];
       }
     }
-    if (ranked && (row.kept[t] != 0 || row.filled[t] != 0) && ranks.tail[t] != 0) {
+    if (adjusted && (row.kept[t] != 0 || row.filled[t] != 0) && ranks.tail[t] != 0) {
       flags |= kBeyondRange;
-      ++tile.count[ranks.node[t] == nodes ? kTailHigh : kTailLow];
+      ++tile.count[ranks.tail[t] == 2 ? kTailHigh : kTailLow];
     }
   }
   tile.flags[cell] = flags;
@@ -160,7 +164,8 @@ void ColumnWorker::State::make_cell(std::size_t mesh_row, std::size_t cell, cons
   const std::size_t run_steps = row.reduced.size();
   out.resize(run_steps);
   if (adjusted) {
-    adjust::evaluate(adjust.setup, adjust.run_steps, row.reduced, ranks, correction, out);
+    adjust::evaluate(adjust.setup, adjust.run_steps, row.reduced, ranks, correction, run_draws ? &*run_draws : nullptr,
+                     out);
   } else {
     std::fill(out.begin(), out.end(), std::nan(""));
   }

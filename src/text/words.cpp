@@ -126,12 +126,21 @@ std::optional<std::int64_t> parse_bytes(std::string_view text) {
   return static_cast<std::int64_t>(*bytes);
 }
 
-std::optional<int> parse_days(std::string_view text) {
-  static constexpr std::array<Factor, 2> kDays = {{{"day", 1}, {"days", 1}}};
-  const auto days = scaled(text, kDays);
-  if (!days || *days < 0 || *days > std::numeric_limits<int>::max() || *days != std::floor(*days)) return std::nullopt;
-  return static_cast<int>(*days);
+namespace {
+
+std::optional<int> whole_count(std::string_view text, const std::array<Factor, 2>& words) {
+  const auto count = scaled(text, words);
+  if (!count || *count < 0 || *count > std::numeric_limits<int>::max() || *count != std::floor(*count)) {
+    return std::nullopt;
+  }
+  return static_cast<int>(*count);
 }
+
+}  // namespace
+
+std::optional<int> parse_days(std::string_view text) { return whole_count(text, {{{"day", 1}, {"days", 1}}}); }
+
+std::optional<int> parse_years(std::string_view text) { return whole_count(text, {{{"year", 1}, {"years", 1}}}); }
 
 std::optional<double> parse_seconds(std::string_view text) {
   static constexpr std::array<Factor, 14> kTimes = {{{"s", 1},

@@ -249,7 +249,8 @@ def spread(c, monthly, ratio):
 
 def text_of(c):
     dump = lambda name, values: f"{name} {len(values)} " + " ".join(repr(float(v)) for v in values)
-    lines = [f"method {c['method']}", f"season {c['season']}", f"quantiles {c['quantiles']}",
+    lines = [f"method {c['method']}", f"form {c.get('form', 'additive')}", f"wet_day {c.get('wet_day', 0.0)}",
+             f"window {c.get('window', 30)}", f"window_step {c.get('window_step', 10)}", f"season {c['season']}", f"quantiles {c['quantiles']}",
              f"max_ratio {c['max_ratio']}", f"carry_target {int(c['carry_target'])}",
              f"daily_model {int(c['daily_model'])}", f"calendar {c['calendar']}", f"dates {len(c['dates'])}"]
     lines += ["%d %d %d" % d for d in c["dates"]]

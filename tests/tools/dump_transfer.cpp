@@ -1,5 +1,6 @@
 // Fits, carries and evaluates one transfer read from standard input, and prints every number: for
 // tests/reference/transfers.py, which writes the input and knows its order. Test use only.
+#include <algorithm>
 #include <cstdio>
 #include <exception>
 #include <iostream>
@@ -56,9 +57,21 @@ void print(const char* name, const std::vector<double>& values) {
 Setup read_setup() {
   Setup setup;
   const auto method = value<std::string>("method");
-  setup.method = method == "mean-shift"   ? Method::mean_shift
-                 : method == "mean-ratio" ? Method::mean_ratio
-                                          : Method::quantile_mapping;
+  const std::vector<std::pair<std::string, Method>> methods = {
+      {"mean-shift", Method::mean_shift},
+      {"mean-ratio", Method::mean_ratio},
+      {"variance-scaling", Method::variance_scaling},
+      {"quantile-mapping", Method::quantile_mapping},
+      {"detrended-quantile-mapping", Method::detrended_quantile_mapping},
+      {"quantile-delta-mapping", Method::quantile_delta_mapping},
+      {"gamma-mapping", Method::gamma_mapping}};
+  const auto named = std::find_if(methods.begin(), methods.end(), [&](const auto& m) { return m.first == method; });
+  if (named == methods.end()) throw std::runtime_error("unknown method '" + method + "'");
+  setup.method = named->second;
+  setup.ratio_form = value<std::string>("form") == "multiplicative";
+  setup.wet_day = value<double>("wet_day");
+  setup.window_years = value<int>("window");
+  setup.window_step = value<int>("window_step");
   const auto season = value<std::string>("season");
   setup.seasons = season == "month"  ? calendar::Seasons::by_month()
                   : season == "year" ? calendar::Seasons::by_year()
@@ -125,11 +138,13 @@ void run() {
                           fade_shape};
   const RowClimate climate = fit_row(setup, steps, cell);
   Correction correction;
-  make_correction(setup, climate, target, correction);
+  const Draws draws(1, steps.date);
+  const CellDraws at_cell(draws, {Angle::degrees(8.5), Angle::degrees(47.3)});
+  make_correction(setup, steps, climate, cell, target, &at_cell, correction);
   Ranks ranks;
-  if (setup.method == Method::quantile_mapping) rank_series(setup, steps, climate, series, ranks);
+  rank_series(setup, steps, climate, series, ranks);
   std::vector<double> out(series.size());
-  evaluate(setup, steps, series, ranks, correction, out);
+  evaluate(setup, steps, series, ranks, correction, &at_cell, out);
   std::printf("counts %d %d\n", correction.reordered, correction.capped);
   print("out", out);
 }

@@ -21,7 +21,7 @@ struct GridSpec {
 
 struct RunSpec {
   std::string name, family, forcing;
-  bool anchor = false;  ///< exactly one run a family has it (a family of one is its own anchor)
+  bool anchor = false;                ///< exactly one run a family has it (a family of one is its own anchor)
   std::vector<std::string> patterns;  ///< as written, absolute; globbed later
   std::string land_fraction;          ///< path or empty
   GridSpec grid;
@@ -30,19 +30,32 @@ struct RunSpec {
 enum class Method { conservative_1, conservative_2, conservative_smooth, bilinear, nearest, majority };
 enum class Pair { none, eastward, northward };
 enum class VectorAxes { east_north, mesh };
-enum class Adjustment { none, mean_shift, mean_ratio, quantile_mapping };
+enum class Adjustment {
+  none,
+  mean_shift,
+  mean_ratio,
+  variance_scaling,
+  quantile_mapping,
+  detrended_quantile_mapping,
+  quantile_delta_mapping,
+  gamma_mapping
+};
+/// The method as a job file names it.
+std::string word(Adjustment method);
 enum class Form { additive, multiplicative };
 enum class Carry { target, correction };
 enum class SeasonKind { month, year, moving };
 
 struct AdjustSpec {
   Adjustment method = Adjustment::none;
-  Form form = Form::additive;             ///< default: multiplicative for mean-ratio
-  std::vector<std::string> observed;      ///< one or two station columns
+  Form form = Form::additive;                                       ///< multiplicative for mean-ratio and gamma-mapping
+  std::vector<std::string> observed;                                ///< one or two station columns
   std::optional<std::pair<calendar::Date, calendar::Date>> period;  ///< default: the anchor run's whole period
   SeasonKind season = SeasonKind::moving;
-  bool season_given = false;              ///< monthly model data default to month
+  bool season_given = false;  ///< monthly model data default to month
   int window_days = 31, day_step = 5;
+  int window_years = 30, window_step = 10;                ///< the run's own windows
+  std::optional<std::pair<double, std::string>> wet_day;  ///< value and units; nothing: 1 mm/day for precipitation
   int quantiles = 100;
   double max_ratio = 10;
   Carry carry = Carry::target;
@@ -51,13 +64,14 @@ struct AdjustSpec {
 
 struct TerrainSpec {
   std::array<double, 12> lapse_per_m{};  ///< per metre, in K (or the field's units) — negative for cooling with height
+  bool fit = false;                      ///< lapse from the stations; then lapse_per_m is zero
   std::string model_height;              ///< path
 };
 
 struct FieldSpec {
   std::string variable, name, units;  ///< units empty: the source's
   Method method = Method::conservative_1;
-  Pair pair = Pair::none;                   ///< component of a tangent vector; its partner is the other field with a pair
+  Pair pair = Pair::none;  ///< component of a tangent vector; its partner is the other field with a pair
   VectorAxes axes = VectorAxes::east_north;  ///< what the product's components run along
   bool total = false;
   double min_cover = 0.5, min_land = 0;
@@ -75,7 +89,7 @@ enum class MeshKind { latlon, projected, raster, file, catchments, towns, faces 
 struct MeshSpec {
   std::string name;  ///< default "mesh"
   MeshKind kind = MeshKind::latlon;
-  AxisSpec x, y;     ///< lon, lat on latlon meshes; x, y on projected ones
+  AxisSpec x, y;  ///< lon, lat on latlon meshes; x, y on projected ones
   std::string crs;
   std::string source;          ///< template, from, polygons or sites: the file that holds the cells
   std::string variable;        ///< file: whose grid; empty: the only one
@@ -97,7 +111,13 @@ struct StationSpec {
   std::string day_note;  ///< text for the product's comment, from `day = {...}`
 };
 
-enum class ReachMethod { nearest, inverse_distance };
+enum class ReachMethod { nearest, inverse_distance, kriging, kriging_height };
+enum class VariogramModel { exponential, spherical, gaussian };
+struct VariogramSpec {
+  bool fit = true;
+  VariogramModel model = VariogramModel::exponential;
+  double nugget = 0, sill = 1, range_m = 300e3;  ///< where not fitted; sill: the total, nugget included
+};
 enum class Beyond { taper, raw, missing };
 struct ReachSpec {
   ReachMethod method = ReachMethod::inverse_distance;
@@ -105,6 +125,8 @@ struct ReachSpec {
   double power = 2;
   Beyond beyond = Beyond::taper;
   int neighbours = 32;
+  VariogramSpec variogram;
+  [[nodiscard]] bool kriges() const { return method == ReachMethod::kriging || method == ReachMethod::kriging_height; }
 };
 
 struct OutputSpec {
@@ -119,8 +141,8 @@ struct OutputSpec {
 };
 
 struct JobSpec {
-  std::string path;       ///< the job file
-  std::string text;       ///< its text, kept for provenance
+  std::string path;  ///< the job file
+  std::string text;  ///< its text, kept for provenance
   std::string title, version = "1";
   std::string workspace;  ///< default "work"
   std::optional<long long> memory_bytes;
@@ -156,7 +178,7 @@ enum class Effect { result, encoding, none };
 /// The settings one product depends on, without list indices ("field.units", "run.name", "anchor.files"), so that
 /// another run or field added to the job does not touch it: those whose effect is `least` or stronger. Stations and
 /// reach only for an adjusted field; the anchor run's where it is another run.
-std::vector<std::pair<std::string, std::string>> product_settings(const JobSpec& job, std::size_t field, std::size_t run,
-                                                                  Effect least);
+std::vector<std::pair<std::string, std::string>> product_settings(const JobSpec& job, std::size_t field,
+                                                                  std::size_t run, Effect least);
 
 }  // namespace windrow::job

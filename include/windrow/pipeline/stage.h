@@ -4,6 +4,7 @@
 #include <array>
 #include <cstdint>
 #include <functional>
+#include <memory>
 #include <span>
 #include <vector>
 
@@ -31,8 +32,8 @@ struct FieldMath {
   double scale = 1, offset = 0;  ///< source units -> output units
   double min_cover = 0.5, min_land = 0;
   bool has_range = false;
-  double low = 0, high = 0;      ///< physical range in output units
-  int keep_bits = 0;             ///< > 0: explicit mantissa bits kept (bit rounding)
+  double low = 0, high = 0;  ///< physical range in output units
+  int keep_bits = 0;         ///< > 0: explicit mantissa bits kept (bit rounding)
   float missing = 9.96920997e36F;
 };
 
@@ -49,18 +50,22 @@ struct AdjustInput {
   adjust::Steps anchor_steps, run_steps;
   bool run_is_anchor = true;
   const reach::ReachMap* level = nullptr;
-  const reach::ReachMap* shape = nullptr;        ///< quantile-mapping only
-  std::span<const double> station_level;         ///< [level station * seasons]: targets (or corrections)
-  std::span<const double> station_shape;         ///< [shape station * seasons * quantiles]
-  std::span<const double> mean_correction_level; ///< [seasons], for cells beyond reach
-  std::span<const double> mean_correction_shape; ///< [seasons * quantiles]
-  bool missing_beyond = false;               ///< cells beyond reach become missing
+  const reach::ReachMap* shape = nullptr;         ///< where the setup's width is not 0
+  std::span<const double> station_level;          ///< [level station * seasons]: targets (or corrections)
+  std::span<const double> station_shape;          ///< [shape station * seasons * width]
+  std::span<const double> mean_correction_level;  ///< [seasons], for cells beyond reach
+  std::span<const double> mean_correction_shape;  ///< [seasons * width]
+  std::span<const double> drift_slope;            ///< [seasons], kriging-height; empty without
+  std::vector<double> drift_height;               ///< one a mesh cell, with a drift
+  bool missing_beyond = false;                    ///< cells beyond reach become missing
   bool terrain = false;
-  std::array<double, 12> lapse{};            ///< output units per metre
-  std::vector<double> model_height;          ///< one a mesh cell: model height carried to the mesh
+  std::array<double, 12> lapse{};    ///< output units per metre
+  std::vector<double> model_height;  ///< one a mesh cell: model height carried to the mesh
   std::vector<double> anchor_model_height;
-  std::vector<double> cell_height;           ///< one a mesh cell
-  [[nodiscard]] std::size_t seasons() const { return static_cast<std::size_t>(setup.seasons.count()); }
+  std::vector<double> cell_height;                               ///< one a mesh cell
+  std::shared_ptr<const adjust::Draws> anchor_draws, run_draws;  ///< where days may be made wet, else null
+  std::vector<GeoPoint> cell_centre;                             ///< one a mesh cell, with draws
+  [[nodiscard]] std::size_t seasons() const { return setup.season_count(); }
 };
 
 struct StageProduct {
@@ -69,8 +74,8 @@ struct StageProduct {
   bool cover_varies = false;  ///< a second variable, cover, for every chunk
 };
 
-/// Rounding constants of the exact integrals, one pair a step of the run: they follow the step's largest value alone, so
-/// that appended months change nothing of earlier sums.
+/// Rounding constants of the exact integrals, one pair a step of the run: they follow the step's largest value alone,
+/// so that appended months change nothing of earlier sums.
 struct StepBins {
   std::vector<double> m1, m2;
   [[nodiscard]] BinnedSum::Bins at(std::size_t step) const { return {m1[step], m2[step]}; }
@@ -82,16 +87,16 @@ struct StageInput {
   plan::Chunk chunk;
   FieldMath field;
   FillCandidates fill;
-  int level = 1;                  ///< deflate level; 0: stored raw
+  int level = 1;  ///< deflate level; 0: stored raw
   StepBins bins;
   const AdjustInput* adjust = nullptr;
   std::vector<StageProduct> products;
 };
 
 struct StageHooks {
-  std::function<void(std::size_t product)> finish;     ///< all chunks of a product are in the spool
-  std::function<void(std::int64_t bytes)> progress;    ///< uncompressed bytes done; called from workers
-  std::function<bool()> stop;                          ///< true: leave soon with Error(interrupted)
+  std::function<void(std::size_t product)> finish;   ///< all chunks of a product are in the spool
+  std::function<void(std::int64_t bytes)> progress;  ///< uncompressed bytes done; called from workers
+  std::function<bool()> stop;                        ///< true: leave soon with Error(interrupted)
 };
 
 /// Numbers of spool variables.

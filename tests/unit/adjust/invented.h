@@ -88,12 +88,15 @@ inline std::vector<double> adjusted(const Setup& setup, const Steps& anchor_step
                                     const CellTarget& target, const Steps& steps, const std::vector<double>& values,
                                     Correction* correction_out = nullptr) {
   const RowClimate climate = fit_row(setup, anchor_steps, anchor);
+  const Draws anchor_draws(1, anchor_steps.date), run_draws(1, steps.date);
+  const GeoPoint place{Angle::degrees(8.5), Angle::degrees(47.3)};
+  const CellDraws at_anchor(anchor_draws, place), at_run(run_draws, place);
   Correction correction;
-  make_correction(setup, climate, target, correction);
+  make_correction(setup, anchor_steps, climate, anchor, target, &at_anchor, correction);
   Ranks ranks;
-  if (setup.method == Method::quantile_mapping) rank_series(setup, steps, climate, values, ranks);
+  rank_series(setup, steps, climate, values, ranks);
   std::vector<double> out(values.size());
-  evaluate(setup, steps, values, ranks, correction, out);
+  evaluate(setup, steps, values, ranks, correction, &at_run, out);
   if (correction_out) *correction_out = correction;
   return out;
 }

@@ -140,8 +140,7 @@ TEST_CASE("without a month in common a series is left out, or set against the wh
   const Run run;
   const StationFit fit = run.fit(monthly(1950, 1960, 3));
   CHECK_FALSE(fit.level);
-  CHECK(fit.left_out ==
-        "no month in common with the run; period_mismatch = \"accept\" uses it all the same");
+  CHECK(fit.left_out == "no month in common with the run; period_mismatch = \"accept\" uses it all the same");
   const StationFit accepted = run.fit(monthly(1950, 1960, 3), {}, {0, 0}, true);
   REQUIRE(accepted.level);
   CHECK(accepted.period_mismatch);

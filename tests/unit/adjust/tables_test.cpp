@@ -93,17 +93,18 @@ TEST_CASE("steps: the sample of every season lies in the period, members need no
   const auto dates = invented::days(calendar, 1990, 1993);
   const auto period = std::make_pair(calendar::Date{1991, 1, 1}, calendar::Date{1992, 12, 31});
   const Steps steps = make_steps(setup, calendar, dates, period, true, "run heron");
-  REQUIRE(steps.sample_start.size() == static_cast<std::size_t>(setup.seasons.count()) + 1);
-  for (std::size_t s = 0; s + 1 < steps.sample_start.size(); ++s) {
-    CHECK(steps.sample_start[s + 1] - steps.sample_start[s] == 2 * 31);
-    CHECK(steps.member_start[s + 1] - steps.member_start[s] == 4 * 31);
+  REQUIRE(steps.sample.start.size() == static_cast<std::size_t>(setup.seasons.count()) + 1);
+  for (std::size_t s = 0; s + 1 < steps.sample.start.size(); ++s) {
+    CHECK(steps.sample.start[s + 1] - steps.sample.start[s] == 2 * 31);
+    CHECK(steps.member.start[s + 1] - steps.member.start[s] == 4 * 31);
   }
-  CHECK(std::all_of(steps.sample.begin(), steps.sample.end(), [&](auto t) { return steps.in_period[t] == 1; }));
+  CHECK(
+      std::all_of(steps.sample.step.begin(), steps.sample.step.end(), [&](auto t) { return steps.in_period[t] == 1; }));
   CHECK(std::count(steps.in_period.begin(), steps.in_period.end(), 1) == 730);
   CHECK(steps.slot[0] == -1);
   const Steps other = make_steps(setup, calendar, dates, period, false, "run heron");
   CHECK(other.season == steps.season);
-  CHECK(other.sample.empty());
+  CHECK(other.sample.step.empty());
 }
 
 TEST_CASE("steps: errors name place, season and what to do") {

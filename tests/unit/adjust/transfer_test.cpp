@@ -128,8 +128,6 @@ TEST_CASE("calibration means become the level") {
           const Carried carried(w.setup, w.fit);
           const CellTarget target = carried.target(fade);
           const RowClimate climate = fit_row(w.setup, w.steps, w.at_cell);
-          Correction correction;
-          make_correction(w.setup, climate, target, correction);
           const auto out = adjusted(w.setup, w.steps, w.at_cell, target, w.steps, w.at_cell);
           double worst = 0;
           for (int s = 0; s < w.setup.seasons.count(); ++s) {
@@ -142,14 +140,14 @@ TEST_CASE("calibration means become the level") {
                                               : own + target.mean_correction_level[i];
             // A season's own transfer over the season's sample (windows overlap, so not the evaluated series).
             double sum = 0;
-            const auto from = w.steps.sample_start[i], to = w.steps.sample_start[i + 1];
+            const auto from = w.steps.sample.start[i], to = w.steps.sample.start[i + 1];
             Steps one = w.steps;
             if (w.setup.seasons.is_moving()) {
-              for (auto p = from; p < to; ++p) one.season[w.steps.sample[p]] = static_cast<std::int16_t>(s);
+              for (auto p = from; p < to; ++p) one.season[w.steps.sample.step[p]] = static_cast<std::int16_t>(s);
             }
             const auto own_out =
                 w.setup.seasons.is_moving() ? adjusted(w.setup, w.steps, w.at_cell, target, one, w.at_cell) : out;
-            for (auto p = from; p < to; ++p) sum += own_out[w.steps.sample[p]];
+            for (auto p = from; p < to; ++p) sum += own_out[w.steps.sample.step[p]];
             worst = std::max(worst, relative(sum / (to - from), fade * near + (1 - fade) * far));
             if (w.setup.seasons.is_moving() && s > 6) break;  // the first windows are enough
           }
@@ -211,10 +209,10 @@ TEST_CASE("targets out of order are pooled, counted, and still meet the level") 
   Carried carried(w.setup, w.fit);
   Correction correction;
   const RowClimate climate = fit_row(w.setup, w.steps, w.at_cell);
-  make_correction(w.setup, climate, carried.target(), correction);
+  make_correction(w.setup, w.steps, climate, w.at_cell, carried.target(), nullptr, correction);
   const int as_fitted = correction.reordered;
   std::swap(carried.shape[3], carried.shape[9]);  // nodes 3 to 9 of January
-  make_correction(w.setup, climate, carried.target(), correction);
+  make_correction(w.setup, w.steps, climate, w.at_cell, carried.target(), nullptr, correction);
   CHECK(correction.reordered == as_fitted + 7);
   double before = -1e30, mean = climate.mean[0];
   for (std::size_t k = 0; k < 20; ++k) {
@@ -295,7 +293,7 @@ TEST_CASE("tails beyond the outermost nodes are marked and get the outermost cor
   Ranks ranks;
   const std::vector<double> values = {-100, climate.node.front(), climate.node.back(), 100, NAN};
   rank_series(w.setup, w.steps, climate, values, ranks);
-  CHECK(ranks.tail == std::vector<std::uint8_t>{1, 0, 0, 1, 0});
+  CHECK(ranks.tail == std::vector<std::uint8_t>{1, 0, 0, 2, 0});
   CHECK(ranks.node[0] == 0);
   CHECK(ranks.weight[0] == 0);
   CHECK(ranks.node[3] == 18);
@@ -311,7 +309,7 @@ TEST_CASE("a smoothed correction refuses the days of another calendar") {
   Correction correction;
   correction.table.resize(1091);
   std::vector<double> values(dates.size(), 1.0), out(dates.size());
-  CHECK_THROWS_WITH_AS(evaluate(setup, steps, values, {}, correction, out),
+  CHECK_THROWS_WITH_AS(evaluate(setup, steps, values, {}, correction, nullptr, out),
                        "adjustment: the correction was made for the days of another calendar", Error);
 }
 

@@ -144,7 +144,7 @@ TEST_CASE("every key of [stations] and [reach] is read") {
   CHECK(job.reach.neighbours == 16);
 }
 
-TEST_CASE("an adjustment's defaults: quantile-mapping, or mean-ratio where the form is multiplicative") {
+TEST_CASE("an adjustment's defaults: quantile delta mapping in additive form") {
   const std::string stations = "[stations]\nsites = \"s.csv\"\ndaily = \"d.csv\"\n";
   const auto adjust = [&](const std::string& keys) {
     const std::string text = job_texts::kShortest + stations + "[[run]]\nfiles = [\"b.nc\"]\nname = \"b\"\n";
@@ -154,7 +154,7 @@ TEST_CASE("an adjustment's defaults: quantile-mapping, or mean-ratio where the f
     return parse_job("job.toml", with, {}).fields[0].adjust;
   };
   const AdjustSpec plain = adjust("");
-  CHECK(plain.method == Adjustment::quantile_mapping);
+  CHECK(plain.method == Adjustment::quantile_delta_mapping);
   CHECK(plain.form == Form::additive);
   CHECK(plain.observed == std::vector<std::string>{"tas"});
   CHECK_FALSE(plain.season_given);
@@ -162,7 +162,14 @@ TEST_CASE("an adjustment's defaults: quantile-mapping, or mean-ratio where the f
   CHECK(plain.window_days == 31);
   CHECK(plain.day_step == 5);
   CHECK_FALSE(plain.period.has_value());
-  CHECK(adjust("form = \"multiplicative\"\n").method == Adjustment::mean_ratio);
+  CHECK(adjust("form = \"multiplicative\"\n").method == Adjustment::quantile_delta_mapping);
+  CHECK(adjust("method = \"gamma-mapping\"\n").form == Form::multiplicative);
+  CHECK(adjust("method = \"variance-scaling\"\n").form == Form::additive);
+  CHECK(plain.window_years == 30);
+  CHECK(plain.window_step == 10);
+  CHECK_FALSE(plain.wet_day.has_value());
+  CHECK(adjust("form = \"multiplicative\"\nwet_day = \"0.2 mm/day\"\n").wet_day == std::pair{0.2, std::string("mm/day")});
+  CHECK(adjust("window = \"20 years\"\nwindow_step = \"5 years\"\n").window_years == 20);
   CHECK(adjust("method = \"mean-ratio\"\n").form == Form::multiplicative);
   CHECK(adjust("season = \"year\"\n").season == SeasonKind::year);
   CHECK(adjust("season = \"3 days\"\n").day_step == 3);

@@ -73,8 +73,7 @@ TEST_CASE("a wrong override is refused by its own text, without a line of the fi
   CHECK(said("output.digits=many") == "--set output.digits=many: 'digits' is text; expected a whole number\n");
   CHECK(said("mesh.lon.step=0.3") ==
         "--set mesh.lon.step=0.3: -10 to 30 is 133.333333 steps of 0.3; expected a whole number of steps\n");
-  CHECK(said("reach.method=kriging") ==
-        "--set reach.method=kriging: 'kriging' is not in this version; expected nearest or inverse-distance\n");
+  CHECK(said("reach.method=krigin") == "--set reach.method=krigin: unknown method 'krigin'; did you mean 'kriging'?\n");
   CHECK(said("units") == "--set units: no key and value; expected KEY=VALUE with the dotted path of a job-file key\n");
   CHECK(said("field..units=K") ==
         "--set field..units=K: an empty part in the dotted path; expected a path such as field.0.units\n");
