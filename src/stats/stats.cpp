@@ -55,6 +55,22 @@ double pairwise_sum(std::span<const double> values) {
   return sum;
 }
 
+/// Departures from the mean; exactly zero for values all alike, whose mean may be off by a rounding error.
+std::vector<double> departures(std::span<const double> values) {
+  const double first = values.empty() ? 0 : values[0];
+  const bool alike = std::all_of(values.begin(), values.end(), [first](double v) { return v == first; });
+  const double centre = alike ? first : mean(values);
+  std::vector<double> apart(values.begin(), values.end());
+  for (double& v : apart) v -= centre;
+  return apart;
+}
+
+double product_sum(std::span<const double> a, std::span<const double> b) {
+  std::vector<double> products(a.begin(), a.end());
+  for (std::size_t i = 0; i < products.size(); ++i) products[i] *= b[i];
+  return pairwise_sum(products);
+}
+
 }  // namespace
 
 double quantile(std::span<const double> ascending, double p, int type) {
@@ -105,6 +121,25 @@ int make_non_decreasing(std::span<double> values) {
 double mean(std::span<const double> values) {
   if (values.empty()) return std::numeric_limits<double>::quiet_NaN();
   return pairwise_sum(values) / static_cast<double>(values.size());
+}
+
+double variance(std::span<const double> values) {
+  if (values.size() < 2) return std::numeric_limits<double>::quiet_NaN();
+  const std::vector<double> apart = departures(values);
+  return product_sum(apart, apart) / static_cast<double>(values.size() - 1);
+}
+
+double standard_deviation(std::span<const double> values) { return std::sqrt(variance(values)); }
+
+double correlation(std::span<const double> a, std::span<const double> b) {
+  if (a.size() != b.size()) {
+    throw Error(Failure::defect, "correlation", fmt::format("samples of {} and {} values", a.size(), b.size()));
+  }
+  if (a.size() < 2) return std::numeric_limits<double>::quiet_NaN();
+  const std::vector<double> apart_a = departures(a), apart_b = departures(b);
+  const double squares_a = product_sum(apart_a, apart_a), squares_b = product_sum(apart_b, apart_b);
+  if (!(squares_a > 0 && squares_b > 0)) return std::numeric_limits<double>::quiet_NaN();
+  return std::clamp(product_sum(apart_a, apart_b) / (std::sqrt(squares_a) * std::sqrt(squares_b)), -1.0, 1.0);
 }
 
 }  // namespace windrow::stats
