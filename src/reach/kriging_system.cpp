@@ -1,0 +1,108 @@
+// Ordinary kriging in bare matrices: Cholesky, weights, variance of any weights. No positions.
+#include "kriging_system.h"
+
+#include <algorithm>
+#include <array>
+#include <cmath>
+
+namespace windrow::reach {
+namespace {
+
+using Lanes = std::array<double, kLanes>;
+
+/// sum -= f * x, lane by lane.
+void subtract(Lanes& sum, double f, const double* x) {
+  for (std::size_t l = 0; l < kLanes; ++l) sum[l] -= f * x[l];
+}
+
+Lanes load(const double* x) {
+  Lanes lanes{};
+  std::copy(x, x + kLanes, lanes.begin());
+  return lanes;
+}
+
+}  // namespace
+
+bool Cholesky::factor(const std::vector<double>& matrix, std::size_t n, double added_to_diagonal) {
+  n_ = n;
+  both_ = matrix;
+  for (std::size_t k = 0; k < n; ++k) both_[k * n + k] += added_to_diagonal;
+  for (std::size_t k = 0; k < n; ++k) {
+    double* row = &both_[k * n];
+    if (!(row[k] > kSmallestPivot * (matrix[k * n + k] + added_to_diagonal))) return false;
+    const double root = std::sqrt(row[k]);
+    for (std::size_t j = k; j < n; ++j) row[j] /= root;
+    for (std::size_t i = k + 1; i < n; ++i) {
+      double* below = &both_[i * n];
+      const double f = row[i];
+      for (std::size_t j = i; j < n; ++j) below[j] -= f * row[j];
+    }
+  }
+  for (std::size_t i = 0; i < n; ++i) {
+    for (std::size_t j = 0; j < i; ++j) both_[i * n + j] = both_[j * n + i];
+  }
+  return true;
+}
+
+void Cholesky::solve(double* x) const {
+  const auto divide = [](const Lanes& sum, double by, double* out) {
+    for (std::size_t l = 0; l < kLanes; ++l) out[l] = sum[l] / by;
+  };
+  for (std::size_t i = 0; i < n_; ++i) {
+    const double* row = &both_[i * n_];
+    Lanes sum = load(x + i * kLanes);
+    for (std::size_t k = 0; k < i; ++k) subtract(sum, row[k], x + k * kLanes);
+    divide(sum, row[i], x + i * kLanes);
+  }
+  for (std::size_t i = n_; i-- > 0;) {
+    const double* row = &both_[i * n_];
+    Lanes sum = load(x + i * kLanes);
+    for (std::size_t k = i + 1; k < n_; ++k) subtract(sum, row[k], x + k * kLanes);
+    divide(sum, row[i], x + i * kLanes);
+  }
+}
+
+void KrigingSystem::set(const std::vector<double>& covariance, std::size_t n, double sill) {
+  n_ = n;
+  jitter_ = 0;
+  // Ends: once the addition exceeds the other elements' sum, the matrix is diagonally dominant.
+  for (double next = kSmallestPivot; !factor_.factor(covariance, n, jitter_ * sill); next *= 10) jitter_ = next;
+  std::vector<double> lanes(n * kLanes, 1.0);
+  factor_.solve(lanes.data());
+  unit_.resize(n);
+  unit_sum_ = 0;
+  for (std::size_t i = 0; i < n; ++i) unit_sum_ += unit_[i] = lanes[i * kLanes];
+}
+
+void KrigingSystem::weights(double* x, double* mu) const {
+  factor_.solve(x);
+  Lanes sum{};
+  for (std::size_t i = 0; i < n_; ++i) subtract(sum, -1, x + i * kLanes);
+  for (std::size_t l = 0; l < kLanes; ++l) mu[l] = (sum[l] - 1) / unit_sum_;
+  for (std::size_t i = 0; i < n_; ++i) {
+    for (std::size_t l = 0; l < kLanes; ++l) x[i * kLanes + l] -= mu[l] * unit_[i];
+  }
+}
+
+void estimation_variance(const std::vector<double>& covariance, std::size_t n, double sill, const double* weights,
+                         const double* to_point, double* out) {
+  std::vector<std::size_t> used;
+  for (std::size_t i = 0; i < n; ++i) {
+    const double* w = weights + i * kLanes;
+    if (std::any_of(w, w + kLanes, [](double v) { return v != 0; })) used.push_back(i);
+  }
+  Lanes total{};
+  for (std::size_t a = 0; a < used.size(); ++a) {
+    const std::size_t i = used[a];
+    const double* row = &covariance[i * n];
+    const double* w = weights + i * kLanes;
+    // Half of w'Cw: the triangle, and half of the diagonal.
+    Lanes sum = load(to_point + i * kLanes);
+    for (std::size_t b = 0; b < a; ++b) subtract(sum, row[used[b]], weights + used[b] * kLanes);
+    subtract(sum, row[i] / 2, w);
+    for (std::size_t l = 0; l < kLanes; ++l) total[l] -= w[l] * sum[l];
+  }
+  for (std::size_t l = 0; l < kLanes; ++l) out[l] = std::max(0.0, sill + 2 * total[l]);
+}
+
+}  // namespace windrow::reach
