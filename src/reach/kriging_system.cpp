@@ -21,6 +21,28 @@ Lanes load(const double* x) {
   return lanes;
 }
 
+/// Rows solved together, so that each right side is loaded once for all of them.
+constexpr std::size_t kRows = 4;
+
+/// Rows i to i + R - 1 of x from those before (forward, with L) or after them (with its transpose).
+template <std::size_t R, bool Forward>
+void solve_rows(const double* both, std::size_t n, std::size_t i, double* x) {
+  const double* row = both + i * n;
+  std::array<Lanes, R> sum;
+  for (std::size_t r = 0; r < R; ++r) sum[r] = load(x + (i + r) * kLanes);
+  for (std::size_t k = Forward ? 0 : i + R; k < (Forward ? i : n); ++k) {
+    for (std::size_t r = 0; r < R; ++r) subtract(sum[r], row[r * n + k], x + k * kLanes);
+  }
+  for (std::size_t step = 0; step < R; ++step) {
+    const std::size_t r = Forward ? step : R - 1 - step;
+    const double* own = row + r * n;
+    for (std::size_t k = Forward ? i : i + r + 1; k < (Forward ? i + r : i + R); ++k) {
+      subtract(sum[r], own[k], x + k * kLanes);
+    }
+    for (std::size_t l = 0; l < kLanes; ++l) x[(i + r) * kLanes + l] = sum[r][l] / own[i + r];
+  }
+}
+
 }  // namespace
 
 bool Cholesky::factor(const std::vector<double>& matrix, std::size_t n, double added_to_diagonal) {
@@ -45,21 +67,11 @@ bool Cholesky::factor(const std::vector<double>& matrix, std::size_t n, double a
 }
 
 void Cholesky::solve(double* x) const {
-  const auto divide = [](const Lanes& sum, double by, double* out) {
-    for (std::size_t l = 0; l < kLanes; ++l) out[l] = sum[l] / by;
-  };
-  for (std::size_t i = 0; i < n_; ++i) {
-    const double* row = &both_[i * n_];
-    Lanes sum = load(x + i * kLanes);
-    for (std::size_t k = 0; k < i; ++k) subtract(sum, row[k], x + k * kLanes);
-    divide(sum, row[i], x + i * kLanes);
-  }
-  for (std::size_t i = n_; i-- > 0;) {
-    const double* row = &both_[i * n_];
-    Lanes sum = load(x + i * kLanes);
-    for (std::size_t k = i + 1; k < n_; ++k) subtract(sum, row[k], x + k * kLanes);
-    divide(sum, row[i], x + i * kLanes);
-  }
+  std::size_t i = 0;
+  for (; i + kRows <= n_; i += kRows) solve_rows<kRows, true>(both_.data(), n_, i, x);
+  for (; i < n_; ++i) solve_rows<1, true>(both_.data(), n_, i, x);
+  for (; i >= kRows; i -= kRows) solve_rows<kRows, false>(both_.data(), n_, i - kRows, x);
+  for (; i > 0; --i) solve_rows<1, false>(both_.data(), n_, i - 1, x);
 }
 
 void KrigingSystem::set(const std::vector<double>& covariance, std::size_t n, double sill) {

@@ -6,8 +6,9 @@
 namespace windrow::reach {
 
 /// Points solved together. Each lane is computed as if alone, so its bits do not depend on its companions (why this is
-/// not a library's matrix product); the loop over lanes is what fills the vector registers.
-inline constexpr std::size_t kLanes = 16;
+/// not a library's matrix product); the loop over lanes is what fills the vector registers. Four keep 500 stations'
+/// right sides in the first-level cache.
+inline constexpr std::size_t kLanes = 4;
 
 /// Cholesky factor of a symmetric positive definite matrix.
 class Cholesky {

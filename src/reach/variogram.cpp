@@ -14,7 +14,7 @@
 namespace windrow::reach {
 namespace {
 
-constexpr std::size_t kFewestStations = 8, kFewestBins = 4, kMostBins = 30, kPairsPerBin = 30;
+constexpr std::size_t kFewestStations = 8, kFewestBins = 4, kMostBins = 100, kPairsPerBin = 30;
 constexpr int kRanges = 60, kPasses = 5, kSections = 40;
 /// A partial sill below this part of the sill is no structure.
 constexpr double kLeastStructure = 0.05;

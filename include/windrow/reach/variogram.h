@@ -37,7 +37,7 @@ std::vector<double> standardised_noise(const std::vector<double>& values, const 
 /// Fits a model to values [station * width], one column a season. Each season is standardised (mean 0, variance 1 over
 /// the stations), halved squared differences are pooled over the seasons, less both stations' `noise` [station] (empty:
 /// 0; as from standardised_noise). Pairs up to half of the largest distance count (common practice) in bins of equal
-/// numbers of pairs: one bin for every 30 pairs, but 4 to 30 bins. Weighted least squares with weights
+/// numbers of pairs: one bin for every 30 pairs, but 4 to 100 bins. Weighted least squares with weights
 /// N(h) / gamma(h)^2, gamma from the pass before (Cressie 1985, Math. Geol. 17:563, from memory; so done the estimates
 /// are not drawn to large gamma): nugget and partial sill in closed form, both >= 0, for each of 60 ranges from the
 /// first bin's distance to the largest, then golden section. Stations with a missing value (NaN) are left out.
