@@ -9,49 +9,9 @@
 #include <numeric>
 #include <random>
 
+#include "points.h"
+
 namespace windrow::reach {
-namespace {
-
-GeoPoint at(double longitude, double latitude) { return {Angle::degrees(longitude), Angle::degrees(latitude)}; }
-
-std::vector<GeoPoint> random_points(int n, double span, unsigned seed) {
-  std::mt19937_64 random(seed);
-  const auto unit = [&] { return static_cast<double>(random() >> 11) * 0x1p-53; };
-  std::vector<GeoPoint> points;
-  for (int i = 0; i < n; ++i) {
-    const double longitude = 10 + span * unit();
-    points.push_back(at(longitude, 45 + span * unit()));
-  }
-  return points;
-}
-
-/// Value carried to row i, faded to `background` like a caller does.
-double carried(const ReachMap& reach, std::size_t row, const std::vector<double>& values, double background) {
-  double sum = 0;
-  for (auto p = reach.map.row_start[row]; p < reach.map.row_start[row + 1]; ++p) {
-    sum += reach.map.share[p] * values[reach.map.column[p]];
-  }
-  return reach.fade[row] * sum + (1 - reach.fade[row]) * background;
-}
-
-double largest_step(const std::vector<GeoPoint>& stations, const Options& options, GeoPoint from, GeoPoint to,
-                    int steps, const std::vector<double>& values) {
-  std::vector<GeoPoint> path;
-  for (int i = 0; i <= steps; ++i) {
-    const double t = static_cast<double>(i) / steps;
-    path.push_back(at(from.longitude.degrees() * (1 - t) + to.longitude.degrees() * t,
-                      from.latitude.degrees() * (1 - t) + to.latitude.degrees() * t));
-  }
-  const ReachMap reach = make_reach(stations, path, options);
-  double largest = 0;
-  for (std::size_t i = 1; i < path.size(); ++i) {
-    largest = std::max(largest, std::abs(carried(reach, i, values, 0.5) - carried(reach, i - 1, values, 0.5)));
-  }
-  return largest;
-}
-
-}  // namespace
-
 TEST_CASE("inverse distance gives the estimates of Isaaks & Srivastava 1989, chapter 12") {
   // Seven samples of the Walker Lake set about the point (65, 137); inputs from memory, the results recomputed
   // independently: 593.954, 597.620, 635.375 and 672.993 for the powers 1, 2, 5 and 10.
