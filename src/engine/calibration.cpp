@@ -7,8 +7,8 @@
 #include <limits>
 #include <optional>
 
+#include "station_tables.h"
 #include "windrow/base/error.h"
-#include "windrow/os/files.h"
 #include "windrow/station/station.h"
 
 namespace windrow::engine {
@@ -43,27 +43,20 @@ std::pair<double, double> possible_range(const job::FieldSpec& field, const std:
   return {-far, far};
 }
 
-std::vector<text::CsvTable> tables(const std::vector<std::string>& paths) {
-  std::vector<text::CsvTable> out;
-  out.reserve(paths.size());
-  for (const auto& path : paths) out.push_back(text::CsvTable::parse(os::read_text(path), path));
-  return out;
-}
-
 std::vector<station::Record> records(const CalibrationNeeds& needs, Notices& notices) {
   const auto& spec = needs.job.stations;
-  station::Tables files{text::CsvTable::parse(os::read_text(spec.sites), spec.sites), tables(spec.daily),
-                        tables(spec.monthly), tables(spec.normals)};
+  const auto files = station_tables(spec, needs.field.adjust.observed, notices);
   station::Options options;
   options.observed = needs.field.adjust.observed;
   options.units = needs.output_units;
   const std::string& name = needs.conversion.standard_name;
-  const bool water = name.find("precipitation") != std::string::npos || name.find("rainfall") != std::string::npos ||
-                     name.find("snowfall") != std::string::npos;
+  const bool water = is_precipitation(name);
   options.kind = water ? station::Kind::sum : station::Kind::mean;
   options.per_day_rate = water && is_rate(needs.output_units);
   std::tie(options.low, options.high) = possible_range(needs.field, needs.output_units, name);
   options.min_years = spec.min_years;
+  options.day_shift = spec.day_shift;
+  if (water) options.undercatch = spec.undercatch;
   if (spec.normals_period) std::tie(options.normals_first, options.normals_last) = *spec.normals_period;
   return station::read_records(files, {spec.columns, spec.units}, options, notices);
 }
