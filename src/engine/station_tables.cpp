@@ -1,5 +1,6 @@
 #include "station_tables.h"
 
+#include "windrow/cf/dataset.h"
 #include "windrow/cf/stations.h"
 #include "windrow/os/files.h"
 

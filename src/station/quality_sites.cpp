@@ -12,6 +12,7 @@ namespace windrow::station {
 namespace {
 
 constexpr double kFarKm = 1000, kAmongKm = 300;
+constexpr double kFarTimes = 10, kAmongTimes = 2;  // of the usual distance, so that a sparse network stays silent
 constexpr std::size_t kLeastOthers = 3;
 constexpr double kFoot = 0.3048;  // metres, exactly (international foot, 1959)
 
@@ -35,11 +36,11 @@ std::vector<Finding> check_positions(const std::vector<Site>& sites) {
   const auto middle = usual.begin() + static_cast<std::ptrdiff_t>(usual.size() / 2);
   std::nth_element(usual.begin(), middle, usual.end());
   for (std::size_t i = 0; i < sites.size(); ++i) {
-    if (own[i] <= kFarKm) continue;
+    if (own[i] <= std::max(kFarKm, kFarTimes * *middle)) continue;
     const GeoPoint& at = sites[i].position;
     const double longitude = at.longitude.degrees() > 180 ? at.longitude.degrees() - 360 : at.longitude.degrees();
     const double turned = nearest_km({Angle::degrees(-longitude), at.latitude}, sites, i);
-    if (turned > std::max(kAmongKm, 2 * *middle) || turned >= own[i]) continue;
+    if (turned > std::max(kAmongKm, kAmongTimes * *middle) || turned >= own[i]) continue;
     out.push_back({sites[i].id, "", Fault::longitude_sign, "", 1,
                    fmt::format("station '{}' at longitude {:.6g} is {:.0f} km from any other; at {:.6g} it would stand "
                                "among them ({:.0f} km): the sign may be wrong",

@@ -131,7 +131,7 @@ def _(folder):
 
 
 @case("station day without a time", 78,
-      "windrow: FOLDER/job.toml:17:16: 'ends' is no time of day; expected one from \"00:00\" to \"24:00\"\n"
+      "windrow: FOLDER/job.toml:16:16: 'ends' is no time of day; expected one from \"00:00\" to \"24:00\"\n"
       'day = { ends = "9 am" }\n'
       "               ^\n")
 def _(folder):
@@ -139,7 +139,7 @@ def _(folder):
 
 
 @case("station day in a named zone", 78,
-      "windrow: FOLDER/job.toml:17:16: 'CET' is no zone; expected UTC or hours ahead of it, such as \"UTC+1\" or "
+      "windrow: FOLDER/job.toml:16:16: 'CET' is no zone; expected UTC or hours ahead of it, such as \"UTC+1\" or "
       "\"UTC-3:30\"\n"
       'day = { zone = "CET" }\n'
       "               ^\n")
@@ -148,7 +148,7 @@ def _(folder):
 
 
 @case("sites not named beside a table", 78,
-      "windrow: FOLDER/job.toml:13:1: [stations] has no 'sites'; expected a CSV file with station, longitude, latitude "
+      "windrow: FOLDER/job.toml:12:1: [stations] has no 'sites'; expected a CSV file with station, longitude, latitude "
       "and elevation\n"
       "[stations]\n"
       "^\n")
@@ -157,7 +157,7 @@ def _(folder):
 
 
 @case("factors for undercatch without a sites table", 78,
-      "windrow: FOLDER/job.toml:15:14: factors for 'undercatch' stand in a sites table; expected 'sites' in "
+      "windrow: FOLDER/job.toml:14:14: factors for 'undercatch' stand in a sites table; expected 'sites' in "
       "[stations]\n"
       'undercatch = "factor"\n'
       "             ^\n")

@@ -93,12 +93,14 @@ def orthogonal(path, values):
 
 
 def orthogonal_turned(path, values):
-    """(time, station), unlimited time, a string identifier, hours since, a gregorian calendar, packed as short."""
+    """(time, station), unlimited time, a string identifier, hours since, a gregorian calendar, packed as short.
+
+    Unpacked in double, values are off by some 1e-15 from the table's decimals, which float32 products do not show."""
     file = Writer(path, "string", "km")
     file.file.createDimension("time", None)
     hours = 24 * (FIRST + np.arange(730)) + 12
     file.time(("time",), hours, "hours since 1970-01-01 00:00:00", "gregorian")
-    file.data(("time", "station"), values.T, "i2", scale_factor=np.float32(0.1), add_offset=np.float32(0), fill=-32768)
+    file.data(("time", "station"), values.T, "i2", scale_factor=0.1, add_offset=0.0, fill=-32768)
 
 
 def with_bounds(path, values):
@@ -179,6 +181,8 @@ def main(program):
                 assert made == wanted, f"{layout.__name__}, sites {name}: values differ from those of the CSV tables"
             print(f"{layout.__name__}: {len(wanted) // 4} values as from CSV")
         shifted(folder, values, wanted)
+        undercatch(folder, values)
+        inspected(folder, values)
 
 
 def shifted(folder, values, wanted):
@@ -193,6 +197,64 @@ def shifted(folder, values, wanted):
     made, _ = product(folder, "bounds", 'daily = "in/stations.nc"\n' + day)
     assert made == wanted, "a file with time bounds is moved"
     print("shifted days: as from CSV")
+
+
+RAIN = """variable = "pr"
+units = "mm/day"
+range = [0, 2000]
+[field.adjust]
+method = "mean-ratio"
+"""
+
+
+def undercatch(folder, values):
+    """A factor of 1.25 at every station makes a product 1.25 times as wet, and is said. Amounts are of the model's order,
+    far from the cap of ratios."""
+    kit.model(folder("in/pr.nc"), "pr", "mm/day", standard_name="lwe_precipitation_rate")
+    write_csv(folder, values)
+    with open(folder("in/daily.csv")) as file:
+        text = file.read()
+    with open(folder("in/daily.csv"), "w") as file:
+        for line in text.splitlines()[1:]:
+            station, date, value = line.split(",")
+            file.write(f"{station},{date},{value and 200 + 5 * abs(float(value))}\n")
+    with open(folder("in/daily.csv")) as file:
+        rows = file.read()
+    folder.write("in/daily.csv", "station,date,pr [mm]\n" + rows)
+    lines = SITES.splitlines()
+    folder.write("in/sites.csv", "\n".join([lines[0] + ",catch"] + [line + ",1.25" for line in lines[1:]]) + "\n")
+    found = {}
+    for name, key in (("as they are", ""), ("factors", 'undercatch = "catch"\n')):
+        job = kit.job('files = ["in/pr.nc"]\n', RAIN,
+                      rest=STATIONS.format('sites = "in/sites.csv"\ndaily = "in/daily.csv"\n' + key) +
+                      f'[output]\ndirectory = "{name}"\n')
+        folder.write("job.toml", job)
+        done = folder.run("run", "job.toml")
+        assert done.returncode == 0, done.stderr
+        with netCDF4.Dataset(folder(name, "pr_run_mesh.nc")) as file:
+            found[name] = file["pr"][:].astype("f8"), file["pr"].comment
+    ratio = found["factors"][0] / found["as they are"][0]
+    worst = float(abs(ratio / 1.25 - 1).max())
+    assert worst < 4 * 2.0 ** -24, f"factors of 1.25 make {ratio.min()} to {ratio.max()} times as much"
+    assert found["as they are"][1] == "Station values are not corrected for undercatch.", found["as they are"][1]
+    assert found["factors"][1] == "Station values are multiplied by the undercatch factors of column 'catch'."
+    print(f"undercatch: 1.25 within {worst:.1e}")
+
+
+def inspected(folder, values):
+    """`inspect` tells what the quality checks find, of a table and of a file; of clean ones nothing."""
+    for planted in (False, True):
+        faulty = values.copy()
+        if planted:
+            faulty[1, 100:112] = 21.5
+        write_csv(folder, faulty)
+        contiguous(folder("in/stations.nc"), faulty)
+        for name in ("in/daily.csv", "in/stations.nc"):
+            done = folder.run("inspect", name)
+            assert done.returncode == 0, done.stderr
+            said = "note: station 'Bravo', column 'tas': 21.5 on 12 days in a row from 2001-04-11" in done.stdout
+            assert said == planted, f"{name}, {'with' if planted else 'without'} a fault:\n{done.stdout}"
+    print("inspect: tells a planted fault only")
 
 
 if __name__ == "__main__":

@@ -22,16 +22,15 @@ FileBuilder stations(const std::string& name, const std::string& feature = "time
 }
 
 FileBuilder& times(FileBuilder& file, const std::vector<double>& values, const std::string& calendar = "standard") {
-  return file.var("time", NC_DOUBLE, {"time"}, values)
-      .att("units", "days since 2001-02-27")
-      .att("calendar", calendar);
+  return file.var("time", NC_DOUBLE, {"time"}, values).att("units", "days since 2001-02-27").att("calendar", calendar);
 }
 
 std::vector<std::string> lines(const text::CsvTable& table) {
   std::vector<std::string> out;
   for (std::size_t row = 0; row < table.rows(); ++row) {
     std::string line;
-    for (std::size_t c = 0; c < table.headings().size(); ++c) line += (c > 0 ? "," : "") + std::string(table.at(row, c));
+    for (std::size_t c = 0; c < table.headings().size(); ++c)
+      line += (c > 0 ? "," : "") + std::string(table.at(row, c));
     out.push_back(line);
   }
   return out;
@@ -56,8 +55,8 @@ TEST_CASE("a file of stations becomes the tables of sites and days; a float keep
   CHECK(values.table.headings()[2].name == "tas");
   CHECK(values.table.headings()[2].units == "degC");
   CHECK(values.table.headings()[3].name == "pr");
-  CHECK(lines(values.table) == Lines{"101,2001-02-27,1.1,", "101,2001-03-01,3,", "102,2001-02-27,4,",
-                                     "102,2001-02-28,5,"});
+  CHECK(lines(values.table) ==
+        Lines{"101,2001-02-27,1.1,", "101,2001-03-01,3,", "102,2001-02-27,4,", "102,2001-02-28,5,"});
   CHECK(values.table.place(1) == path + ": time 3");
   const auto all = read_station_values(path, StationSpan::day, {}, notices).table;
   CHECK(lines(all) == Lines{"101,2001-02-27,1.1,0", "101,2001-02-28,,2", "101,2001-03-01,3,4", "102,2001-02-27,4,1",
@@ -109,7 +108,8 @@ TEST_CASE("what is no file of daily observations is refused with what was expect
     });
   };
   auto profile = stations("a.nc", "profile");
-  CHECK(failure(times(profile, {0, 1, 2})) == "a.nc: featureType is 'profile'; observations at stations need timeSeries");
+  CHECK(failure(times(profile, {0, 1, 2})) ==
+        "a.nc: featureType is 'profile'; observations at stations need timeSeries");
   auto timeless = stations("b.nc");
   CHECK(failure(timeless) ==
         "b.nc: no time of the observations; expected a variable with units such as \"days since 1961-01-01\"");

@@ -134,15 +134,15 @@ TEST_CASE("a station's dates move to the day that holds most of its hours, the n
   };
   CHECK(shift("") == 0);
   CHECK(shift("label = \"start\"") == 0);
-  CHECK(shift("ends = \"09:00\"") == -1);                      // 15 hours of the day before
+  CHECK(shift("ends = \"09:00\"") == -1);  // 15 hours of the day before
   CHECK(shift("ends = \"09:00\", label = \"start\"") == 0);
   CHECK(shift("ends = \"18:00\"") == 0);
-  CHECK(shift("ends = \"18:00\", label = \"start\"") == 1);    // from 18:00: 6 hours of the day itself
+  CHECK(shift("ends = \"18:00\", label = \"start\"") == 1);  // from 18:00: 6 hours of the day itself
   CHECK(shift("ends = \"00:00\"") == -1);
   CHECK(shift("ends = \"00:00\", label = \"start\"") == 0);
-  CHECK(shift("ends = \"12:00\"") == 0);                       // a tie
+  CHECK(shift("ends = \"12:00\"") == 0);  // a tie
   CHECK(shift("ends = \"12:00\", label = \"start\"") == 0);
-  CHECK(shift("ends = \"12:30\", zone = \"UTC+1\"") == -1);   // ends at 11:30 UTC
+  CHECK(shift("ends = \"12:30\", zone = \"UTC+1\"") == -1);  // ends at 11:30 UTC
   CHECK(shift("ends = \"11:30\", zone = \"UTC-1\"") == 0);
   CHECK(shift("ends = \"09:00\", zone = \"UTC-3:30\"") == 0);  // ends at 12:30 UTC
   CHECK(shift("ends = \"24:00\", zone = \"UTC+13\"") == -1);
