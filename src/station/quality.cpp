@@ -31,34 +31,44 @@ struct Common {
   std::int64_t first = 0;
 };
 
-/// Values of common dates on which neither is zero. Given up as soon as more differ than a twin may have.
+/// What is not zero: dry days agree everywhere.
+DatedValues without_zeros(const DatedValues& series) {
+  DatedValues out;
+  for (std::size_t i = 0; i < series.date.size(); ++i) {
+    if (series.value[i] == 0) continue;
+    out.date.push_back(series.date[i]);
+    out.value.push_back(series.value[i]);
+  }
+  return out;
+}
+
+/// Given up, with nothing in common, as soon as more differ than a twin may have.
 Common compare(const DatedValues& a, const DatedValues& b) {
   const double most = (1 - kTwinShare) * static_cast<double>(std::min(a.date.size(), b.date.size()));
   Common out;
   for (std::size_t i = 0, j = 0; i < a.date.size() && j < b.date.size();) {
-    if (a.date[i] < b.date[j]) {
-      ++i;
-    } else if (b.date[j] < a.date[i]) {
-      ++j;
-    } else {
-      if (a.value[i] != 0 && b.value[j] != 0) {
-        if (out.count == 0) out.first = a.date[i];
-        ++out.count;
-        out.equal += a.value[i] == b.value[j] ? 1 : 0;
-        if (static_cast<double>(out.count - out.equal) > most) return {};
-      }
-      ++i;
-      ++j;
+    if (a.date[i] != b.date[j]) {
+      ++(a.date[i] < b.date[j] ? i : j);
+      continue;
     }
+    if (out.count == 0) out.first = a.date[i];
+    ++out.count;
+    out.equal += a.value[i] == b.value[j] ? 1 : 0;
+    if (static_cast<double>(out.count - out.equal) > most) return {};
+    ++i;
+    ++j;
   }
   return out;
 }
 
 void find_twins(const std::vector<Site>& sites, const ObservedColumn& column, std::vector<Finding>& out) {
   const std::size_t least = column.monthly ? kTwinMonths : kTwinDays;
+  std::vector<DatedValues> compared;
+  compared.reserve(sites.size());
+  for (const DatedValues& series : column.of) compared.push_back(without_zeros(series));
   for (std::size_t a = 0; a < sites.size(); ++a) {
     for (std::size_t b = a + 1; b < sites.size(); ++b) {
-      const Common common = compare(column.of[a], column.of[b]);
+      const Common common = compare(compared[a], compared[b]);
       if (common.count < least || static_cast<double>(common.equal) <= kTwinShare * static_cast<double>(common.count))
         continue;
       out.push_back({sites[a].id, column.name, Fault::twin_series, date_of(column, common.first), common.equal,

@@ -153,8 +153,7 @@ std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, c
       silent.add(tables.sites.file(), fmt::format("station '{}' has no value and is left out", sites[i].id));
     }
     if (series.monthly.empty() && record.normal.empty()) continue;
-    record.resolution =
-        options.kind == Kind::sum ? resolution_of(series.daily.value) : std::numeric_limits<double>::quiet_NaN();
+    if (options.kind == Kind::sum) record.resolution = resolution_of(series.daily.value);
     record.daily = std::move(series.daily);
     record.monthly = std::move(series.monthly);
     record.complete_years = series.complete_years;

@@ -176,7 +176,8 @@ def main(program):
         assert changed != wanted, "the comparison cannot tell a changed value"
         for layout in LAYOUTS:
             layout(folder("in/stations.nc"), values)
-            for name, sites in (("own", ""), ("named", 'sites = "in/stations.nc"\n'), ("csv", 'sites = "in/sites.csv"\n')):
+            for name, sites in (("own", ""), ("named", 'sites = "in/stations.nc"\n'),
+                                ("csv", 'sites = "in/sites.csv"\n')):
                 made, _ = product(folder, f"{layout.__name__}-{name}", sites + 'daily = "in/stations.nc"\n')
                 assert made == wanted, f"{layout.__name__}, sites {name}: values differ from those of the CSV tables"
             print(f"{layout.__name__}: {len(wanted) // 4} values as from CSV")

@@ -148,6 +148,21 @@ TEST_CASE("a station's dates move to the day that holds most of its hours, the n
   CHECK(shift("ends = \"24:00\", zone = \"UTC+13\"") == -1);
 }
 
+TEST_CASE("NetCDF series hold their own sites; a factor column is read") {
+  const auto stations = [](const std::string& keys) {
+    return parse_job("/proj/job.toml",
+                     "[[run]]\nfiles = [\"a.nc\"]\n[[field]]\nvariable = \"tas\"\n[mesh]\n"
+                     "lon = { from = 0, to = 1, step = 1 }\nlat = { from = 0, to = 1, step = 1 }\n[stations]\n" +
+                         keys,
+                     {})
+        .stations;
+  };
+  CHECK(stations("daily = [\"a.nc\", \"b.nc\"]\n").sites.empty());
+  CHECK(stations("monthly = \"a.nc\"\n").undercatch.empty());
+  CHECK(stations("sites = \"s.csv\"\ndaily = \"d.nc\"\nundercatch = \"catch\"\n").undercatch == "catch");
+  CHECK_THROWS_AS(stations("daily = [\"a.nc\", \"b.csv\"]\n"), windrow::Error);
+}
+
 TEST_CASE("every key of [stations] and [reach] is read") {
   const JobSpec job = parse_job("/proj/job.toml", job_texts::kEveryKey, {});
   const StationSpec& stations = job.stations;
