@@ -3,6 +3,7 @@
 
 #include <hdf5.h>
 
+#include <algorithm>
 #include <utility>
 
 namespace windrow::cf {
@@ -234,6 +235,35 @@ std::vector<std::int64_t> File::integers(const Var& variable) const {
     throw Error(Failure::data, path_, "variable '" + variable.name + "' holds a number that is beyond any index");
   check(status, path_, "variable " + variable.name);
   return {values.begin(), values.end()};
+}
+
+std::vector<std::string> File::texts(const Var& variable, std::size_t count) const {
+  const std::size_t values = size(variable);
+  const bool rows = variable.type == NC_CHAR && count > 0 && values % count == 0;
+  if (!rows && values != count)
+    throw Error(Failure::data, path_,
+                "variable '" + variable.name + "' holds " + std::to_string(values) + " texts, " +
+                    std::to_string(count) + " were expected");
+  std::vector<std::string> out;
+  if (variable.type == NC_STRING) {
+    std::vector<char*> strings(values, nullptr);
+    const LibraryLock lock;
+    if (!strings.empty()) check(nc_get_var_string(id_, variable.id, strings.data()), path_, variable.name);
+    for (const char* text : strings) out.emplace_back(text == nullptr ? "" : text);
+    nc_free_string(values, strings.data());
+  } else if (rows) {
+    std::string all(values, '\0');
+    const LibraryLock lock;
+    check(nc_get_var_text(id_, variable.id, all.data()), path_, "variable " + variable.name);
+    for (std::size_t i = 0; i < count; ++i) out.push_back(all.substr(i * (values / count), values / count));
+  } else {
+    for (const std::int64_t number : integers(variable)) out.push_back(std::to_string(number));
+  }
+  for (std::string& text : out) {
+    text.resize(std::min(text.size(), text.find('\0')));
+    while (!text.empty() && text.back() == ' ') text.pop_back();
+  }
+  return out;
 }
 
 void File::raw(const Var& variable, std::span<const std::size_t> start, std::span<const std::size_t> count,

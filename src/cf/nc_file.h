@@ -84,6 +84,9 @@ class File {
   [[nodiscard]] std::vector<double> doubles(const Var& variable) const;
   /// All values of an integer variable, exactly. Error(data) for another type or a value beyond 63 bits.
   [[nodiscard]] std::vector<std::int64_t> integers(const Var& variable) const;
+  /// `count` texts of a string variable, of rows of a char variable, or integers as text; trailing NULs and blanks
+  /// dropped. Error(data) for other types and other numbers of values.
+  [[nodiscard]] std::vector<std::string> texts(const Var& variable, std::size_t count) const;
   /// A hyperslab in the variable's own type and native byte order; `out` holds type_size * product(count) bytes.
   void raw(const Var& variable, std::span<const std::size_t> start, std::span<const std::size_t> count,
            void* out) const;

@@ -23,13 +23,6 @@ using calendar::kDay;
 constexpr Instant kSecond = 1'000'000;
 constexpr Instant kSnap = 50'000;  ///< half of what a sixth decimal of a day is worth, rounded up
 
-Instant snapped(Instant instant) {
-  const Instant rest = ((instant % kSecond) + kSecond) % kSecond;
-  if (rest <= kSnap) return instant - rest;
-  if (rest >= kSecond - kSnap) return instant + (kSecond - rest);
-  return instant;
-}
-
 bool near(Instant a, Instant b) { return std::abs(a - b) <= kSecond; }
 
 /// Months since year 0 of the month that contains the instant.
@@ -136,6 +129,13 @@ std::int64_t median_difference(const std::vector<TimeStep>& steps, Number number
 }
 
 }  // namespace
+
+Instant snapped(Instant instant) {
+  const Instant rest = ((instant % kSecond) + kSecond) % kSecond;
+  if (rest <= kSnap) return instant - rest;
+  if (rest >= kSecond - kSnap) return instant + (kSecond - rest);
+  return instant;
+}
 
 FileTime read_time(const nc::File& file, const Header& header, const nc::Var& coordinate, Remarks& remarks) {
   if (!coordinate.text("climatology").empty())

@@ -18,6 +18,9 @@ struct FileTime {
 /// second (decimal days). Error(data) for climatological axes, undecodable or non-ascending times, missing times.
 FileTime read_time(const nc::File& file, const Header& header, const nc::Var& coordinate, Remarks& remarks);
 
+/// The whole second, when the instant is within 0.05 s of one (decimal days).
+calendar::Instant snapped(calendar::Instant instant);
+
 /// Daily or monthly when the cells (with bounds) or the spacing of times (without) say so; gaps do not matter.
 Frequency frequency_of(const calendar::Calendar& calendar, const std::vector<TimeStep>& steps, bool bounds);
 

@@ -40,9 +40,15 @@ std::vector<std::pair<std::string, double>> cover_figures(const StageContext& co
 
 std::vector<std::pair<std::string, std::int64_t>> count_figures(const StageContext& context, const Product& product,
                                                                 const pipeline::TileStats& stats) {
-  static const std::array<const char*, pipeline::kCounts> kNames = {
-      "missing", "filled", "below_min_cover_or_land", "clamped_low", "clamped_high", "below_calibrated_range",
-      "above_calibrated_range", "nodes_reordered", "ratios_capped"};
+  static const std::array<const char*, pipeline::kCounts> kNames = {"missing",
+                                                                    "filled",
+                                                                    "below_min_cover_or_land",
+                                                                    "clamped_low",
+                                                                    "clamped_high",
+                                                                    "below_calibrated_range",
+                                                                    "above_calibrated_range",
+                                                                    "nodes_reordered",
+                                                                    "ratios_capped"};
   const auto values = static_cast<std::int64_t>(context.target.mesh->size() * (product.span.t1 - product.span.t0));
   std::vector<std::pair<std::string, std::int64_t>> out{{"values", values}};
   for (std::size_t i = 0; i < pipeline::kCounts; ++i) {
@@ -73,8 +79,8 @@ report::Ledger ledger_of(const StageContext& context, const Product& product, co
   out.product_version = job.version;
   for (const auto& [name, digest] : product.key.parts) out.key.emplace_back(name, digest.hex());
   out.settings = job::product_settings(job, context.field, context.run, job::Effect::encoding);
-  out.libraries = {{"netcdf", cf::library_version()}, {"proj_gdal", geo::library_version()},
-                   {"codec", codec::library_version()}};
+  out.libraries = {
+      {"netcdf", cf::library_version()}, {"proj_gdal", geo::library_version()}, {"codec", codec::library_version()}};
   for (const auto& path : product.inputs) {
     const std::string told = told_path(path, context.session.folder());
     for (const auto& [name, digest] : product.key.parts) {
@@ -128,8 +134,9 @@ void assemble(const StageContext& context, std::size_t index, const pipeline::Sp
   std::vector<std::byte> chunk;
   try {
     cf::write_product(temporary, file, [&](std::size_t variable, std::size_t at) -> std::span<const std::byte> {
-      spool.payload({context.input.products[index].key, static_cast<std::uint32_t>(variable),
-                     static_cast<std::uint32_t>(at)}, chunk);
+      spool.payload(
+          {context.input.products[index].key, static_cast<std::uint32_t>(variable), static_cast<std::uint32_t>(at)},
+          chunk);
       return chunk;
     });
   } catch (const Error& error) {

@@ -22,8 +22,8 @@ struct StageContext {
   const linear_map::Weights& weights;
   const Regridding& regridding;
   const Scan& scan;
-  const Calibration* calibration;            ///< null: regridding only
-  std::vector<Notice> notices;               ///< of this field and run: files, stations
+  const Calibration* calibration;  ///< null: regridding only
+  std::vector<Notice> notices;     ///< of this field and run: files, stations
   units::Conversion conversion;
   std::string output_units;
   std::vector<Product> products;

@@ -7,27 +7,15 @@
 #include <limits>
 #include <optional>
 
+#include "adjust_setup.h"
 #include "carrying.h"
 #include "lapse_fit.h"
+#include "station_tables.h"
 #include "windrow/base/error.h"
-#include "windrow/os/files.h"
 #include "windrow/station/station.h"
 
 namespace windrow::engine {
 namespace {
-
-bool is_rate(const std::string& units) {
-  for (const char* rate : {"m s-1", "kg m-2 s-1"}) {
-    try {
-      // A speed is a rate in units too, but no water: callers ask for fields whose stations give sums.
-      units::conversion(units, rate, "", "");
-      return true;
-    } catch (const Error&) {
-      continue;
-    }
-  }
-  return false;
-}
 
 /// Impossible values when the job gives no range: outside the records of the WMO archive of weather and climate
 /// extremes
@@ -46,68 +34,20 @@ std::pair<double, double> possible_range(const job::FieldSpec& field, const std:
   return {-far, far};
 }
 
-bool is_water(const std::string& standard_name) {
-  return standard_name.find("precipitation") != std::string::npos ||
-         standard_name.find("rainfall") != std::string::npos || standard_name.find("snowfall") != std::string::npos;
-}
-
-adjust::Method method_of(job::Adjustment method) {
-  switch (method) {
-    case job::Adjustment::mean_ratio:
-      return adjust::Method::mean_ratio;
-    case job::Adjustment::variance_scaling:
-      return adjust::Method::variance_scaling;
-    case job::Adjustment::quantile_mapping:
-      return adjust::Method::quantile_mapping;
-    case job::Adjustment::detrended_quantile_mapping:
-      return adjust::Method::detrended_quantile_mapping;
-    case job::Adjustment::quantile_delta_mapping:
-      return adjust::Method::quantile_delta_mapping;
-    case job::Adjustment::gamma_mapping:
-      return adjust::Method::gamma_mapping;
-    default:
-      return adjust::Method::mean_shift;
-  }
-}
-
-/// The wet-day threshold in output units; 0: none. 1 mm/day for precipitation by the quantile methods, unless given.
-double wet_day_of(const job::AdjustSpec& spec, const units::Conversion& conversion, const std::string& output_units,
-                  const std::string& place) {
-  if (spec.form != job::Form::multiplicative) return 0;
-  const bool rain = is_water(conversion.standard_name) && is_rate(output_units);
-  if (!spec.wet_day) {
-    const bool by_itself = rain && spec.method != job::Adjustment::mean_ratio;
-    return by_itself ? units::conversion("mm/day", output_units, "", place).affine(1.0) : 0;
-  }
-  try {
-    return units::conversion(spec.wet_day->second, output_units, "", place).affine(spec.wet_day->first);
-  } catch (const Error&) {
-    throw Error(Failure::job, place,
-                fmt::format("wet_day is in '{}', the field in '{}'; expected a threshold in units that convert",
-                            spec.wet_day->second, output_units));
-  }
-}
-
-std::vector<text::CsvTable> tables(const std::vector<std::string>& paths) {
-  std::vector<text::CsvTable> out;
-  out.reserve(paths.size());
-  for (const auto& path : paths) out.push_back(text::CsvTable::parse(os::read_text(path), path));
-  return out;
-}
-
 std::vector<station::Record> records(const CalibrationNeeds& needs, Notices& notices) {
   const auto& spec = needs.job.stations;
-  station::Tables files{text::CsvTable::parse(os::read_text(spec.sites), spec.sites), tables(spec.daily),
-                        tables(spec.monthly), tables(spec.normals)};
+  const auto files = station_tables(spec, needs.field.adjust.observed, notices);
   station::Options options;
   options.observed = needs.field.adjust.observed;
   options.units = needs.output_units;
   const std::string& name = needs.conversion.standard_name;
-  const bool water = is_water(name);
+  const bool water = is_precipitation(name);
   options.kind = water ? station::Kind::sum : station::Kind::mean;
   options.per_day_rate = water && is_rate(needs.output_units);
   std::tie(options.low, options.high) = possible_range(needs.field, needs.output_units, name);
   options.min_years = spec.min_years;
+  options.day_shift = spec.day_shift;
+  if (water) options.undercatch = spec.undercatch;
   if (spec.normals_period) std::tie(options.normals_first, options.normals_last) = *spec.normals_period;
   return station::read_records(files, {spec.columns, spec.units}, options, notices);
 }
@@ -172,6 +112,19 @@ std::vector<std::vector<double>> model_series(const CalibrationNeeds& needs, con
   return out;
 }
 
+/// A threshold finer than the gauges read would count rounding as rain.
+void check_resolution(const adjust::Setup& setup, const std::vector<station::Record>& records,
+                      const std::string& place) {
+  if (!setup.wet_days() || setup.wet_day <= 0) return;
+  for (const auto& record : records) {
+    if (!(record.resolution > setup.wet_day * (1 + 1e-6))) continue;
+    throw Error(Failure::data, place,
+                fmt::format("wet_day is {:.4g}, below the resolution of station {}'s gauge, {:.4g}; expected a "
+                            "threshold no finer than the gauges read",
+                            setup.wet_day, record.site.id, record.resolution));
+  }
+}
+
 [[noreturn]] void no_station(const CalibrationNeeds& needs, const std::vector<report::StationRecord>& outcomes) {
   std::string why =
       outcomes.empty() ? "of those in the tables none can be used; the notes say why" : outcomes.front().outcome;
@@ -204,32 +157,6 @@ std::vector<calendar::Date> step_dates(const cf::RunVariable& variable) {
   return out;
 }
 
-adjust::Setup adjust_setup(const job::AdjustSpec& spec, const cf::RunVariable& variable,
-                           const units::Conversion& conversion, const std::string& output_units,
-                           const std::string& place) {
-  adjust::Setup out;
-  const auto frequency = variable.frequency();
-  if (frequency != cf::Frequency::daily && frequency != cf::Frequency::monthly) {
-    throw Error(Failure::data, place, "adjustment needs daily or monthly means; this variable has neither");
-  }
-  out.daily = frequency == cf::Frequency::daily;
-  out.method = method_of(spec.method);
-  out.ratio_form = spec.form == job::Form::multiplicative;
-  out.window_years = spec.window_years;
-  out.window_step = spec.window_step;
-  out.wet_day = wet_day_of(spec, conversion, output_units, place);
-  if (!out.daily && spec.season_given && spec.season != job::SeasonKind::month) {
-    throw Error(Failure::data, place, "monthly values need season = \"month\"");
-  }
-  out.seasons = !out.daily || spec.season == job::SeasonKind::month ? calendar::Seasons::by_month()
-                : spec.season == job::SeasonKind::year              ? calendar::Seasons::by_year()
-                                                       : calendar::Seasons::moving(spec.window_days, spec.day_step);
-  out.quantiles = spec.quantiles;
-  out.max_ratio = spec.max_ratio;
-  out.carry_target = spec.carry == job::Carry::target;
-  return out;
-}
-
 std::array<double, 12> lapse_in(const job::TerrainSpec& terrain, const std::string& output_units) {
   double scale = 1;
   if (units::is_temperature(output_units)) scale = units::conversion("K", output_units, "", "").affine.scale;
@@ -246,6 +173,7 @@ Calibration calibrate(const CalibrationNeeds& needs, Notices& notices) {
   out.steps = adjust::make_steps(out.setup, needs.anchor.variable->calendar(), step_dates(*needs.anchor.variable),
                                  needs.field.adjust.period, true, place_text);
   const auto all = records(needs, notices);
+  check_resolution(out.setup, all, place_text);
   const auto placed = place(needs, all, notices, out.stations);
   if (placed.empty()) no_station(needs, out.stations);
   auto series = model_series(needs, placed);

@@ -45,12 +45,6 @@ Calibration calibrate(const CalibrationNeeds& needs, Notices& notices);
 /// The calendar date a time step stands for: the middle of its bounds.
 std::vector<calendar::Date> step_dates(const cf::RunVariable& variable);
 
-/// Method, seasons and limits of a field for a run of the given frequency. Error(data) for what is neither daily nor
-/// monthly.
-adjust::Setup adjust_setup(const job::AdjustSpec& spec, const cf::RunVariable& variable,
-                           const units::Conversion& conversion, const std::string& output_units,
-                           const std::string& place);
-
 /// Lapse rate of each month in output units per metre.
 std::array<double, 12> lapse_in(const job::TerrainSpec& terrain, const std::string& output_units);
 

@@ -91,27 +91,24 @@ class Carrier {
   }
 
   /// Noise, drift and variogram, each from what the others leave: the drift by ordinary least squares, the variogram of
-  /// what remains, the drift by that variogram, and the variogram again.
+  /// what remains, the drift by that variogram, and the variogram again. All of them are learnt from what is carried:
+  /// corrections hold the steps between coarse cells, which a variogram takes for noise, so that kriging of targets by
+  /// it would average far and wide.
   void learn() {
     const auto& spec = needs_.job.reach;
     if (!spec.kriges()) return;
-    const std::size_t seasons = out_.setup.season_count();
-    std::vector<double> corrections;
-    for (const Fitted& f : fitted_) {
-      corrections.insert(corrections.end(), f.fit.correction_level.begin(), f.fit.correction_level.end());
+    options_.noise = reach::standardised_noise(out_.station_level, sampling_variance(fitted_, out_.setup),
+                                               out_.setup.season_count());
+    if (spec.method != job::ReachMethod::kriging_height) {
+      options_.variogram = variogram(out_.station_level);
+      return;
     }
-    options_.noise = reach::standardised_noise(corrections, sampling_variance(fitted_, out_.setup), seasons);
-    const bool height = spec.method == job::ReachMethod::kriging_height;
-    auto rest = corrections;
-    if (height) take_off(fit_drift(corrections, std::nullopt), height_, rest);
+    auto rest = out_.station_level;
+    take_off(fit_drift(std::nullopt), height_, rest);
     options_.variogram = variogram(rest);
-    if (!height) return;
-    rest = corrections;
-    take_off(fit_drift(corrections, options_.variogram), height_, rest);
-    options_.variogram = variogram(rest);
-    // What is carried has a drift of its own: with targets, the model's part of it too.
-    out_.drift = fit_drift(out_.station_level, options_.variogram, &notices_);
+    out_.drift = fit_drift(options_.variogram);
     if (out_.drift.used) take_off(out_.drift, height_, out_.station_level);
+    options_.variogram = variogram(out_.station_level);
   }
 
   [[nodiscard]] reach::ReachMap make(bool with_shape) const {
@@ -136,12 +133,11 @@ class Carrier {
     return reach::fit_variogram(position_, values, out_.setup.season_count(), options_.noise, model_of(given.model),
                                 notices_);
   }
-  [[nodiscard]] reach::Drift fit_drift(const std::vector<double>& values,
-                                       const std::optional<reach::Variogram>& variogram,
-                                       Notices* told = nullptr) const {
+  /// What it says, it says when it has its final variogram.
+  [[nodiscard]] reach::Drift fit_drift(const std::optional<reach::Variogram>& variogram) const {
     Notices quiet;
-    return reach::fit_drift(height_, values, out_.setup.season_count(), position_, variogram, options_.noise,
-                            told != nullptr ? *told : quiet);
+    return reach::fit_drift(height_, out_.station_level, out_.setup.season_count(), position_, variogram,
+                            options_.noise, variogram ? notices_ : quiet);
   }
 
   const CalibrationNeeds& needs_;

@@ -7,6 +7,7 @@
 
 #include "assemble.h"
 #include "describe_mesh.h"
+#include "station_tables.h"
 #include "windrow/calendar/time_units.h"
 #include "windrow/linear_map/kernel.h"
 
@@ -134,6 +135,12 @@ std::string Describer::comment() const {
       text += fmt::format("Adjusted to the mean of {} and {}, which is no 24-hour mean. ", observed[0], observed[1]);
     }
     if (!job.stations.day_note.empty()) text += job.stations.day_note + ". ";
+    if (is_precipitation(context_.conversion.standard_name)) {
+      text += job.stations.undercatch.empty()
+                  ? "Station values are not corrected for undercatch. "
+                  : fmt::format("Station values are multiplied by the undercatch factors of column '{}'. ",
+                                job.stations.undercatch);
+    }
     if (context_.calibration->period_mismatch) {
       text +=
           "The years of stations and model do not match: the climate change between them is part of the "

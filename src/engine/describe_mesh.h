@@ -1,4 +1,5 @@
-// The CF description of a product's mesh: dimensions, coordinates, bounds, geometry, grid mapping. Private to the engine.
+// The CF description of a product's mesh: dimensions, coordinates, bounds, geometry, grid mapping. Private to the
+// engine.
 #pragma once
 #include <string>
 #include <vector>
@@ -9,8 +10,8 @@
 namespace windrow::engine {
 
 struct MeshDescription {
-  std::vector<cf::Dimension> dimensions;        ///< all that the variables below use
-  std::vector<std::string> horizontal;          ///< of the data: two of a structured mesh, otherwise one
+  std::vector<cf::Dimension> dimensions;  ///< all that the variables below use
+  std::vector<std::string> horizontal;    ///< of the data: two of a structured mesh, otherwise one
   std::vector<cf::SmallVariable> variables;
   std::vector<cf::NamedValue> data_attributes;  ///< grid_mapping, coordinates, cell_measures, mesh, geometry
   std::vector<cf::NamedValue> global;           ///< featureType

@@ -1,5 +1,5 @@
-// How one field of one run reaches the mesh: its map, with vectors and masked cells, and the readers that feed it. Private
-// to the engine.
+// How one field of one run reaches the mesh: its map, with vectors and masked cells, and the readers that feed it.
+// Private to the engine.
 #pragma once
 #include <memory>
 #include <string>
@@ -22,8 +22,8 @@ struct FieldRegridding {
   ReaderSet readers;
 };
 
-/// `affine`: source units to output units. Error(data) when method and meshes, or the two components of a vector, do not go
-/// together.
+/// `affine`: source units to output units. Error(data) when method and meshes, or the two components of a vector, do
+/// not go together.
 FieldRegridding regrid_field(Session& session, std::size_t field, std::size_t run, const units::Affine& affine);
 
 /// Readers of another run of the family on the same grid.

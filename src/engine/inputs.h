@@ -38,8 +38,8 @@ class DigestCache {
 /// The run's patterns expanded, each file once, sorted. Error(missing) names the pattern that matches nothing.
 std::vector<std::string> run_files(const job::RunSpec& run);
 
-/// Waits until no file was changed within the last `settle_s` seconds: half-copied inputs are not read. Error(interrupted)
-/// when asked to stop meanwhile.
+/// Waits until no file was changed within the last `settle_s` seconds: half-copied inputs are not read.
+/// Error(interrupted) when asked to stop meanwhile.
 void wait_until_settled(const std::vector<std::vector<std::string>>& files, double settle_s);
 
 /// Path as the ledger tells it: relative to the job file's folder when below it.

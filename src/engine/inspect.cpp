@@ -7,10 +7,12 @@
 #include "calibration.h"
 #include "source.h"
 #include "windrow/base/error.h"
+#include "windrow/cf/stations.h"
 #include "windrow/engine/engine.h"
 #include "windrow/geo/raster.h"
 #include "windrow/os/files.h"
 #include "windrow/report/facts.h"
+#include "windrow/station/quality.h"
 #include "windrow/text/csv.h"
 
 namespace windrow::engine {
@@ -83,13 +85,21 @@ void inspect_variable(const std::string& path, const std::string& name, Fact& fa
     if (variable.frequency() != cf::Frequency::fixed) {
       const auto dates = step_dates(variable);
       fact.add({"calendar", variable.calendar().cf_name()});
-      fact.add({"period", fmt::format("{} to {}", calendar::to_string(dates.front()), calendar::to_string(dates.back()))});
+      fact.add(
+          {"period", fmt::format("{} to {}", calendar::to_string(dates.front()), calendar::to_string(dates.back()))});
       fact.add({"steps", static_cast<std::int64_t>(dates.size())});
     }
     fact.add({"missing share", missing_share(source)});
   } catch (const Error& error) {
     fact.add({"cannot be used", error.what()});
   }
+  for (const auto& notice : notices.list()) fact.add({"note", notice.text});
+}
+
+/// What the quality checks find in a table of stations; nothing of other tables.
+void add_findings(const text::CsvTable& table, Fact& fact) {
+  Notices notices;
+  station::tell(station::check_table(table), table.file(), notices);
   for (const auto& notice : notices.list()) fact.add({"note", notice.text});
 }
 
@@ -101,6 +111,22 @@ void inspect_table(const std::string& path, Fact& root) {
   for (const auto& heading : table.headings()) {
     columns.add({heading.name, heading.units.empty() ? "no units in the heading" : heading.units});
   }
+  add_findings(table, root);
+}
+
+/// A file of observations at stations: the same as of a table, from the table it becomes.
+void inspect_stations(const std::string& path, Fact& root) {
+  Notices notices;
+  Fact& fact = root.add(Fact("stations"));
+  try {
+    const auto sites = cf::read_station_sites({path}, notices);
+    fact.add({"number", static_cast<std::int64_t>(sites.rows())});
+    add_findings(sites, fact);
+    add_findings(cf::read_station_values(path, cf::StationSpan::day, {}, notices).table, fact);
+  } catch (const Error& error) {
+    fact.add({"cannot be used as daily observations", error.what()});
+  }
+  for (const auto& notice : notices.list()) fact.add({"note", notice.text});
 }
 
 void inspect_raster(const std::string& path, Fact& root) {
@@ -127,6 +153,7 @@ Report inspect(const std::string& path) {
     const auto names = cf::data_variables(path);
     if (names.empty()) throw Error(Failure::data, path, "holds no data variable");
     for (const auto& name : names) inspect_variable(path, name, root.add(Fact(name)));
+    if (cf::has_stations(path)) inspect_stations(path, root);
   } else if (geo::looks_like_raster(path)) {
     inspect_raster(path, root);
   } else {

@@ -7,7 +7,8 @@
 
 namespace windrow::engine {
 
-/// `PRODUCT: JOB INPUT...` lines for GNU make, blanks, `#` and `$` escaped; the file is left alone when nothing changed.
+/// `PRODUCT: JOB INPUT...` lines for GNU make, blanks, `#` and `$` escaped; the file is left alone when nothing
+/// changed.
 void write_make_deps(const std::string& path, const std::vector<Product>& products, const std::string& job_file);
 
 }  // namespace windrow::engine

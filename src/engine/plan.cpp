@@ -13,8 +13,8 @@ namespace {
 
 using report::Fact;
 
-// Rough share of deflated size, and rates of one thread: half of what tools/bench showed with two threads (274 and 84 MB/s,
-// the latter quantile mapping by month on a busy machine). They are told to people and decide nothing.
+// Rough share of deflated size, and rates of one thread: half of what tools/bench showed with two threads (274 and 84
+// MB/s, the latter quantile mapping by month on a busy machine). They are told to people and decide nothing.
 constexpr double kDeflatedShare = 0.6;
 constexpr double kTileBytesPerSecond = 137e6;
 constexpr double kColumnBytesPerSecond = 42e6;

@@ -102,8 +102,8 @@ void Runner::collect() {
       }
       for (const auto& product : stage.products) {
         const bool current = product.stale.empty();
-        summary_.products.push_back({product.path, current ? State::current : State::failed,
-                                     current ? "up to date" : "not reached"});
+        summary_.products.push_back(
+            {product.path, current ? State::current : State::failed, current ? "up to date" : "not reached"});
       }
       stages_.push_back(std::move(stage));
     }
@@ -159,8 +159,8 @@ void Runner::make(StageJob& stage) {
 
 void Runner::make_unguarded(StageJob& stage, Notices& notices) {
   const auto& job = session_.job;
-  const std::string name = fmt::format("{}-{}-{}", job.fields[stage.field].name, job.runs[stage.run].name,
-                                       job.mesh.name);
+  const std::string name =
+      fmt::format("{}-{}-{}", job.fields[stage.field].name, job.runs[stage.run].name, job.mesh.name);
   progress_.phase(fmt::format("{} of {}", job.fields[stage.field].name, job.runs[stage.run].name));
   const auto setup = set_up(session_, fits_, stage.field, stage.run, stage.products, notices);
   auto& context = *setup->context;
@@ -183,7 +183,8 @@ void Runner::make_unguarded(StageJob& stage, Notices& notices) {
     progress_.product();
     event("made", fmt::format("{} ({})", product.path, product.stale));
   };
-  pipeline::run_stage(context.input, setup->stage, *setup->run_readers.top(), setup->anchor_readers.top(), spool, hooks);
+  pipeline::run_stage(context.input, setup->stage, *setup->run_readers.top(), setup->anchor_readers.top(), spool,
+                      hooks);
   spool.remove();
 }
 
@@ -206,8 +207,8 @@ Summary Runner::run() {
     session_.digests().save();
     check_space();
     for (auto& stage : stages_) {
-      const bool any = std::any_of(stage.products.begin(), stage.products.end(),
-                                   [](const Product& p) { return !p.stale.empty(); });
+      const bool any =
+          std::any_of(stage.products.begin(), stage.products.end(), [](const Product& p) { return !p.stale.empty(); });
       if (!any) continue;
       lease.confirm();
       make(stage);

@@ -8,8 +8,8 @@
 namespace windrow::engine {
 namespace {
 
-// Columns whose overlap equals their own area within this are wholly inside the mesh; far above the rounding of the sums
-// (1e-12 + 8 eps * perimeter / area) and far below any cell that is really cut.
+// Columns whose overlap equals their own area within this are wholly inside the mesh; far above the rounding of the
+// sums (1e-12 + 8 eps * perimeter / area) and far below any cell that is really cut.
 constexpr double kWholeTolerance = 1e-9;
 
 }  // namespace

@@ -61,8 +61,8 @@ const Target& Session::target() {
 Session::Opened& Session::opened(std::size_t field, std::size_t run) {
   Opened& found = sources_[{run, job.fields[field].variable}];
   if (!found.source.variable) {
-    found.source.variable = cf::open_run(files_[run], job.fields[field].variable, found.notices,
-                                          hints_of(job.runs[run].grid));
+    found.source.variable =
+        cf::open_run(files_[run], job.fields[field].variable, found.notices, hints_of(job.runs[run].grid));
   }
   return found;
 }
@@ -88,9 +88,7 @@ std::optional<std::size_t> Session::partner_of(std::size_t field) const {
   return {};
 }
 
-std::vector<Notice> Session::notices(std::size_t field, std::size_t run) {
-  return opened(field, run).notices.list();
-}
+std::vector<Notice> Session::notices(std::size_t field, std::size_t run) { return opened(field, run).notices.list(); }
 
 std::size_t Session::anchor_of(std::size_t run) const {
   for (std::size_t i = 0; i < job.runs.size(); ++i) {
@@ -160,8 +158,9 @@ std::vector<Product> Session::products(std::size_t field, std::size_t run) {
     product.field = field;
     product.run = run;
     product.path = product_path(field, run, dates[t].year);
-    product.ledger_path = (product.path.ends_with(".nc") ? product.path.substr(0, product.path.size() - 3)
-                                                         : product.path) + ".ledger.json";
+    product.ledger_path =
+        (product.path.ends_with(".nc") ? product.path.substr(0, product.path.size() - 3) : product.path) +
+        ".ledger.json";
     product.span = {t, end, true};
     product.key = key_of(field, run, product.span, product.inputs);
     product.key_digest = digest_of(product.key);

@@ -42,7 +42,7 @@ class Session {
   [[nodiscard]] const std::vector<std::string>& files(std::size_t run) const { return files_[run]; }
   DigestCache& digests() { return *digests_; }
   MapStore& maps() { return *maps_; }
-  const Target& target();                                    ///< made on first use
+  const Target& target();  ///< made on first use
   const cf::RunVariable& variable(std::size_t field, std::size_t run);
   const Source& source(std::size_t field, std::size_t run);  ///< variable with its mesh
   /// The other field of a vector pair; nothing for a scalar.

@@ -24,8 +24,10 @@ std::string only_variable(const std::string& path, const std::string& standard_n
     if (cf::open_run({path}, name, notices, hints)->info().standard_name == standard_name) fitting.push_back(name);
   }
   if (fitting.size() == 1) return fitting.front();
-  throw Error(Failure::data, path, fmt::format("holds {} variables and not exactly one with standard_name {}; expected "
-                                               "a file with one field", names.size(), standard_name));
+  throw Error(Failure::data, path,
+              fmt::format("holds {} variables and not exactly one with standard_name {}; expected "
+                          "a file with one field",
+                          names.size(), standard_name));
 }
 
 }  // namespace
@@ -48,7 +50,8 @@ FixedField read_fixed(const std::string& path, const std::string& standard_name,
     throw Error(Failure::data, fmt::format("{}: {}", path, out.variable), "varies in time; expected a fixed field");
   }
   const auto& info = source.variable->info();
-  const auto convert = units::conversion(info.units, units, info.standard_name, fmt::format("{}: {}", path, out.variable));
+  const auto convert =
+      units::conversion(info.units, units, info.standard_name, fmt::format("{}: {}", path, out.variable));
   out.mesh = source.mesh;
   out.units = units;
   std::vector<std::uint32_t> cells(out.mesh->size());

@@ -43,8 +43,8 @@ FixedField read_height(const std::string& path, const mesh::Earth& earth, Notice
 /// A raster's or a CF file's numbers as they are: where they are neither zero nor missing, the mask is open.
 FixedField read_mask(const std::string& path, const mesh::Earth& earth, Notices& notices);
 
-/// A fixed field averaged conservatively onto the mesh; NaN where nothing covers a cell. `cover`, where given, takes the
-/// share of each cell that has a value.
+/// A fixed field averaged conservatively onto the mesh; NaN where nothing covers a cell. `cover`, where given, takes
+/// the share of each cell that has a value.
 std::vector<double> onto_mesh(const FixedField& field, const mesh::Mesh& target, MapStore& maps,
                               std::vector<double>* cover = nullptr);
 

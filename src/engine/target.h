@@ -30,15 +30,15 @@ enum class MeshLayout {
 struct Target {
   mesh::MeshPtr mesh;
   MeshLayout layout = MeshLayout::latlon;
-  geo::Crs crs;                          ///< of the projection, or the geographic one
+  geo::Crs crs;  ///< of the projection, or the geographic one
   mesh::Earth earth;
   std::vector<double> x_edges, y_edges;  ///< of structured layouts: axis units, degrees on latlon and rotated ones
   std::size_t ny = 0, nx = 0;
-  cf::Grid grid;                         ///< records behind rotated, curvilinear, listed, healpix and faces layouts
-  std::vector<std::string> ids, names;   ///< catchments, towns
+  cf::Grid grid;                            ///< records behind rotated, curvilinear, listed, healpix and faces layouts
+  std::vector<std::string> ids, names;      ///< catchments, towns
   std::vector<mesh::PolygonCell> polygons;  ///< catchments, geographic degrees
-  std::vector<double> elevation;         ///< towns, metres; NaN: not given
-  std::vector<bool> outside;             ///< one a cell: less than half within the mask; empty without a mask
+  std::vector<double> elevation;            ///< towns, metres; NaN: not given
+  std::vector<bool> outside;                ///< one a cell: less than half within the mask; empty without a mask
   std::vector<Notice> notices;
 };
 

@@ -20,8 +20,7 @@ constexpr double kBalanceBound = 1e-13;
 
 class Voucher {
  public:
-  explicit Voucher(const std::string& path)
-      : path_(path), reader_(cf::open_product(path)) {
+  explicit Voucher(const std::string& path) : path_(path), reader_(cf::open_product(path)) {
     out_.product = path;
     const std::string stem = path.ends_with(".nc") ? path.substr(0, path.size() - 3) : path;
     ledger_path_ = stem + ".ledger.json";
@@ -66,7 +65,8 @@ void Voucher::check_ledger() {
         fmt::format("belongs to {}, windrow {}", ledger_->product, ledger_->version));
   const auto digest = digest_file(path_).hex();
   check("digest", digest == ledger_->product_digest,
-        digest == ledger_->product_digest ? "bytes are those the ledger states" : "the file was changed after it was made");
+        digest == ledger_->product_digest ? "bytes are those the ledger states"
+                                          : "the file was changed after it was made");
 }
 
 /// Strictly monotonic, bounds around every value, neighbours share bounds (CF 7.1).
@@ -103,8 +103,8 @@ void Voucher::check_structure() {
   }
   check("companions", missing.empty(), missing.empty() ? all : "missing: " + missing);
   const auto units = text(field_, "units");
-  check("data variable", !units.empty() && text(field_, "grid_mapping") == "crs" &&
-                             !text(field_, "cell_methods").empty(),
+  check("data variable",
+        !units.empty() && text(field_, "grid_mapping") == "crs" && !text(field_, "cell_methods").empty(),
         fmt::format("{} [{}], {}", field_, units, text(field_, "cell_methods")));
 }
 
@@ -114,7 +114,8 @@ void Voucher::check_values() {
   const std::size_t steps = timed ? dimensions.front().length : 1;
   float missing = 9.96920997e36F;
   for (const auto& attribute : reader_->attributes(field_)) {
-    if (attribute.name == "_FillValue" && !attribute.numbers.empty()) missing = static_cast<float>(attribute.numbers[0]);
+    if (attribute.name == "_FillValue" && !attribute.numbers.empty())
+      missing = static_cast<float>(attribute.numbers[0]);
   }
   codec::Hasher hasher;
   std::vector<float> values;
@@ -138,11 +139,13 @@ void Voucher::check_values() {
   check("finite", bad == 0, fmt::format("{} of {} values are neither finite nor missing", bad, total));
   if (!ledger_) return;
   for (const auto& [name, count] : ledger_->counts) {
-    if (name == "missing") check("missing", count == missing_count, fmt::format("{} in the file, {} in the ledger", missing_count, count));
+    if (name == "missing")
+      check("missing", count == missing_count, fmt::format("{} in the file, {} in the ledger", missing_count, count));
   }
   if (missing_count < total) {
     const bool same = static_cast<double>(low) == ledger_->minimum && static_cast<double>(high) == ledger_->maximum;
-    check("extremes", same, fmt::format("{} to {} in the file, {} to {} in the ledger", low, high, ledger_->minimum, ledger_->maximum));
+    check("extremes", same,
+          fmt::format("{} to {} in the file, {} to {} in the ledger", low, high, ledger_->minimum, ledger_->maximum));
   }
   for (const auto& [name, value] : ledger_->settings) {
     const auto to = value.find(" to ");
@@ -161,10 +164,11 @@ void Voucher::check_balance() {
     return;
   }
   check("conservation", all.relative <= kBalanceBound,
-        fmt::format("largest residual of a step {:.2e} of the integral, bound {:.0e}, as the ledger states", all.relative,
-                    kBalanceBound));
+        fmt::format("largest residual of a step {:.2e} of the integral, bound {:.0e}, as the ledger states",
+                    all.relative, kBalanceBound));
   out_.checks.push_back({"conservation anew", Verdict::needs_inputs, "the source integral needs the model files"});
-  out_.checks.push_back({"inputs", Verdict::needs_inputs, fmt::format("{} digests are in the ledger", ledger_->inputs.size())});
+  out_.checks.push_back(
+      {"inputs", Verdict::needs_inputs, fmt::format("{} digests are in the ledger", ledger_->inputs.size())});
 }
 
 Vouched Voucher::vouch() {

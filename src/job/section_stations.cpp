@@ -16,24 +16,61 @@ const Keys kStationKeys{
 
 namespace {
 
-bool clock_time(const std::string& text) {
-  if (text.size() != 5 || text[2] != ':') return false;
+constexpr int kDayMinutes = 24 * 60;
+
+/// Minutes of "HH:MM", up to 24:00; nothing for other text.
+std::optional<int> clock_minutes(const std::string& text) {
+  if (text.size() != 5 || text[2] != ':') return std::nullopt;
   for (const std::size_t i : {0U, 1U, 3U, 4U})
-    if (std::isdigit(static_cast<unsigned char>(text[i])) == 0) return false;
+    if (std::isdigit(static_cast<unsigned char>(text[i])) == 0) return std::nullopt;
   const int minutes = (text[0] - '0') * 600 + (text[1] - '0') * 60 + (text[3] - '0') * 10 + (text[4] - '0');
-  return text[3] < '6' && minutes <= 24 * 60;
+  if (text[3] > '5' || minutes > kDayMinutes) return std::nullopt;
+  return minutes;
 }
 
-// What is known of the hours a station's day covers, as a sentence part for the product.
-std::string day_note(const Table& stations) {
-  const auto table = stations.table("day", "'day' of [stations]", {{"ends", "zone", "label"}, {}});
-  if (!table) return {};
-  const std::string ends = table->text("ends", "24:00");
-  if (!clock_time(ends)) table->fail("ends", "'ends' is no time of day; expected one from \"00:00\" to \"24:00\"");
-  const std::string zone = table->text("zone", "UTC");
-  const bool at_end = table->word<bool>("label", {{{"start", false}, {"end", true}}, {}}, true);
-  return fmt::format("a station day ends at {} {} and carries the date of its {}", ends, zone,
-                     at_end ? "end" : "start");
+/// Minutes ahead of UTC of "UTC", "UTC+1", "UTC-03:30"; nothing for other text.
+std::optional<int> zone_minutes(const std::string& text) {
+  if (text == "UTC") return 0;
+  if (text.size() < 5 || !text.starts_with("UTC") || (text[3] != '+' && text[3] != '-')) return std::nullopt;
+  std::string clock = text.substr(4);
+  if (clock.find(':') == std::string::npos) clock += ":00";
+  if (clock.size() == 4) clock.insert(0, "0");
+  const auto minutes = clock_minutes(clock);
+  if (!minutes || *minutes > 14 * 60) return std::nullopt;
+  return text[3] == '-' ? -*minutes : *minutes;
+}
+
+/// Whole days from the date a value carries to the UTC date that holds most of its hours; on a tie the nearer one.
+int shift_of(int ends, int zone, bool labelled_at_end) {
+  const int begin = labelled_at_end ? ends - kDayMinutes : ends % kDayMinutes;
+  const int middle = begin + kDayMinutes / 2 - zone;  // minutes from the date's 00:00 UTC
+  const int day = middle >= 0 ? middle / kDayMinutes : -((-middle + kDayMinutes - 1) / kDayMinutes);
+  const bool tie = middle % kDayMinutes == 0;
+  return tie && day > 0 ? day - 1 : day;
+}
+
+// The hours a station's day covers: the days its dates move by, and a sentence for the product.
+void read_day(const Table& table, StationSpec& stations) {
+  const auto day = table.table("day", "'day' of [stations]", {{"ends", "zone", "label"}, {}});
+  if (!day) return;
+  const std::string ends = day->text("ends", "24:00");
+  const auto minutes = clock_minutes(ends);
+  if (!minutes) day->fail("ends", "'ends' is no time of day; expected one from \"00:00\" to \"24:00\"");
+  const std::string zone = day->text("zone", "UTC");
+  const auto offset = zone_minutes(zone);
+  if (!offset)
+    day->fail("zone", fmt::format("'{}' is no zone; expected UTC or hours ahead of it, such as \"UTC+1\" or "
+                                  "\"UTC-3:30\"",
+                                  printable(zone)));
+  const bool at_end = day->word<bool>("label", {{{"start", false}, {"end", true}}, {}}, true);
+  stations.day_shift = shift_of(*minutes, *offset, at_end);
+  stations.day_note =
+      fmt::format("A station day ends at {} {} and carries the date of its {}", ends, zone, at_end ? "end" : "start");
+  if (stations.day_shift != 0 && !stations.daily.empty())
+    stations.day_note += fmt::format(
+        "; daily values without time bounds are moved by {:+} day to the date that holds "
+        "most of their hours",
+        stations.day_shift);
 }
 
 void read_mappings(const Table& table, StationSpec& stations) {
@@ -77,8 +114,6 @@ std::optional<std::pair<int, int>> normals_period(const Table& table) {
 StationSpec read_stations(const Table& table) {
   StationSpec stations;
   stations.given = true;
-  if (!table.has("sites")) table.missing("sites", "a CSV file with station, longitude, latitude and elevation");
-  stations.sites = table.path("sites");
   stations.daily = table.paths("daily");
   stations.monthly = table.paths("monthly");
   stations.normals = table.paths("normals");
@@ -86,12 +121,23 @@ StationSpec read_stations(const Table& table) {
     table.document().fail(table.at(), "[stations] has no values; expected 'daily', 'monthly' or 'normals'");
   if (!stations.daily.empty() && !stations.monthly.empty())
     table.fail("monthly", "'monthly' stands beside 'daily'; expected one of them");
+  if (table.has("sites")) stations.sites = table.path("sites");
+  const auto& series = stations.daily.empty() ? stations.monthly : stations.daily;
+  const bool hold_sites = !series.empty() && std::ranges::all_of(series, [](const auto& path) {
+    return path.ends_with(".nc") || path.ends_with(".nc4");
+  });
+  if (stations.sites.empty() && !hold_sites)
+    table.missing("sites", "a CSV file with station, longitude, latitude and elevation");
   read_mappings(table, stations);
   stations.normals_period = normals_period(table);
   stations.min_years = table.whole("min_years", stations.min_years, 1, 1000);
-  stations.day_note = day_note(table);
-  if (table.text("undercatch", "none") != "none")
-    table.fail("undercatch", "a factor for 'undercatch' is not in this version; expected none");
+  read_day(table, stations);
+  stations.undercatch = table.text("undercatch", "none");
+  if (stations.undercatch.empty())
+    table.fail("undercatch", "'undercatch' is empty; expected none or a column of the sites table");
+  if (stations.undercatch == "none") stations.undercatch.clear();
+  if (!stations.undercatch.empty() && stations.sites.empty())
+    table.fail("undercatch", "factors for 'undercatch' stand in a sites table; expected 'sites' in [stations]");
   return stations;
 }
 

@@ -241,7 +241,7 @@ void add_stations(List& list, const StationSpec& stations) {
                                                               : "not given");
   list.add("stations.min_years", stations.min_years);
   list.add("stations.day", stations.day_note.empty() ? "not given" : stations.day_note);
-  list.add("stations.undercatch", "none");
+  list.add("stations.undercatch", or_none(stations.undercatch));
 }
 
 void add_reach(List& list, const ReachSpec& reach) {

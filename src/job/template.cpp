@@ -128,16 +128,17 @@ sites    = "in/towns.csv"     # station,longitude,latitude,elevation,name
 )toml";
 
 constexpr const char* kStations = R"toml(#[stations]
-#sites    = "in/sites.csv"    # station,longitude,latitude,elevation,name
-#daily    = "in/daily.csv"    # station,date,tas [degC]        (or monthly = ..., instead of it)
+#sites    = "in/sites.csv"    # station,longitude,latitude,elevation,name; CF timeSeries files hold their own
+#daily    = "in/daily.csv"    # station,date,tas [degC]        (or monthly = ..., instead of it; or CF NetCDF)
 # monthly = "in/monthly.csv"  # station,year,month,tas [degC]
 #normals  = "in/normals.csv"  # station,month,tas [degC]       (instead of, or beside the series)
 #columns  = { station = "id", elevation = "elev_m" }    # when a file's headings differ
 #units    = { tmin_degC = "degC" }                      # when a heading carries no [unit]
 #normals_period = [1981, 2010]
 #min_years = 10               # a station with fewer complete years is left out, and said so
-#day      = { ends = "24:00", zone = "UTC", label = "end" }   # the hours a station day covers; kept in the product
-#undercatch = "none"
+#day      = { ends = "24:00", zone = "UTC", label = "end" }   # the hours a station day covers; dates are moved
+                              # by whole days to the UTC date that holds most of them
+#undercatch = "none"          # or the column of the sites table with factors for precipitation
 
 # How a station's correction reaches the cells between stations.
 #[reach]

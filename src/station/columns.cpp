@@ -47,9 +47,7 @@ std::size_t need_column(const text::CsvTable& table, const Mapping& mapping, con
   return *column;
 }
 
-std::string place_of(const text::CsvTable& table, std::size_t row) {
-  return fmt::format("{}:{}", table.file(), table.line(row));
-}
+std::string place_of(const text::CsvTable& table, std::size_t row) { return table.place(row); }
 
 std::optional<double> number_at(const text::CsvTable& table, std::size_t row, std::size_t column) {
   const std::string_view text = table.at(row, column);

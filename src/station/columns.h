@@ -19,7 +19,6 @@ std::optional<std::size_t> find_column(const text::CsvTable& table, const Mappin
 std::size_t need_column(const text::CsvTable& table, const Mapping& mapping, const std::string& name);
 Error no_column(const text::CsvTable& table, const Mapping& mapping, const std::string& name);
 
-/// "file:line"
 std::string place_of(const text::CsvTable& table, std::size_t row);
 /// nullopt where missing (empty, NA, NaN); Error(data) when it is no finite number.
 std::optional<double> number_at(const text::CsvTable& table, std::size_t row, std::size_t column);

@@ -9,6 +9,7 @@
 #include "details.h"
 #include "sites.h"
 #include "values.h"
+#include "windrow/station/quality.h"
 
 namespace windrow::station {
 namespace {
@@ -96,6 +97,17 @@ Series choose(Series daily, Series monthly, const Site& site, bool has_normals, 
   return {};
 }
 
+/// Everything observed times the station's factor; false, untouched, where it has none. The resolution remains the
+/// gauge's own.
+bool catch_more(Record& record, const std::map<std::string, double>& factors) {
+  const auto factor = factors.find(record.site.id);
+  if (factor == factors.end()) return false;
+  for (double& x : record.daily.value) x *= factor->second;
+  for (MonthlyValue& v : record.monthly) v.value *= factor->second;
+  for (double& x : record.normal) x *= factor->second;
+  return true;
+}
+
 /// Error for observed columns that no table has: the first one missing, against the first table there is.
 [[noreturn]] void nowhere(const Tables& tables, const Mapping& mapping, const Options& options) {
   for (const auto* group : {&tables.daily, &tables.monthly, &tables.normals}) {
@@ -113,9 +125,14 @@ std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, c
   std::unordered_map<std::string, std::size_t> station_of;
   for (std::size_t i = 0; i < sites.size(); ++i) station_of.emplace(sites[i].id, i);
   bool found = false;
+  std::vector<ObservedColumn> each;
   const auto read = [&](const std::vector<text::CsvTable>& group, TableKind kind) {
-    return read_values(group, kind, station_of, mapping, options, notices, found);
+    auto values = read_values(group, kind, station_of, mapping, options, notices, tables.hours_known, found, each);
+    if (!group.empty() && kind != TableKind::normals) tell(check_columns(sites, each), group.front().file(), notices);
+    return values;
   };
+  tell(check_positions(sites), tables.sites.file(), notices);
+  const auto factors = read_factors(tables.sites, mapping, options.undercatch);
   const auto daily = read(tables.daily, TableKind::daily);
   const auto monthly = read(tables.monthly, TableKind::monthly);
   const auto normals = read(tables.normals, TableKind::normals);
@@ -124,6 +141,7 @@ std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, c
   std::vector<Record> records;
   Tally tally;
   Details silent(notices, "stations have no value and are left out");
+  Details factorless(notices, "stations have no undercatch factor and are left out");
   for (std::size_t i = 0; i < sites.size(); ++i) {
     Record record;
     record.normal = from_normals(normals[i]);
@@ -135,13 +153,21 @@ std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, c
       silent.add(tables.sites.file(), fmt::format("station '{}' has no value and is left out", sites[i].id));
     }
     if (series.monthly.empty() && record.normal.empty()) continue;
+    if (options.kind == Kind::sum) record.resolution = resolution_of(series.daily.value);
     record.daily = std::move(series.daily);
     record.monthly = std::move(series.monthly);
     record.complete_years = series.complete_years;
     record.site = std::move(sites[i]);
+    if (!options.undercatch.empty() && !catch_more(record, factors)) {
+      factorless.add(tables.sites.file(),
+                     fmt::format("station '{}' has no undercatch factor in column '{}' and is left out", record.site.id,
+                                 options.undercatch));
+      continue;
+    }
     records.push_back(std::move(record));
   }
   silent.finish(tables.sites.file());
+  factorless.finish(tables.sites.file());
   if (tally.incomplete > 0) {
     notices.add(tables.daily.front().file(),
                 fmt::format("{} of {} station months are incomplete and left out (WMO-No. 1203, 4.4)", tally.incomplete,

@@ -15,6 +15,8 @@
 namespace windrow::station {
 namespace {
 
+constexpr double kMostFactor = 10;
+
 struct SiteColumns {
   std::size_t station, longitude, latitude;
   std::optional<std::size_t> elevation, name;
@@ -85,6 +87,31 @@ std::vector<Site> read_sites(const text::CsvTable& table, const Mapping& mapping
     if (!ambiguous[i]) kept.push_back(std::move(sites[i]));
   }
   return kept;
+}
+
+std::map<std::string, double> read_factors(const text::CsvTable& table, const Mapping& mapping,
+                                           const std::string& column) {
+  std::map<std::string, double> factors;
+  if (column.empty()) return factors;
+  const int found = table.column(column);
+  if (found < 0) {
+    std::vector<std::string> names;
+    for (const text::Heading& heading : table.headings()) names.push_back(heading.name);
+    throw Error(Failure::data, table.file(),
+                fmt::format("no column '{}' of undercatch factors; it has {}", column, fmt::join(names, ", ")));
+  }
+  const std::size_t station = need_column(table, mapping, "station");
+  for (std::size_t row = 0; row < table.rows(); ++row) {
+    const auto factor = number_at(table, row, static_cast<std::size_t>(found));
+    if (!factor) continue;
+    if (!(*factor > 0) || *factor > kMostFactor) {
+      throw Error(Failure::data, place_of(table, row),
+                  fmt::format("column '{}': {} is no undercatch factor; expected one above 0 and at most {}", column,
+                              *factor, kMostFactor));
+    }
+    factors.emplace(std::string(table.at(row, station)), *factor);
+  }
+  return factors;
 }
 
 void tell_oddities(const std::vector<Record>& records, const std::string& file, Notices& notices) {

@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numeric>
 #include <set>
 
 #include "columns.h"
@@ -60,14 +61,6 @@ class Dates {
     return year * 12LL + month - 1;
   }
 
-  static std::string text(TableKind kind, std::int64_t date) {
-    if (kind == TableKind::daily) {
-      return calendar::to_string(calendar::Calendar::from_cf("proleptic_gregorian", "").date(date));
-    }
-    if (kind == TableKind::normals) return fmt::format("month {}", date + 1);
-    return fmt::format("{:04}-{:02}", date / 12, date % 12 + 1);
-  }
-
  private:
   const text::CsvTable& table_;
   TableKind kind_;
@@ -76,23 +69,69 @@ class Dates {
   std::vector<double> mean_length_;
 };
 
+Quantity quantity_of(const Options& options) {
+  if (options.kind == Kind::sum) return options.per_day_rate ? Quantity::water : Quantity::other;
+  try {
+    units::conversion(options.units, "K", "", "");
+    return Quantity::temperature;
+  } catch (const Error&) {
+    return Quantity::other;
+  }
+}
+
+/// Values of the checks' own units: degC and mm/day.
+units::Affine to_checked(const Options& options) {
+  const Quantity quantity = quantity_of(options);
+  if (quantity == Quantity::other) return {};
+  return units::conversion(options.units, quantity == Quantity::water ? "mm/day" : "degC", "", "").affine;
+}
+
+/// The same in date order, one a date: of a date given twice the first.
+DatedValues in_order(const DatedValues& read) {
+  std::vector<std::size_t> order(read.date.size());
+  std::iota(order.begin(), order.end(), 0U);
+  std::stable_sort(order.begin(), order.end(), [&](auto a, auto b) { return read.date[a] < read.date[b]; });
+  DatedValues out;
+  for (const std::size_t i : order) {
+    if (!out.date.empty() && out.date.back() == read.date[i]) continue;
+    out.date.push_back(read.date[i]);
+    out.value.push_back(read.value[i]);
+  }
+  return out;
+}
+
 class Reader {
  public:
   Reader(const std::vector<text::CsvTable>& tables, TableKind kind,
          const std::unordered_map<std::string, std::size_t>& station_of, const Mapping& mapping, const Options& options,
-         Notices& notices)
+         const std::vector<bool>& hours_known, Notices& notices)
       : tables_(tables),
         kind_(kind),
         station_of_(station_of),
         mapping_(mapping),
         options_(options),
+        hours_known_(hours_known),
         notices_(notices),
-        rows_(station_of.size()) {}
+        rows_(station_of.size()),
+        each_(options.observed.size(), std::vector<DatedValues>(station_of.size())) {}
 
   bool read() {
     bool found = false;
     for (std::size_t t = 0; t < tables_.size(); ++t) found = read_table(t) || found;
     return found;
+  }
+
+  std::vector<ObservedColumn> columns() const {
+    const units::Affine checked = to_checked(options_);
+    std::vector<ObservedColumn> out;
+    for (std::size_t c = 0; c < each_.size(); ++c) {
+      out.push_back({options_.observed[c], quantity_of(options_), kind_ != TableKind::daily, {}});
+      for (const DatedValues& read : each_[c]) {
+        out.back().of.push_back(in_order(read));
+        for (double& x : out.back().of.back().value) x = checked(x);
+      }
+    }
+    return out;
   }
 
   std::vector<std::vector<Value>> values() {
@@ -118,7 +157,7 @@ class Reader {
           contradictions.add(place(rows[end - 1]),
                              fmt::format("station '{}' has {} more than once with different values (first at {}); all "
                                          "are left out",
-                                         ids[i], Dates::text(kind_, rows[first].value.date), place(rows[first])));
+                                         ids[i], date_text(kind_, rows[first].value.date), place(rows[first])));
         }
         first = end;
       }
@@ -156,6 +195,8 @@ class Reader {
     if (columns.empty()) return false;
     const std::size_t station = need_column(table, mapping_, "station");
     const Dates dates(table, kind_, mapping_, options_);
+    const bool labelled = kind_ == TableKind::daily && !(t < hours_known_.size() && hours_known_[t]);
+    const std::int64_t shift = labelled ? options_.day_shift : 0;
     if (table.rows() == 0) throw Error(Failure::data, table.file(), "no rows; expected one for each station and date");
     Details impossible(notices_, "impossible values left out");
     std::set<std::string> strangers;
@@ -171,8 +212,8 @@ class Reader {
         if (last == rows_.size()) strangers.insert(last_id);
       }
       double days = 1;
-      const std::int64_t date = dates.date(row, days);
-      const auto value = value_at(table, row, columns, days, impossible);
+      const std::int64_t date = dates.date(row, days) + shift;
+      const auto value = value_at(table, row, columns, days, impossible, {last, date});
       if (value && last < rows_.size()) {
         rows_[last].push_back({{date, *value}, static_cast<std::uint32_t>(t), static_cast<std::uint32_t>(row)});
       }
@@ -186,18 +227,28 @@ class Reader {
     return true;
   }
 
+  struct Element {
+    std::size_t station;
+    std::int64_t date;
+  };
+
   /// The mean of the columns; nullopt when one is missing or impossible.
   std::optional<double> value_at(const text::CsvTable& table, std::size_t row, const std::vector<ValueColumn>& columns,
-                                 double days, Details& impossible) const {
+                                 double days, Details& impossible, Element element) {
     double sum = 0;
     bool complete = true;
-    for (const ValueColumn& c : columns) {
+    for (std::size_t i = 0; i < columns.size(); ++i) {
+      const ValueColumn& c = columns[i];
       const auto number = number_at(table, row, c.column);
       if (!number) {
         complete = false;
         continue;
       }
       const double value = c.value(*number, days);
+      if (element.station < rows_.size()) {
+        each_[i][element.station].date.push_back(element.date);
+        each_[i][element.station].value.push_back(value);
+      }
       if (value < options_.low || value > options_.high) {
         impossible.add(
             place_of(table, row),
@@ -217,18 +268,30 @@ class Reader {
   const std::unordered_map<std::string, std::size_t>& station_of_;
   const Mapping& mapping_;
   const Options& options_;
+  const std::vector<bool>& hours_known_;
   Notices& notices_;
   std::vector<std::vector<Row>> rows_;
+  std::vector<std::vector<DatedValues>> each_;  // by observed column and station
 };
 
 }  // namespace
 
+std::string date_text(TableKind kind, std::int64_t date) {
+  if (kind == TableKind::daily) {
+    return calendar::to_string(calendar::Calendar::from_cf("proleptic_gregorian", "").date(date));
+  }
+  if (kind == TableKind::normals) return fmt::format("month {}", date + 1);
+  return fmt::format("{:04}-{:02}", date / 12, date % 12 + 1);
+}
+
 std::vector<std::vector<Value>> read_values(const std::vector<text::CsvTable>& tables, TableKind kind,
                                             const std::unordered_map<std::string, std::size_t>& station_of,
                                             const Mapping& mapping, const Options& options, Notices& notices,
-                                            bool& found) {
-  Reader reader(tables, kind, station_of, mapping, options, notices);
+                                            const std::vector<bool>& hours_known, bool& found,
+                                            std::vector<ObservedColumn>& each) {
+  Reader reader(tables, kind, station_of, mapping, options, hours_known, notices);
   found = reader.read() || found;
+  each = reader.columns();
   return reader.values();
 }
 

@@ -184,6 +184,28 @@ CsvTable CsvTable::parse(std::string_view bytes, const std::string& file) {
   return table;
 }
 
+CsvTable CsvTable::made(const std::string& file, std::vector<Heading> headings, std::string counted) {
+  CsvTable table;
+  table.file_ = file;
+  table.headings_ = std::move(headings);
+  table.counted_ = std::move(counted);
+  return table;
+}
+
+void CsvTable::add(const std::vector<std::string>& cells, std::size_t number) {
+  if (cells.size() != headings_.size()) throw Error(Failure::defect, file_, "a row of another width");
+  for (const std::string& cell : cells) {
+    text_ += cell;
+    ends_.push_back(text_.size());
+  }
+  lines_.push_back(number);
+}
+
+std::string CsvTable::place(std::size_t row) const {
+  return counted_.empty() ? fmt::format("{}:{}", file_, lines_[row])
+                          : fmt::format("{}: {} {}", file_, counted_, lines_[row]);
+}
+
 std::string_view CsvTable::at(std::size_t row, std::size_t column) const {
   const std::size_t cell = row * headings_.size() + column;
   if (row >= rows() || column >= headings_.size()) throw Error(Failure::defect, file_, "no such cell");

@@ -236,6 +236,13 @@ def _(folder):
     os.remove(folder("in/sites.csv"))
 
 
+@case("stations in a model file", 65,
+      "windrow: FOLDER/in/tas.nc: no variable with cf_role = \"timeseries_id\"; expected one that tells the stations "
+      "apart\n")
+def _(folder):
+    adjust(folder, rest=kit.STATIONS.replace("in/daily.csv", "in/tas.nc"))
+
+
 @case("no common period", 65,
       'note: station A: left out: no month in common with the run; period_mismatch = "accept" uses it all the '
       "same\n"

@@ -130,6 +130,41 @@ def _(folder):
     adjust(folder, rest="")
 
 
+@case("station day without a time", 78,
+      "windrow: FOLDER/job.toml:16:16: 'ends' is no time of day; expected one from \"00:00\" to \"24:00\"\n"
+      'day = { ends = "9 am" }\n'
+      "               ^\n")
+def _(folder):
+    adjust(folder, rest=kit.STATIONS + 'day = { ends = "9 am" }\n')
+
+
+@case("station day in a named zone", 78,
+      "windrow: FOLDER/job.toml:16:16: 'CET' is no zone; expected UTC or hours ahead of it, such as \"UTC+1\" or "
+      "\"UTC-3:30\"\n"
+      'day = { zone = "CET" }\n'
+      "               ^\n")
+def _(folder):
+    adjust(folder, rest=kit.STATIONS + 'day = { zone = "CET" }\n')
+
+
+@case("sites not named beside a table", 78,
+      "windrow: FOLDER/job.toml:12:1: [stations] has no 'sites'; expected a CSV file with station, longitude, latitude "
+      "and elevation\n"
+      "[stations]\n"
+      "^\n")
+def _(folder):
+    adjust(folder, rest='[stations]\ndaily = "in/daily.csv"\n')
+
+
+@case("factors for undercatch without a sites table", 78,
+      "windrow: FOLDER/job.toml:14:14: factors for 'undercatch' stand in a sites table; expected 'sites' in "
+      "[stations]\n"
+      'undercatch = "factor"\n'
+      "             ^\n")
+def _(folder):
+    adjust(folder, rest='[stations]\ndaily = "in/daily.nc"\nundercatch = "factor"\n')
+
+
 @case("field units unknown", 78,
       "windrow: FOLDER/job.toml:5:9: units 'degX' are not known to UDUNITS; expected units such as degC, "
       "mm/day or m s-1\n"

@@ -103,12 +103,14 @@ struct MeshSpec {
 
 struct StationSpec {
   bool given = false;
-  std::string sites;
+  std::string sites;  ///< empty: daily or monthly are NetCDF files that hold the sites too
   std::vector<std::string> daily, monthly, normals;
   std::map<std::string, std::string> columns, units;
   std::optional<std::pair<int, int>> normals_period;
   int min_years = 10;
-  std::string day_note;  ///< text for the product's comment, from `day = {...}`
+  std::string day_note;    ///< text for the product's comment, from `day = {...}`
+  int day_shift = 0;       ///< whole days from a daily value's date to the date that holds most of its hours
+  std::string undercatch;  ///< factor column of the sites table; empty: none
 };
 
 enum class ReachMethod { nearest, inverse_distance, kriging, kriging_height };

@@ -1,6 +1,7 @@
 // Stations in memory: sites, series, normals, completeness. Reads tables (text::CsvTable), knows no file system.
 #pragma once
 #include <cstdint>
+#include <limits>
 #include <map>
 #include <string>
 #include <vector>
@@ -44,6 +45,8 @@ struct Record {
   std::vector<MonthlyValue> monthly;  ///< complete months, ascending: given, or made from daily
   std::vector<double> normal;         ///< 12, NaN where missing; empty when there are none
   int complete_years = 0;             ///< of the series: most limiting calendar month's number of complete months
+  /// Of daily sums: the gauge's, output units (quality.h, resolution_of); NaN: not known.
+  double resolution = std::numeric_limits<double>::quiet_NaN();
 };
 
 /// Completeness rules of WMO-No. 1203 (2017), section 4.4 as summarised in the secondary source named in the tests.
@@ -64,11 +67,14 @@ struct Options {
   double low = -1e30, high = 1e30;  ///< impossible outside, in output units
   int min_years = 10;
   int normals_first = 0, normals_last = 0;  ///< normals_period, 0 when not given
+  int day_shift = 0;                        ///< whole days added to the dates of daily tables whose hours are not known
+  std::string undercatch;  ///< column of the sites table: factors that sums are multiplied by; empty: none
 };
 
 struct Tables {
   text::CsvTable sites;
   std::vector<text::CsvTable> daily, monthly, normals;
+  std::vector<bool> hours_known = {};  ///< one a daily table: its dates come from the very hours; empty: none do
 };
 
 /// Builds the records of one field, in the order of the sites; empty when no station is left. A missing value is an
@@ -81,7 +87,9 @@ struct Tables {
 /// (in normals: its mean length over normals_period, or over 400 Gregorian years); an amount (mm) against a rate is
 /// that of the day, or of the month. Elevations are metres unless units are given. Error(data) names file and line for
 /// what cannot be read at all: bad date, bad number, unknown column (with the near miss), empty table, unknown or
-/// missing units. A series table without any of the observed columns is passed over as long as another one has them.
+/// missing units. What quality.h finds in the observed columns and in the positions is told and changes nothing. Where
+/// an undercatch column is named, a station without factor is left out and told; Error(data) for a factor outside
+/// 0..10. A series table without any of the observed columns is passed over as long as another one has them.
 std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, const Options& options,
                                  Notices& notices);
 

@@ -123,6 +123,46 @@ TEST_CASE("every key of [[field]], [field.adjust] and [field.terrain] is read") 
   CHECK(job.fields[1].adjust.season == SeasonKind::month);
 }
 
+TEST_CASE("a station's dates move to the day that holds most of its hours, the nearer one on a tie") {
+  const auto shift = [](const std::string& day) {
+    const std::string text =
+        "[[run]]\nfiles = [\"a.nc\"]\n[[field]]\nvariable = \"tas\"\n[mesh]\n"
+        "lon = { from = 0, to = 1, step = 1 }\nlat = { from = 0, to = 1, step = 1 }\n"
+        "[stations]\nsites = \"s.csv\"\ndaily = \"d.csv\"\nday = { " +
+        day + " }\n";
+    return parse_job("/proj/job.toml", text, {}).stations.day_shift;
+  };
+  CHECK(shift("") == 0);
+  CHECK(shift("label = \"start\"") == 0);
+  CHECK(shift("ends = \"09:00\"") == -1);  // 15 hours of the day before
+  CHECK(shift("ends = \"09:00\", label = \"start\"") == 0);
+  CHECK(shift("ends = \"18:00\"") == 0);
+  CHECK(shift("ends = \"18:00\", label = \"start\"") == 1);  // from 18:00: 6 hours of the day itself
+  CHECK(shift("ends = \"00:00\"") == -1);
+  CHECK(shift("ends = \"00:00\", label = \"start\"") == 0);
+  CHECK(shift("ends = \"12:00\"") == 0);  // a tie
+  CHECK(shift("ends = \"12:00\", label = \"start\"") == 0);
+  CHECK(shift("ends = \"12:30\", zone = \"UTC+1\"") == -1);  // ends at 11:30 UTC
+  CHECK(shift("ends = \"11:30\", zone = \"UTC-1\"") == 0);
+  CHECK(shift("ends = \"09:00\", zone = \"UTC-3:30\"") == 0);  // ends at 12:30 UTC
+  CHECK(shift("ends = \"24:00\", zone = \"UTC+13\"") == -1);
+}
+
+TEST_CASE("NetCDF series hold their own sites; a factor column is read") {
+  const auto stations = [](const std::string& keys) {
+    return parse_job("/proj/job.toml",
+                     "[[run]]\nfiles = [\"a.nc\"]\n[[field]]\nvariable = \"tas\"\n[mesh]\n"
+                     "lon = { from = 0, to = 1, step = 1 }\nlat = { from = 0, to = 1, step = 1 }\n[stations]\n" +
+                         keys,
+                     {})
+        .stations;
+  };
+  CHECK(stations("daily = [\"a.nc\", \"b.nc\"]\n").sites.empty());
+  CHECK(stations("monthly = \"a.nc\"\n").undercatch.empty());
+  CHECK(stations("sites = \"s.csv\"\ndaily = \"d.nc\"\nundercatch = \"catch\"\n").undercatch == "catch");
+  CHECK_THROWS_AS(stations("daily = [\"a.nc\", \"b.csv\"]\n"), windrow::Error);
+}
+
 TEST_CASE("every key of [stations] and [reach] is read") {
   const JobSpec job = parse_job("/proj/job.toml", job_texts::kEveryKey, {});
   const StationSpec& stations = job.stations;
@@ -136,7 +176,9 @@ TEST_CASE("every key of [stations] and [reach] is read") {
   CHECK(stations.units == std::map<std::string, std::string>{{"tmin_degC", "degC"}, {"precip_mm", "mm/month"}});
   CHECK(stations.normals_period == std::pair{1981, 2010});
   CHECK(stations.min_years == 12);
-  CHECK(stations.day_note == "a station day ends at 09:00 UTC+1 and carries the date of its start");
+  CHECK(stations.day_note == "A station day ends at 09:00 UTC+1 and carries the date of its start");
+  CHECK(stations.day_shift == 0);
+  CHECK(stations.undercatch.empty());
   CHECK(job.reach.method == ReachMethod::nearest);
   CHECK(job.reach.radius_m == doctest::Approx(250e3).epsilon(1e-14));
   CHECK(job.reach.power == 3);

@@ -37,12 +37,27 @@ TEST_CASE("headings are split into name and unit, cells are trimmed, lines are c
   CHECK(table.at(0, 3).empty());
   CHECK(table.at(1, 3).empty());
   CHECK(table.at(1, 1) == "1981-01-02");
-  CHECK(table.line(0) == 3);
-  CHECK(table.line(1) == 4);
+  CHECK(table.place(0) == "s.csv:3");
+  CHECK(table.place(1) == "s.csv:4");
   CHECK(table.column("pr") == 3);
   CHECK(table.column("PR") == -1);
   CHECK(table.file() == "s.csv");
   CHECK_THROWS_AS((void)table.at(2, 0), Error);
+}
+
+TEST_CASE("a table put together by another reader is a table too, and says what its rows' numbers count") {
+  CsvTable table = CsvTable::made("x.nc", {{"station", ""}, {"tas", "degC"}}, "time");
+  CHECK(table.rows() == 0);
+  table.add({"a, b", ""}, 7);
+  table.add({"c", "1.5"}, 31);
+  CHECK(table.rows() == 2);
+  CHECK(table.at(0, 0) == "a, b");
+  CHECK(table.at(0, 1).empty());
+  CHECK(table.at(1, 1) == "1.5");
+  CHECK(table.column("tas") == 1);
+  CHECK(table.place(1) == "x.nc: time 31");
+  CHECK(CsvTable::parse("a\n1\n", "x.csv").place(0) == "x.csv:2");
+  CHECK_THROWS_AS(table.add({"one"}, 1), Error);
 }
 
 TEST_CASE("the header line decides about the separator") {
@@ -58,8 +73,8 @@ TEST_CASE("quotes protect separators, line ends and quotes (RFC 4180, section 2)
   REQUIRE(table.rows() == 2);
   CHECK(table.at(0, 0) == "Kelder, Nord");
   CHECK(table.at(0, 1) == "two\nlines and \"quotes\"");
-  CHECK(table.line(0) == 2);
-  CHECK(table.line(1) == 4);
+  CHECK(table.place(0) == ":2");
+  CHECK(table.place(1) == ":4");
   CHECK(table.at(1, 1) == "y");
 }
 

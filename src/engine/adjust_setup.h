@@ -1,0 +1,21 @@
+// From the job's words to the setup of an adjustment. Private to the engine.
+#pragma once
+#include <string>
+
+#include "windrow/adjust/setup.h"
+#include "windrow/cf/dataset.h"
+#include "windrow/job/spec.h"
+#include "windrow/units/units.h"
+
+namespace windrow::engine {
+
+/// Method, seasons and limits of a field for a run of the given frequency. Error(data) for what is neither daily nor
+/// monthly.
+adjust::Setup adjust_setup(const job::AdjustSpec& spec, const cf::RunVariable& variable,
+                           const units::Conversion& conversion, const std::string& output_units,
+                           const std::string& place);
+
+/// In its units it is a depth or mass of water a time: for fields that are water, a speed is a rate in units too.
+bool is_rate(const std::string& units);
+
+}  // namespace windrow::engine
