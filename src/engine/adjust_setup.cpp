@@ -2,6 +2,7 @@
 
 #include <fmt/format.h>
 
+#include "station_tables.h"
 #include "windrow/base/error.h"
 
 namespace windrow::engine {
