@@ -47,6 +47,10 @@ double product_bytes(Session& session, const Product& product) {
   return cells * static_cast<double>(product.span.t1 - product.span.t0) * sizeof(float);
 }
 
+bool any_wanted(const std::vector<Product>& products) {
+  return std::any_of(products.begin(), products.end(), [](const Product& p) { return !p.stale.empty(); });
+}
+
 struct StageJob {
   std::size_t field, run;
   std::vector<Product> products;
@@ -117,8 +121,8 @@ void Runner::collect() {
 void Runner::list(const std::vector<Product>& products) {
   for (const auto& product : products) {
     const bool current = product.stale.empty();
-    summary_.products.push_back({product.path, current ? State::current : State::failed,
-                                 current ? "up to date" : "not reached"});
+    summary_.products.push_back(
+        {product.path, current ? State::current : State::failed, current ? "up to date" : "not reached"});
   }
 }
 
@@ -132,8 +136,12 @@ void Runner::collect_ensemble() {
     summary_.products.push_back({name, State::failed, reason});
     if (!summary_.failure) summary_.failure = kind;
   }
-  for (const auto& notice : plan.notices) notices_.add(notice.place, notice.text);
   ensemble_ = std::move(plan.stages);
+  // With nothing to make there is nothing to tell.
+  const bool wanted = std::any_of(ensemble_.begin(), ensemble_.end(),
+                                  [](const EnsembleStage& stage) { return any_wanted(stage.result.products); });
+  if (!wanted) return;
+  for (const auto& notice : plan.notices) notices_.add(notice.place, notice.text);
 }
 
 std::vector<const std::vector<Product>*> Runner::all_products() const {
@@ -192,8 +200,8 @@ void Runner::make(StageJob& stage) {
 
 void Runner::make_unguarded(StageJob& stage, Notices& notices) {
   const auto& job = session_.job;
-  const std::string name = fmt::format("{}-{}-{}", job.fields[stage.field].name, job.runs[stage.run].name,
-                                       job.mesh.name);
+  const std::string name =
+      fmt::format("{}-{}-{}", job.fields[stage.field].name, job.runs[stage.run].name, job.mesh.name);
   progress_.phase(fmt::format("{} of {}", job.fields[stage.field].name, job.runs[stage.run].name));
   const auto setup = set_up(session_, fits_, stage.field, stage.run, stage.products, notices);
   auto& context = *setup->context;
@@ -208,7 +216,8 @@ void Runner::make_unguarded(StageJob& stage, Notices& notices) {
     assemble(context, index, spool);
     made(context.products[index]);
   };
-  pipeline::run_stage(context.input, setup->stage, *setup->run_readers.top(), setup->anchor_readers.top(), spool, hooks);
+  pipeline::run_stage(context.input, setup->stage, *setup->run_readers.top(), setup->anchor_readers.top(), spool,
+                      hooks);
   spool.remove();
 }
 
@@ -241,11 +250,8 @@ void Runner::make(EnsembleStage& stage) {
 Summary Runner::run() {
   const double start = os::monotonic_seconds();
   collect();
-  const auto any_wanted = [](const std::vector<Product>& products) {
-    return std::any_of(products.begin(), products.end(), [](const Product& p) { return !p.stale.empty(); });
-  };
   const auto all = all_products();
-  const bool wanted = std::any_of(all.begin(), all.end(), [&](const auto* products) { return any_wanted(*products); });
+  const bool wanted = std::any_of(all.begin(), all.end(), [](const auto* products) { return any_wanted(*products); });
   if (!session_.options.make_deps.empty()) {
     std::vector<Product> listed;
     for (const auto* products : all) listed.insert(listed.end(), products->begin(), products->end());

@@ -281,7 +281,8 @@ def again(program, folder, text):
     """Nothing to do touches nothing; one thread gives the same bytes; a new statistic makes itself alone."""
     paths = sorted(glob.glob(os.path.join(folder, "out", "*")))
     before = {p: (os.stat(p).st_mtime_ns, open(p, "rb").read()) for p in paths}
-    run(program, folder, "run", "job.toml")
+    quiet = run(program, folder, "run", "job.toml")
+    check(quiet.stderr == "", f"a job with nothing to do says {quiet.stderr}")
     check(all(os.stat(p).st_mtime_ns == before[p][0] for p in paths), "a job with nothing to do touched a product")
     deps = open(os.path.join(folder, "deps.mk")).read()
     check("tas_heron-all-minus-heron-natural_mesh.nc: " in deps, "--make-deps leaves out the contrast")
