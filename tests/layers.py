@@ -17,7 +17,7 @@ TABLE = [
     (1, "units", "unit conversion; water flux to depth rate", "", "udunits2"),
     (1, "sphere", "points, circle arcs, clipping, area", "", ""),
     (1, "stats", "quantiles, moments, gamma fits, monotone regression", "", "boost-math"),
-    (1, "codec", "shuffle, deflate, zstd, digests", "", "isa-l libdeflate zstd xxhash"),
+    (1, "codec", "shuffle, deflate, zstd, digests", "", "libdeflate zstd xxhash"),
     (1, "text", "CSV, near misses, numbers and durations", "", ""),
     (2, "mesh", "grids and meshes as cells with declared edges", "sphere codec", ""),
     (2, "linear_map", "sparse rows of pairings; knows no geometry and no file", "codec", ""),
@@ -46,7 +46,6 @@ EXCEPTIONS = [
 # Marks of a third-party library in an include line.
 LIBRARIES = {
     "udunits2": r"udunits2?\.h",
-    "isa-l": r"(isa-l/.*|isa-l|igzip_lib)\.h",
     "libdeflate": r"libdeflate\.h",
     "zstd": r"zstd(_errors)?\.h",
     "xxhash": r"xxhash\.h",

@@ -1,7 +1,5 @@
-// Deflate and inflate as zlib streams (RFC 1950): ISA-L at level 1, libdeflate above and for inflating.
-// Also the spool's CRC and the workspace's zstd. No file knowledge.
-#include <isa-l/crc.h>
-#include <isa-l/igzip_lib.h>
+// Deflate and inflate as zlib streams (RFC 1950) with libdeflate. Also the spool's CRC and the workspace's zstd. No
+// file knowledge.
 #include <libdeflate.h>
 #include <zstd.h>
 
@@ -26,54 +24,17 @@ struct FreeZstd {
   void operator()(ZSTD_DCtx* d) const { ZSTD_freeDCtx(d); }
 };
 
-/// Room that ISA-L's level 1 hardly ever exceeds: stored blocks cost 5 bytes each, header and check sum 6. When it
-/// does, the loop in compress_isal asks again with more.
-std::size_t first_room(std::size_t size) { return size + size / 1024 + 512; }
-
 }  // namespace
 
 struct Deflater::State {
-  int level = 1;
-  std::unique_ptr<libdeflate_compressor, FreeCompressor> higher;  ///< levels 2..9
-  isal_zstream stream{};                                          ///< level 1
-  std::vector<std::uint8_t> work;                                 ///< ISA-L's hash table and symbols
-
-  void compress_isal(std::span<const std::byte> in, std::vector<std::byte>& out);
+  std::unique_ptr<libdeflate_compressor, FreeCompressor> compressor;
 };
-
-void Deflater::State::compress_isal(std::span<const std::byte> in, std::vector<std::byte>& out) {
-  isal_deflate_init(&stream);
-  stream.level = 1;
-  stream.level_buf = work.data();
-  stream.level_buf_size = static_cast<std::uint32_t>(work.size());
-  stream.gzip_flag = IGZIP_ZLIB;
-  stream.flush = NO_FLUSH;
-  stream.end_of_stream = 1;
-  stream.next_in = reinterpret_cast<std::uint8_t*>(const_cast<std::byte*>(in.data()));
-  stream.avail_in = static_cast<std::uint32_t>(in.size());
-  out.resize(first_room(in.size()));
-  std::size_t written = 0;
-  while (true) {
-    stream.next_out = reinterpret_cast<std::uint8_t*>(out.data() + written);
-    stream.avail_out = static_cast<std::uint32_t>(out.size() - written);
-    if (isal_deflate(&stream) != COMP_OK) throw Error(Failure::defect, "deflate", "the compressor refused a tile");
-    written = out.size() - stream.avail_out;
-    if (stream.internal_state.state == ZSTATE_END) break;
-    out.resize(out.size() + out.size() / 4 + 4096);
-  }
-  out.resize(written);
-}
 
 Deflater::Deflater(int level) {
   if (level < 1 || level > 9) throw Error(Failure::defect, "deflate", "level must be 1..9");
   auto state = std::make_unique<State>();
-  state->level = level;
-  if (level == 1) {
-    state->work.resize(ISAL_DEF_LVL1_DEFAULT);
-  } else {
-    state->higher.reset(libdeflate_alloc_compressor(level));
-    if (!state->higher) throw std::bad_alloc();
-  }
+  state->compressor.reset(libdeflate_alloc_compressor(level));
+  if (!state->compressor) throw std::bad_alloc();
   state_ = state.release();
 }
 
@@ -82,9 +43,9 @@ Deflater::~Deflater() { delete state_; }
 void Deflater::compress(std::span<const std::byte> in, std::vector<std::byte>& out) {
   if (in.size() > std::numeric_limits<std::uint32_t>::max() / 2)
     throw Error(Failure::defect, "deflate", "a tile over 2 GiB cannot be compressed in one piece");
-  if (state_->level == 1) return state_->compress_isal(in, out);
-  out.resize(libdeflate_zlib_compress_bound(state_->higher.get(), in.size()));
-  const std::size_t size = libdeflate_zlib_compress(state_->higher.get(), in.data(), in.size(), out.data(), out.size());
+  libdeflate_compressor* compressor = state_->compressor.get();
+  out.resize(libdeflate_zlib_compress_bound(compressor, in.size()));
+  const std::size_t size = libdeflate_zlib_compress(compressor, in.data(), in.size(), out.data(), out.size());
   if (size == 0) throw Error(Failure::defect, "deflate", "the compressor refused a tile");
   out.resize(size);
 }
@@ -97,9 +58,7 @@ bool inflate(std::span<const std::byte> in, std::span<std::byte> out) {
          LIBDEFLATE_SUCCESS;
 }
 
-std::uint32_t crc32(std::span<const std::byte> bytes) {
-  return crc32_gzip_refl(0, reinterpret_cast<const unsigned char*>(bytes.data()), bytes.size());
-}
+std::uint32_t crc32(std::span<const std::byte> bytes) { return libdeflate_crc32(0, bytes.data(), bytes.size()); }
 
 std::vector<std::byte> zstd_compress(std::span<const std::byte> in, int level) {
   thread_local std::unique_ptr<ZSTD_CCtx, FreeZstd> own(ZSTD_createCCtx());

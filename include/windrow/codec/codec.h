@@ -10,13 +10,13 @@
 
 namespace windrow::codec {
 
-std::string library_version();  ///< "ISA-L 2.30.0, libdeflate 1.14, zstd 1.5.4, xxHash 0.8.1"
+std::string library_version();  ///< "libdeflate 1.14, zstd 1.5.4, xxHash 0.8.1"
 
 /// HDF5 shuffle filter: bytes regrouped by significance. out.size() == in.size(), a multiple of `width`.
 void shuffle(std::span<const std::byte> in, std::size_t width, std::span<std::byte> out);
 void unshuffle(std::span<const std::byte> in, std::size_t width, std::span<std::byte> out);
 
-/// zlib stream (RFC 1950) that any inflater reads. level 1: ISA-L; 2..9: libdeflate. Same bytes for same input on one
+/// zlib stream (RFC 1950) that any inflater reads. Level 1..9 of libdeflate. Same bytes for same input on one
 /// kind of processor. `out` is resized to the stream. level 0 is not accepted (callers store raw).
 class Deflater {
  public:

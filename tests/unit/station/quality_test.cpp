@@ -111,7 +111,8 @@ TEST_CASE("clean series of any number of stations give no finding") {
 }
 
 TEST_CASE("two stations with over 95 percent equal values on 365 common days are told, with 94 percent not") {
-  for (const auto& [share, found] : {std::pair(0.96, true), std::pair(0.94, false)}) {
+  for (const auto& [part, found] : {std::pair(0.96, true), std::pair(0.94, false)}) {
+    const double share = part;
     CAPTURE(share);
     auto column = temperatures(3);
     column.of[2] = column.of[0];
@@ -184,7 +185,8 @@ TEST_CASE("a whole station in another unit is found against its neighbours") {
       {[](double x) { return x + 273.15; }, "K in a column of degC"},
       {[](double x) { return 10 * x; }, "tenths of degC"},
       {[](double x) { return x / 10; }, "ten times too small"}};
-  for (const auto& [change, text] : faults) {
+  for (const auto& [change, said] : faults) {
+    const std::string& text = said;
     CAPTURE(text);
     auto column = temperatures(5);
     plant(column.of[2], 2001, 2008, change);
@@ -196,7 +198,8 @@ TEST_CASE("a whole station in another unit is found against its neighbours") {
   }
   const std::vector<std::pair<double, std::string>> amounts{
       {10, "tenths of mm"}, {1 / 25.4, "inches in a column of mm"}, {0.1, "cm in a column of mm"}};
-  for (const auto& [factor, text] : amounts) {
+  for (const auto& [factor, said] : amounts) {
+    const std::string& text = said;
     CAPTURE(text);
     auto column = rain(5);
     for (double& x : column.of[2].value) x *= factor;
