@@ -66,6 +66,11 @@ Grid scaled(const Grid& values, const units::Affine& affine) {
   return out;
 }
 
+/// What gets intervals by drawing years, which costs a thousand times what a score costs.
+struct Judged {
+  bool stations, all;  ///< each station's scores; comparisons over all stations
+};
+
 class Scorer {
  public:
   Scorer(const CalibrationNeeds& needs, const Gathered& gathered)
@@ -90,13 +95,14 @@ class Scorer {
     return out;
   }
 
-  [[nodiscard]] std::vector<SeasonScores> seasons(const ProofSeries& series, bool intervals) const;
+  [[nodiscard]] std::vector<SeasonScores> seasons(const ProofSeries& series, const Judged& judged) const;
   [[nodiscard]] PointsAndAreas points(const Grid& product, const std::vector<int>& blocks) const;
 
  private:
   [[nodiscard]] scores::MonthMeans station_months(std::size_t i, const std::vector<double>& series,
                                                   bool all_years) const;
-  [[nodiscard]] SeasonScores season(const scores::Season& season, const ProofSeries& series, bool intervals) const;
+  [[nodiscard]] SeasonScores season(const scores::Season& season, const ProofSeries& series,
+                                    const Judged& judged) const;
 
   const CalibrationNeeds& needs_;
   const Gathered& gathered_;
@@ -139,7 +145,7 @@ scores::MonthMeans Scorer::station_months(std::size_t i, const std::vector<doubl
   return out;
 }
 
-SeasonScores Scorer::season(const scores::Season& season, const ProofSeries& series, bool intervals) const {
+SeasonScores Scorer::season(const scores::Season& season, const ProofSeries& series, const Judged& judged) const {
   SeasonScores out{season, {}, {}};
   std::vector<scores::Versions> versions;
   const scores::Resampling resampling{1, 0, kReplicates};
@@ -150,7 +156,7 @@ SeasonScores Scorer::season(const scores::Season& season, const ProofSeries& ser
         scores::make_versions(*days_, season, options_, observed_[k], in_scale[0], in_scale[1], in_scale[2]));
     const auto& made = versions.back();
     scores::SeasonScores adjusted{};
-    if (intervals) {
+    if (judged.stations) {
       adjusted = scores::score_season(made.adjusted, resampling);
     } else {
       const auto values = made.adjusted.scores();
@@ -161,17 +167,17 @@ SeasonScores Scorer::season(const scores::Season& season, const ProofSeries& ser
     }
     out.stations.push_back({i, made.raw.scores(), made.height.scores(), adjusted});
   }
-  out.comparisons = scores::compare(versions, resampling);
+  if (judged.all) out.comparisons = scores::compare(versions, resampling);
   return out;
 }
 
-std::vector<SeasonScores> Scorer::seasons(const ProofSeries& series, bool intervals) const {
+std::vector<SeasonScores> Scorer::seasons(const ProofSeries& series, const Judged& judged) const {
   if (daily_.empty()) return {};
   const auto standard = scores::standard_seasons();
   std::vector<SeasonScores> out(standard.size() - kFirstQuarter);
 #pragma omp parallel for schedule(dynamic)
   for (std::size_t s = 0; s < out.size(); ++s) {
-    out[out.size() - 1 - s] = season(standard[standard.size() - 1 - s], series, intervals);  // the year takes longest
+    out[out.size() - 1 - s] = season(standard[standard.size() - 1 - s], series, judged);  // the year takes longest
   }
   return out;
 }
@@ -254,10 +260,13 @@ void check_sites(const CalibrationNeeds& needs, const Gathered& gathered) {
     const auto apart = reach::distance_m(placed.front().record->site.position, other.record->site.position);
     if (apart > scores::kSameSite_m) return;
   }
-  throw Error(Failure::data, fmt::format("field '{}', run '{}'", needs.field.name, needs.anchor_name),
-              fmt::format("{} of the stations can be used and no other is farther than {:.0f} km from '{}': with it "
-                          "left out nothing is left to fit; expected at least two stations",
-                          placed.size(), scores::kSameSite_m / 1000, placed.front().record->site.id));
+  const std::string why = placed.size() == 1 ? "no other station can be used"
+                                             : fmt::format("all {} stations lie within {:.0f} km of it", placed.size(),
+                                                           scores::kSameSite_m / 1000);
+  throw Error(
+      Failure::data, fmt::format("field '{}', run '{}'", needs.field.name, needs.anchor_name),
+      fmt::format("with station '{}' left out nothing is left to fit: {}; expected stations at two sites at least",
+                  placed.front().record->site.id, why));
 }
 
 }  // namespace
@@ -301,7 +310,7 @@ FieldProof prove_field(const CalibrationNeeds& needs, const std::string& family,
       out.points = scorer.points(series.adjusted, maker.blocks());
     }
     made.months.push_back(scorer.months("adjusted", series.adjusted, all_years));
-    made.seasons = scorer.seasons(series, d == out.verdict);
+    made.seasons = scorer.seasons(series, {d == out.verdict, d == 0 || d == out.verdict});
     out.designs.push_back(std::move(made));
   }
   return out;

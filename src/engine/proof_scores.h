@@ -28,7 +28,7 @@ struct StationScores {
 struct SeasonScores {
   scores::Season season;
   std::vector<StationScores> stations;  ///< those with daily series; intervals in the verdict's design only
-  std::vector<scores::Comparison> comparisons;
+  std::vector<scores::Comparison> comparisons;  ///< where each station is left out, and where the verdict rests
 };
 
 struct DesignScores {

@@ -278,7 +278,9 @@ report::Fact facts_of(const FieldProof& proof) {
     auto& months = fact.add(list("means of months"));
     for (const auto& column : design.months) months.add(months_fact(column));
     auto& seasons = fact.add(list("seasons"));
-    for (const auto& season : design.seasons) seasons.add(season_fact(proof, season));
+    for (const auto& season : design.seasons) {
+      if (!season.comparisons.empty()) seasons.add(season_fact(proof, season));
+    }
   }
   add_points(proof, out);
   return out;
