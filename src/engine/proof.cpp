@@ -180,7 +180,7 @@ ProofSeries ProofMaker::series(const Design& design) const {
       Notices unheard;
       const auto lapse = lapse_of(needs_, gathered_, fold.placed, {}, unheard);
       fold.fitted.resize(stations);
-#pragma omp parallel for schedule(dynamic)
+#pragma omp parallel for schedule(dynamic) num_threads(threads_)
       for (std::size_t i = 0; i < stations; ++i) {
         guarded([&] {
           const Placed& placed = fold.placed[i];
@@ -188,7 +188,7 @@ ProofSeries ProofMaker::series(const Design& design) const {
         });
       }
     }
-#pragma omp parallel for schedule(dynamic)
+#pragma omp parallel for schedule(dynamic) num_threads(threads_)
     for (std::size_t s = 0; s < splits.size(); ++s) {
       guarded([&] { make(fold, splits[s], out); });
     }

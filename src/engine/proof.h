@@ -30,7 +30,8 @@ struct ProofSeries {
 /// time, so that they need no repetition.)
 class ProofMaker {
  public:
-  ProofMaker(const CalibrationNeeds& needs, const Gathered& gathered) : needs_(needs), gathered_(gathered) {}
+  ProofMaker(const CalibrationNeeds& needs, const Gathered& gathered, int threads)
+      : needs_(needs), gathered_(gathered), threads_(threads) {}
 
   /// Years that both the run and some station's series have, ascending; split periods need at least two.
   [[nodiscard]] std::vector<int> years() const;
@@ -46,6 +47,7 @@ class ProofMaker {
 
   const CalibrationNeeds& needs_;
   const Gathered& gathered_;
+  int threads_;
 };
 
 }  // namespace windrow::engine

@@ -73,8 +73,12 @@ struct Judged {
 
 class Scorer {
  public:
-  Scorer(const CalibrationNeeds& needs, const Gathered& gathered)
-      : needs_(needs), gathered_(gathered), calendar_(needs.anchor.variable->calendar()), scale_(scale_of(needs)) {
+  Scorer(const CalibrationNeeds& needs, const Gathered& gathered, int threads)
+      : needs_(needs),
+        gathered_(gathered),
+        calendar_(needs.anchor.variable->calendar()),
+        scale_(scale_of(needs)),
+        threads_(threads) {
     options_.quantity = scale_.quantity;
     for (std::size_t i = 0; gathered.setup.daily && i < gathered.placed.size(); ++i) {
       if (gathered.placed[i].record->daily.day.empty()) continue;
@@ -108,6 +112,7 @@ class Scorer {
   const Gathered& gathered_;
   const calendar::Calendar& calendar_;
   Scale scale_;
+  int threads_;
   scores::Options options_;
   std::vector<std::size_t> daily_;  ///< placed stations with days
   Grid observed_;                   ///< of those, in the scale's units
@@ -124,7 +129,7 @@ scores::MonthMeans Scorer::station_months(std::size_t i, const std::vector<doubl
   for (const auto& value : record.monthly) observed.push_back({value.year, value.month, value.value});
   auto out = scores::common_means(observed, scores::month_means(calendar_, steps.date, series, gathered_.setup.daily));
   if (record.normal.empty() || !all_years) return out;
-  const auto [first, last] = needs_.job.stations.normals_period.value_or(std::pair(0, 0));
+  const auto normals = needs_.job.stations.normals_period.value_or(std::pair(0, 0));
   const auto means_where = [&](const auto& taken) {
     std::vector<double> chosen(series);
     for (std::size_t t = 0; t < chosen.size(); ++t) {
@@ -133,7 +138,8 @@ scores::MonthMeans Scorer::station_months(std::size_t i, const std::vector<doubl
     const auto months = scores::month_means(calendar_, steps.date, chosen, gathered_.setup.daily);
     return scores::common_means(months, months).modelled;
   };
-  auto modelled = means_where([&](std::size_t t) { return steps.year[t] >= first && steps.year[t] <= last; });
+  auto modelled =
+      means_where([&](std::size_t t) { return steps.year[t] >= normals.first && steps.year[t] <= normals.second; });
   if (std::any_of(modelled.begin(), modelled.end(), [](double x) { return std::isnan(x); })) {
     modelled = means_where([&](std::size_t t) { return steps.in_period[t] != 0; });
   }
@@ -175,7 +181,7 @@ std::vector<SeasonScores> Scorer::seasons(const ProofSeries& series, const Judge
   if (daily_.empty()) return {};
   const auto standard = scores::standard_seasons();
   std::vector<SeasonScores> out(standard.size() - kFirstQuarter);
-#pragma omp parallel for schedule(dynamic)
+#pragma omp parallel for schedule(dynamic) num_threads(threads_)
   for (std::size_t s = 0; s < out.size(); ++s) {
     out[out.size() - 1 - s] = season(standard[standard.size() - 1 - s], series, judged);  // the year takes longest
   }
@@ -228,7 +234,8 @@ std::vector<Design> designs(const std::vector<int>& years) {
 
 /// What a place would get from inverse distances alone, and from those after the height adjustment; what the job asks
 /// for itself is not repeated.
-std::vector<MonthColumn> references(const CalibrationNeeds& needs, const Gathered& gathered, const Scorer& scorer) {
+std::vector<MonthColumn> references(const CalibrationNeeds& needs, const Gathered& gathered, const Scorer& scorer,
+                                    int threads) {
   job::JobSpec job = needs.job;
   job::FieldSpec field = needs.field;
   const bool by_distance = job.reach.method == job::ReachMethod::inverse_distance;
@@ -244,7 +251,7 @@ std::vector<MonthColumn> references(const CalibrationNeeds& needs, const Gathere
                          needs.model_height};
   std::vector<MonthColumn> out;
   const auto add = [&](const std::string& name) {
-    const auto series = ProofMaker(other, gathered).series({Design::Stations::one_out, Design::Years::all});
+    const auto series = ProofMaker(other, gathered, threads).series({Design::Stations::one_out, Design::Years::all});
     out.push_back(scorer.months(name, series.adjusted, true));
   };
   if (terrain && !by_distance) add("height, then inverse distance");
@@ -271,7 +278,7 @@ void check_sites(const CalibrationNeeds& needs, const Gathered& gathered) {
 
 }  // namespace
 
-FieldProof prove_field(const CalibrationNeeds& needs, const std::string& family, Notices& notices,
+FieldProof prove_field(const CalibrationNeeds& needs, const std::string& family, int threads, Notices& notices,
                        const std::function<void(const std::string&)>& step) {
   const auto gathered = gather(needs, notices);
   check_sites(needs, gathered);
@@ -285,8 +292,8 @@ FieldProof prove_field(const CalibrationNeeds& needs, const std::string& family,
     const bool shape = std::any_of(fitted.begin(), fitted.end(), [](const Fitted& f) { return f.fit.shape; });
     if (gathered.setup.width() > 0 && !shape) no_shape(needs);
   }
-  const ProofMaker maker(needs, gathered);
-  const Scorer scorer(needs, gathered);
+  const ProofMaker maker(needs, gathered, threads);
+  const Scorer scorer(needs, gathered, threads);
   FieldProof out;
   out.field = needs.field.name;
   out.family = family;
@@ -306,7 +313,7 @@ FieldProof prove_field(const CalibrationNeeds& needs, const std::string& family,
     made.months.push_back(scorer.months("raw", series.raw, all_years));
     made.months.push_back(scorer.months("height alone", series.height, all_years));
     if (list[d].stations == Design::Stations::one_out) {
-      for (auto& column : references(needs, gathered, scorer)) made.months.push_back(std::move(column));
+      for (auto& column : references(needs, gathered, scorer, threads)) made.months.push_back(std::move(column));
       out.points = scorer.points(series.adjusted, maker.blocks());
     }
     made.months.push_back(scorer.months("adjusted", series.adjusted, all_years));

@@ -27,7 +27,7 @@ struct StationScores {
 };
 struct SeasonScores {
   scores::Season season;
-  std::vector<StationScores> stations;  ///< those with daily series; intervals in the verdict's design only
+  std::vector<StationScores> stations;          ///< those with daily series; intervals in the verdict's design only
   std::vector<scores::Comparison> comparisons;  ///< where each station is left out, and where the verdict rests
 };
 
@@ -59,7 +59,7 @@ struct FieldProof {
 };
 
 /// Error(data) with fewer than two stations at different sites.
-FieldProof prove_field(const CalibrationNeeds& needs, const std::string& family, Notices& notices,
+FieldProof prove_field(const CalibrationNeeds& needs, const std::string& family, int threads, Notices& notices,
                        const std::function<void(const std::string&)>& step);
 
 }  // namespace windrow::engine

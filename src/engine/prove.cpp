@@ -27,7 +27,7 @@ FieldProof prove_one(Session& session, std::size_t field, std::size_t run, Notic
   }
   return prove_field(
       {session.job, spec, session.target(), source, name, conversion, units, height ? &*height : nullptr},
-      session.job.runs[run].family, notices, [&](const std::string& step) {
+      session.job.runs[run].family, thread_count(session), notices, [&](const std::string& step) {
         if (progress) progress({fmt::format("{} of {}: {}", spec.name, name, step), 0, 0, 0, 0});
       });
 }
