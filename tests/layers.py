@@ -26,6 +26,7 @@ TABLE = [
     (3, "reach", "stations x cells -> linear map", "mesh station stats linear_map", ""),
     (3, "adjust", "fits and evaluates transfers", "stats station calendar", ""),
     (3, "scores", "scores, intervals and verdicts of cross-validation", "stats calendar", ""),
+    (3, "ensemble", "statistics over members, climatologies, warming levels", "stats calendar", ""),
     (4, "cf", "CF NetCDF of inputs and products", "calendar units codec text mesh", "netcdf hdf5"),
     (4, "geo", "rasters, polygons and CRS", "units text mesh", "gdal proj"),
     (5, "job", "job file -> validated JobSpec, with line and column", "text calendar units os", "toml++"),
@@ -34,8 +35,8 @@ TABLE = [
      "plan adjust reach overlap linear_map codec os", ""),
     (6, "report", "ledger and report", "stats", "nlohmann"),
     (7, "engine", "wires everything together",
-     "os calendar units sphere stats codec text mesh linear_map station overlap reach adjust scores cf geo job plan "
-     "pipeline report", "nlohmann"),
+     "os calendar units sphere stats codec text mesh linear_map station overlap reach adjust scores ensemble cf geo job "
+     "plan pipeline report", "nlohmann"),
     (8, "cli", "arguments, printing, exit status", "engine os job text", "CLI11 nlohmann"),
 ]
 # What departs from the table, each with its reason: (file, regular expression of what it may include, reason).

@@ -1,7 +1,9 @@
 // Points: stations along one dimension, or one place (an area mean, a scalar coordinate) whose extent is not known.
 #include <fmt/format.h>
 
+#include <algorithm>
 #include <cmath>
+#include <limits>
 
 #include "cell_list.h"
 
@@ -29,6 +31,29 @@ FileGrid points(const Context& context, const std::vector<double>& lon, const st
   return result;
 }
 
+/// A series of one value: nothing but time, and no coordinates that could be anywhere. Its place is NaN.
+std::optional<FileGrid> value_without_place(const Context& context) {
+  const bool only_time = std::all_of(context.axes.begin(), context.axes.end(),
+                                     [](const Axis& axis) { return axis.role == Role::time || axis.dim->length == 1; });
+  const bool timed =
+      std::any_of(context.axes.begin(), context.axes.end(), [](const Axis& axis) { return axis.role == Role::time; });
+  if (!only_time || !timed || !context.variable.text("coordinates").empty() || !context.hints.coordinates.empty())
+    return std::nullopt;
+  for (const nc::Var& var : context.header().vars)
+    if (var.dims.size() == 1 && context.axis(Role::time) != nullptr &&
+        var.dims[0] == context.axis(Role::time)->dim->id && role_of(var) == Role::latitude)
+      return std::nullopt;  // a track
+  FileGrid result;
+  result.grid.kind = GridKind::points;
+  constexpr double kNowhere = std::numeric_limits<double>::quiet_NaN();
+  result.grid.points = {{Angle::degrees(kNowhere), Angle::degrees(kNowhere)}};
+  result.places.rows = {0};
+  result.places.columns = {0};
+  result.grid.how = "a series of one value, such as a mean over an area; it has no place";
+  result.grid.why = "no dimension but time is longer than 1, and no coordinates";
+  return result;
+}
+
 }  // namespace
 
 std::optional<FileGrid> find_points(const Context& context) {
@@ -53,7 +78,7 @@ std::optional<FileGrid> find_points(const Context& context) {
   for (const std::size_t rank : {0, 2})
     if (one.latitude == nullptr)
       if (const auto pair = latlon_pair(context, rank)) one = {pair->latitude, pair->longitude, {}};
-  if (one.latitude == nullptr) return std::nullopt;
+  if (one.latitude == nullptr) return value_without_place(context);
   FileGrid result =
       points(context, read_degrees(context, *one.longitude, {}), read_degrees(context, *one.latitude, {}));
   result.grid.how = fmt::format("one point without extent at {:g} E, {:g} N", result.grid.points[0].longitude.degrees(),

@@ -43,7 +43,6 @@ class Reader final : public ProductReader {
   }
 
   void read_steps(const std::string& variable, std::size_t t0, std::size_t t1, std::vector<float>& out) const override {
-    const nc::Var& v = find(variable);
     const auto dims = dimensions(variable);
     if (dims.empty() || t0 > t1 || t1 > dims[0].length)
       throw Error(Failure::defect, file_.path(), fmt::format("'{}' has no steps {} to {}", variable, t0, t1));
@@ -51,6 +50,16 @@ class Reader final : public ProductReader {
     for (const Dimension& d : dims) count.push_back(d.length);
     start[0] = t0;
     count[0] = t1 - t0;
+    read_window(variable, start, count, out);
+  }
+
+  void read_window(const std::string& variable, const std::vector<std::size_t>& start,
+                   const std::vector<std::size_t>& count, std::vector<float>& out) const override {
+    const nc::Var& v = find(variable);
+    const auto dims = dimensions(variable);
+    bool inside = start.size() == dims.size() && count.size() == dims.size();
+    for (std::size_t i = 0; inside && i < dims.size(); ++i) inside = start[i] + count[i] <= dims[i].length;
+    if (!inside) throw Error(Failure::defect, file_.path(), fmt::format("'{}' has no such window", variable));
     std::size_t size = 1;
     for (const std::size_t n : count) size *= n;
     out.resize(size);

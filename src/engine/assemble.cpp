@@ -111,7 +111,7 @@ std::string newest_input_date(const Product& product) {
   if (const char* fixed = std::getenv("SOURCE_DATE_EPOCH"); fixed != nullptr) {
     newest = static_cast<std::time_t>(std::strtoll(fixed, nullptr, 10));
   } else {
-    for (const auto& path : product.inputs) {
+    for (const auto& path : product.origins.empty() ? product.inputs : product.origins) {
       if (const auto state = os::state(path)) {
         newest = std::max(newest, static_cast<std::time_t>(state->mtime_ns / 1'000'000'000));
       }
@@ -124,30 +124,36 @@ std::string newest_input_date(const Product& product) {
   return text;
 }
 
-void assemble(const StageContext& context, std::size_t index, const pipeline::Spool& spool) {
-  const Product& product = context.products[index];
-  const auto stats = pipeline::merge_stats(context.input, index, spool);
-  const auto balance = balance_of(context, product, stats);
-  const auto file = describe(context, product, stats, balance);
+std::string write_temporary(const Product& product, const cf::ProductFile& file, const cf::ChunkSource& chunks,
+                            report::Ledger& ledger) {
   os::make_folder(os::folder_of(product.path));
-  const std::string temporary = os::temporary_beside(product.path);
-  std::vector<std::byte> chunk;
+  std::string temporary = os::temporary_beside(product.path);
   try {
-    cf::write_product(temporary, file, [&](std::size_t variable, std::size_t at) -> std::span<const std::byte> {
-      spool.payload(
-          {context.input.products[index].key, static_cast<std::uint32_t>(variable), static_cast<std::uint32_t>(at)},
-          chunk);
-      return chunk;
-    });
+    cf::write_product(temporary, file, chunks);
   } catch (const Error& error) {
     // Users know the product's name, not that of its temporary.
     std::string what = error.what();
     if (what.starts_with(temporary)) what.replace(0, temporary.size(), product.path);
     throw Error(error.kind(), "", what);
   }
-  auto ledger = ledger_of(context, product, stats, balance);
   ledger.product_bytes = file_size(temporary);
   ledger.product_digest = digest_file(temporary).hex();
+  return temporary;
+}
+
+void assemble(const StageContext& context, std::size_t index, const pipeline::Spool& spool) {
+  const Product& product = context.products[index];
+  const auto stats = pipeline::merge_stats(context.input, index, spool);
+  const auto balance = balance_of(context, product, stats);
+  const auto file = describe(context, product, stats, balance);
+  auto ledger = ledger_of(context, product, stats, balance);
+  std::vector<std::byte> chunk;
+  const auto chunks = [&](std::size_t variable, std::size_t at) -> std::span<const std::byte> {
+    spool.payload({context.input.products[index].key, static_cast<std::uint32_t>(variable),
+                   static_cast<std::uint32_t>(at)}, chunk);
+    return chunk;
+  };
+  const std::string temporary = write_temporary(product, file, chunks, ledger);
   // The inputs are looked at again before the product gets its name.
   for (const auto& path : product.inputs) {
     for (const auto& [name, digest] : product.key.parts) {
@@ -158,7 +164,12 @@ void assemble(const StageContext& context, std::size_t index, const pipeline::Sp
     }
   }
   os::publish(temporary, product.path);
-  if (context.session.job.output.csv) write_table(context, product);
+  if (context.session.job.output.csv) {
+    const auto& variable = *context.source.variable;
+    const Series axis{"", {}, variable.time(), step_dates(variable), variable.calendar(), variable.frequency()};
+    write_table(product, axis, context.session.job.fields[context.field].name, context.output_units, context.target.ids,
+                context.input.field.missing);
+  }
   os::replace_file(product.ledger_path, report::to_json(ledger));
 }
 

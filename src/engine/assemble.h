@@ -39,6 +39,10 @@ std::string newest_input_date(const Product& product);
 
 report::Balance balance_of(const StageContext& context, const Product& product, const pipeline::TileStats& stats);
 
+/// Writes the product under a temporary name beside it, which is returned; the ledger gets its size and digest.
+std::string write_temporary(const Product& product, const cf::ProductFile& file, const cf::ChunkSource& chunks,
+                            report::Ledger& ledger);
+
 /// Writes, syncs and renames the product and its ledger.
 void assemble(const StageContext& context, std::size_t product, const pipeline::Spool& spool);
 

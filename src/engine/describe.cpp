@@ -3,12 +3,12 @@
 
 #include <algorithm>
 #include <cmath>
-#include <set>
+#include <span>
 
 #include "assemble.h"
 #include "describe_mesh.h"
+#include "describe_parts.h"
 #include "station_tables.h"
-#include "windrow/calendar/time_units.h"
 #include "windrow/linear_map/kernel.h"
 
 namespace windrow::engine {
@@ -17,9 +17,6 @@ namespace {
 using cf::NamedValue;
 using cf::SmallVariable;
 using cf::Type;
-
-// CF 7.1: no default reference; one that every tool knows and that keeps days of model calendars whole.
-constexpr const char* kTimeUnits = "days since 1850-01-01 00:00:00";
 
 class Describer {
  public:
@@ -62,21 +59,10 @@ class Describer {
 
 void Describer::add_time() {
   const auto& variable = *context_.source.variable;
-  const auto units = calendar::TimeUnits::parse(kTimeUnits, variable.calendar(), "time");
-  std::vector<double> time, bounds;
-  for (std::size_t t = product_.span.t0; t < product_.span.t1; ++t) {
-    const auto& step = variable.time()[t];
-    time.push_back(units.encode(step.time));
-    bounds.insert(bounds.end(), {units.encode(step.begin), units.encode(step.end)});
-  }
-  add("time", Type::float64, {"time"}, std::move(time),
-      {{"standard_name", "time"},
-       {"long_name", "time"},
-       {"axis", "T"},
-       {"units", kTimeUnits},
-       {"calendar", variable.calendar().cf_name()},
-       {"bounds", "time_bnds"}});
-  add("time_bnds", Type::float64, {"time", "bnds"}, std::move(bounds), {});
+  const std::span steps(variable.time());
+  for (auto& part :
+       time_axis(variable.calendar(), steps.subspan(product_.span.t0, product_.span.t1 - product_.span.t0)))
+    file_.small.push_back(std::move(part));
 }
 
 void Describer::add_height() {
@@ -105,19 +91,8 @@ void Describer::add_cover() {
 }
 
 void Describer::add_status() {
-  std::vector<double> flags(stats_.flags.begin(), stats_.flags.end());
-  add("status_flag", Type::int8, horizontal(), std::move(flags),
-      {{"standard_name", "status_flag"},
-       {"long_name", "how the cell's values came about, over all times of this file"},
-       {"flag_masks", std::vector<std::int8_t>{pipeline::kAdjusted, pipeline::kFilled, pipeline::kTooLittleCover,
-                                               pipeline::kTooLittleLand, pipeline::kBeyondReach, pipeline::kAllSurface,
-                                               pipeline::kBeyondRange}},
-       {"flag_meanings",
-        "adjusted_to_stations filled_from_nearest_source_cell too_little_cover_at_some_time "
-        "too_little_land beyond_reach_of_stations all_surface_value_without_land "
-        "some_values_beyond_calibrated_range"},
-       {"units", "1"}},
-      true);
+  file_.small.push_back(
+      status_flag(stats_.flags, horizontal(), "how the cell's values came about, over all times of this file"));
 }
 
 void Describer::add_quantization() {
@@ -233,47 +208,6 @@ void Describer::add_data() {
   } else {
     add_cover();
   }
-}
-
-/// What the source says about itself and still holds for the product. Left out: identifiers and dates of the source
-/// file.
-const std::set<std::string>& kept_globals() {
-  static const std::set<std::string> kNames = {"institution",
-                                               "institute_id",
-                                               "institution_id",
-                                               "model_id",
-                                               "source_id",
-                                               "experiment",
-                                               "experiment_id",
-                                               "forcing",
-                                               "realization",
-                                               "initialization_method",
-                                               "physics_version",
-                                               "variant_label",
-                                               "activity_id",
-                                               "parent_experiment",
-                                               "parent_experiment_id",
-                                               "parent_experiment_rip",
-                                               "branch_time",
-                                               "project_id",
-                                               "frequency",
-                                               "modeling_realm",
-                                               "realm",
-                                               "references",
-                                               "license",
-                                               "driving_model_id",
-                                               "driving_experiment"};
-  return kNames;
-}
-
-void set(std::vector<NamedValue>& list, const std::string& name, cf::AttributeValue value) {
-  for (auto& entry : list) {
-    if (entry.name == name) {
-      entry.value = std::move(value);
-      return;
-    }
-  }
-  list.push_back({name, std::move(value)});
 }
 
 void Describer::add_globals(const report::Balance& balance) {

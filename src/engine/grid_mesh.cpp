@@ -3,6 +3,7 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <cmath>
 
 #include "windrow/base/error.h"
 
@@ -73,6 +74,10 @@ GridMesh whole_mesh(const cf::Grid& grid, const mesh::Earth& earth, const std::s
     case cf::GridKind::healpix:
       return {mesh::make_healpix(grid.healpix, e2_of(grid), earth, place), {}};
     case cf::GridKind::points:
+      if (!grid.points.empty() && std::isnan(grid.points.front().latitude.degrees()))
+        throw Error(Failure::data, place,
+                    fmt::format("is {}; expected values on a grid, with coordinates in degrees_north and degrees_east",
+                                grid.how));
       break;
   }
   return {mesh::make_points(grid.points, earth), {}};

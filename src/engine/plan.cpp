@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <map>
 
+#include "ensemble_make.h"
 #include "stage_setup.h"
 #include "windrow/report/facts.h"
 #include "windrow/text/words.h"
@@ -64,6 +65,31 @@ void add_products(const std::vector<Product>& products, const std::string& folde
   }
 }
 
+/// Products of [ensemble], and what of them cannot be made or is left out.
+void add_ensemble(Session& session, const RunProducts& runs, Fact& root, Totals& totals) {
+  const auto plan = plan_ensemble(session, runs);
+  for (const auto& stage : plan.stages) {
+    Fact& fact = root.add(Fact(stage.name));
+    const auto& products = stage.result.products;
+    add_products(products, session.folder(), fact, totals);
+    double bytes = 0;
+    const double cells = static_cast<double>(session.target().mesh->size());
+    for (const auto& product : products) {
+      if (product.span.wanted) bytes += cells * static_cast<double>(product.span.t1 - product.span.t0) * sizeof(float);
+    }
+    if (bytes == 0) continue;
+    const auto needs = ensemble_needs(session, stage);
+    fact.add({"chunk [time, y, x]", fmt::format("{} x {} x {}", needs.chunk.time, needs.chunk.y, needs.chunk.x)});
+    fact.add({"threads", static_cast<std::int64_t>(needs.threads)});
+    fact.add({"memory bound", text::bytes_text(needs.bound)});
+    totals.bound = std::max(totals.bound, needs.bound);
+    totals.bytes += bytes;
+    totals.seconds += bytes / kTileBytesPerSecond / needs.threads;
+  }
+  for (const auto& [name, reason, kind] : plan.failed) root.add(Fact(name)).add({"cannot be made", reason});
+  for (const auto& notice : plan.notices) root.add(Fact(notice.place)).add({"note", notice.text});
+}
+
 }  // namespace
 
 Report plan(const std::string& job_file, const Options& options) {
@@ -79,10 +105,12 @@ Report plan(const std::string& job_file, const Options& options) {
   for (const auto& notice : session.target().notices) {
     mesh.add({"note", fmt::format("{}: {}", told_path(notice.place, session.folder()), notice.text)});
   }
+  RunProducts runs;
   for (std::size_t field = 0; field < session.job.fields.size(); ++field) {
     for (std::size_t run = 0; run < session.job.runs.size(); ++run) {
       Fact& fact = root.add(Fact(fmt::format("{} of {}", session.job.fields[field].name, session.job.runs[run].name)));
       const auto products = session.products(field, run);
+      runs[{field, run}] = products;
       add_products(products, session.folder(), fact, totals);
       const bool wanted = std::any_of(products.begin(), products.end(), [](const Product& p) { return p.span.wanted; });
       if (!wanted) continue;
@@ -94,6 +122,7 @@ Report plan(const std::string& job_file, const Options& options) {
       }
     }
   }
+  add_ensemble(session, runs, root, totals);
   Fact& sum = root.add(Fact("in all"));
   sum.add({"products to make", static_cast<std::int64_t>(totals.wanted)});
   sum.add({"products up to date", static_cast<std::int64_t>(totals.current)});

@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <mutex>
 
+#include "ensemble_make.h"
 #include "make_deps.h"
 #include "stage_setup.h"
 #include "windrow/os/process.h"
@@ -46,6 +47,10 @@ double product_bytes(Session& session, const Product& product) {
   return cells * static_cast<double>(product.span.t1 - product.span.t0) * sizeof(float);
 }
 
+bool any_wanted(const std::vector<Product>& products) {
+  return std::any_of(products.begin(), products.end(), [](const Product& p) { return !p.stale.empty(); });
+}
+
 struct StageJob {
   std::size_t field, run;
   std::vector<Product> products;
@@ -60,10 +65,15 @@ class Runner {
 
  private:
   void collect();
+  void collect_ensemble();
+  void list(const std::vector<Product>& products);
+  void make(EnsembleStage& stage);
   void check_space();
   void make(StageJob& stage);
   void make_unguarded(StageJob& stage, Notices& notices);
-  void fail(const StageJob& stage, const Error& error);
+  void fail(const std::vector<Product>& products, const Error& error);
+  void made(const Product& product);
+  [[nodiscard]] std::vector<const std::vector<Product>*> all_products() const;
   void event(const std::string& kind, const std::string& text) {
     const std::lock_guard lock(events_mutex_);
     if (events_) events_({kind, text});
@@ -76,6 +86,7 @@ class Runner {
   std::mutex events_mutex_;
   SharedFits fits_;
   std::vector<StageJob> stages_;
+  std::vector<EnsembleStage> ensemble_;
   Notices notices_;
   Summary summary_;
 };
@@ -100,14 +111,44 @@ void Runner::collect() {
         if (!summary_.failure) summary_.failure = error.kind();
         continue;
       }
-      for (const auto& product : stage.products) {
-        const bool current = product.stale.empty();
-        summary_.products.push_back(
-            {product.path, current ? State::current : State::failed, current ? "up to date" : "not reached"});
-      }
+      list(stage.products);
       stages_.push_back(std::move(stage));
     }
   }
+  collect_ensemble();
+}
+
+void Runner::list(const std::vector<Product>& products) {
+  for (const auto& product : products) {
+    const bool current = product.stale.empty();
+    summary_.products.push_back(
+        {product.path, current ? State::current : State::failed, current ? "up to date" : "not reached"});
+  }
+}
+
+/// Lists the products of [ensemble] behind those of the runs.
+void Runner::collect_ensemble() {
+  RunProducts runs;
+  for (const auto& stage : stages_) runs[{stage.field, stage.run}] = stage.products;
+  auto plan = plan_ensemble(session_, runs);
+  for (const auto& stage : plan.stages) list(stage.result.products);
+  for (const auto& [name, reason, kind] : plan.failed) {
+    summary_.products.push_back({name, State::failed, reason});
+    if (!summary_.failure) summary_.failure = kind;
+  }
+  ensemble_ = std::move(plan.stages);
+  // With nothing to make there is nothing to tell.
+  const bool wanted = std::any_of(ensemble_.begin(), ensemble_.end(),
+                                  [](const EnsembleStage& stage) { return any_wanted(stage.result.products); });
+  if (!wanted) return;
+  for (const auto& notice : plan.notices) notices_.add(notice.place, notice.text);
+}
+
+std::vector<const std::vector<Product>*> Runner::all_products() const {
+  std::vector<const std::vector<Product>*> out;
+  for (const auto& stage : stages_) out.push_back(&stage.products);
+  for (const auto& stage : ensemble_) out.push_back(&stage.result.products);
+  return out;
 }
 
 /// Refuses what cannot fit at all: a deflated product is never below a twentieth of its values, and spool and product
@@ -115,8 +156,8 @@ void Runner::collect() {
 void Runner::check_space() {
   double bytes = 0;
   std::size_t wanted = 0;
-  for (const auto& stage : stages_) {
-    for (const auto& product : stage.products) {
+  for (const auto* products : all_products()) {
+    for (const auto& product : *products) {
       if (product.stale.empty()) continue;
       bytes += product_bytes(session_, product);
       ++wanted;
@@ -135,9 +176,9 @@ void Runner::check_space() {
   }
 }
 
-void Runner::fail(const StageJob& stage, const Error& error) {
+void Runner::fail(const std::vector<Product>& products, const Error& error) {
   if (!summary_.failure) summary_.failure = error.kind();
-  for (const auto& product : stage.products) {
+  for (const auto& product : products) {
     auto& status = summary_.products[index_of(product.path)];
     if (status.state == State::failed) status.reason = error.what();
   }
@@ -150,7 +191,7 @@ void Runner::make(StageJob& stage) {
   } catch (const Error& error) {
     if (error.kind() == Failure::interrupted) throw;
     event("failed", error.what());
-    fail(stage, error);
+    fail(stage.products, error);
   }
   // Of a stage that failed they may say why.
   for (const auto& notice : session_.notices(stage.field, stage.run)) notices_.add(notice.place, notice.text);
@@ -173,31 +214,48 @@ void Runner::make_unguarded(StageJob& stage, Notices& notices) {
   hooks.stop = os::stop_requested;
   hooks.finish = [&](std::size_t index) {
     assemble(context, index, spool);
-    const auto& product = context.products[index];
-    {
-      const std::lock_guard lock(events_mutex_);
-      auto& status = summary_.products[index_of(product.path)];
-      status = {product.path, State::made, product.stale};
-      summary_.output_bytes += product_bytes(session_, product);
-    }
-    progress_.product();
-    event("made", fmt::format("{} ({})", product.path, product.stale));
+    made(context.products[index]);
   };
   pipeline::run_stage(context.input, setup->stage, *setup->run_readers.top(), setup->anchor_readers.top(), spool,
                       hooks);
   spool.remove();
 }
 
+void Runner::made(const Product& product) {
+  {
+    const std::lock_guard lock(events_mutex_);
+    auto& status = summary_.products[index_of(product.path)];
+    status = {product.path, State::made, product.stale};
+    summary_.output_bytes += product_bytes(session_, product);
+  }
+  progress_.product();
+  event("made", fmt::format("{} ({})", product.path, product.stale));
+}
+
+void Runner::make(EnsembleStage& stage) {
+  progress_.phase(stage.name);
+  EnsembleHooks hooks;
+  hooks.finished = [&](std::size_t index) { made(stage.result.products[index]); };
+  hooks.progress = [this](std::int64_t bytes) { progress_.bytes(bytes); };
+  hooks.stop = os::stop_requested;
+  try {
+    make_ensemble(session_, stage, hooks);
+  } catch (const Error& error) {
+    if (error.kind() == Failure::interrupted) throw;
+    event("failed", error.what());
+    fail(stage.result.products, error);
+  }
+}
+
 Summary Runner::run() {
   const double start = os::monotonic_seconds();
   collect();
-  const bool wanted = std::any_of(stages_.begin(), stages_.end(), [](const StageJob& stage) {
-    return std::any_of(stage.products.begin(), stage.products.end(), [](const Product& p) { return !p.stale.empty(); });
-  });
+  const auto all = all_products();
+  const bool wanted = std::any_of(all.begin(), all.end(), [](const auto* products) { return any_wanted(*products); });
   if (!session_.options.make_deps.empty()) {
-    std::vector<Product> all;
-    for (const auto& stage : stages_) all.insert(all.end(), stage.products.begin(), stage.products.end());
-    write_make_deps(session_.options.make_deps, all, session_.job.path);
+    std::vector<Product> listed;
+    for (const auto* products : all) listed.insert(listed.end(), products->begin(), products->end());
+    write_make_deps(session_.options.make_deps, listed, session_.job.path);
   }
   if (wanted) {
     // Without its mesh nothing of the job can be made.
@@ -207,9 +265,12 @@ Summary Runner::run() {
     session_.digests().save();
     check_space();
     for (auto& stage : stages_) {
-      const bool any =
-          std::any_of(stage.products.begin(), stage.products.end(), [](const Product& p) { return !p.stale.empty(); });
-      if (!any) continue;
+      if (!any_wanted(stage.products)) continue;
+      lease.confirm();
+      make(stage);
+    }
+    for (auto& stage : ensemble_) {
+      if (!any_wanted(stage.result.products)) continue;
       lease.confirm();
       make(stage);
     }

@@ -36,6 +36,11 @@ plan::Found find_product(const Product& product, bool table) {
 
 }  // namespace
 
+std::string ledger_path(const std::string& product_path) {
+  const bool netcdf = product_path.ends_with(".nc");
+  return (netcdf ? product_path.substr(0, product_path.size() - 3) : product_path) + ".ledger.json";
+}
+
 codec::Digest digest_of(const plan::Key& key) {
   codec::Hasher hasher;
   for (const auto& [name, digest] : key.parts) hasher.add(name).add(digest.hex());
@@ -51,7 +56,25 @@ Session::Session(const std::string& job_file, const Options& given)
   maps_ = std::make_unique<MapStore>(job.workspace + "/maps");
 }
 
-void Session::write_nothing() { maps_ = std::make_unique<MapStore>(""); }
+void Session::write_nothing() {
+  maps_ = std::make_unique<MapStore>("");
+  writes_ = false;
+}
+
+plan::Key Session::key_head(const std::vector<std::pair<std::string, std::string>>& settings) {
+  plan::Key key;
+  key.parts.emplace_back("program", codec::digest(std::string(kProductFormat)));
+  codec::Hasher hasher;
+  for (const auto& [name, value] : settings) hasher.add(name).add(value);
+  key.parts.emplace_back("settings", hasher.finish());
+  return key;
+}
+
+void Session::judge(Product& product) const {
+  product.key_digest = digest_of(product.key);
+  product.stale = plan::why_stale(find_product(product, job.output.csv), product.key);
+  product.span.wanted = !product.stale.empty();
+}
 
 const Target& Session::target() {
   if (!target_) target_ = make_target(job, *maps_);
@@ -136,13 +159,7 @@ plan::Key Session::key_of(std::size_t field, std::size_t run, const plan::Produc
   }
   std::sort(inputs.begin(), inputs.end());
   inputs.erase(std::unique(inputs.begin(), inputs.end()), inputs.end());
-  plan::Key key;
-  key.parts.emplace_back("program", codec::digest(std::string(kProductFormat)));
-  codec::Hasher settings;
-  for (const auto& [name, value] : job::product_settings(job, field, run, job::Effect::encoding)) {
-    settings.add(name).add(value);
-  }
-  key.parts.emplace_back("settings", settings.finish());
+  plan::Key key = key_head(job::product_settings(job, field, run, job::Effect::encoding));
   for (const auto& path : inputs) key.parts.emplace_back(told_path(path, folder_), digests_->of(path));
   return key;
 }
@@ -158,14 +175,10 @@ std::vector<Product> Session::products(std::size_t field, std::size_t run) {
     product.field = field;
     product.run = run;
     product.path = product_path(field, run, dates[t].year);
-    product.ledger_path =
-        (product.path.ends_with(".nc") ? product.path.substr(0, product.path.size() - 3) : product.path) +
-        ".ledger.json";
+    product.ledger_path = ledger_path(product.path);
     product.span = {t, end, true};
     product.key = key_of(field, run, product.span, product.inputs);
-    product.key_digest = digest_of(product.key);
-    product.stale = plan::why_stale(find_product(product, job.output.csv), product.key);
-    product.span.wanted = !product.stale.empty();
+    judge(product);
     out.push_back(std::move(product));
     t = end;
   }

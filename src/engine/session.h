@@ -11,6 +11,7 @@
 #include "source.h"
 #include "target.h"
 #include "windrow/base/notices.h"
+#include "windrow/calendar/calendar.h"
 #include "windrow/cf/dataset.h"
 #include "windrow/engine/engine.h"
 #include "windrow/job/spec.h"
@@ -27,9 +28,19 @@ struct Product {
   plan::Key key;
   codec::Digest key_digest;
   std::vector<std::string> inputs;  ///< paths behind the key
+  std::vector<std::string> origins; ///< of a product computed from others: the files behind those
   std::string stale;                ///< why it must be made; empty: up to date
 };
 
+/// Finished products of one field in time order, with their time axis: a run's, or what is computed from runs'.
+struct Series {
+  std::string name;               ///< what stands for {run}
+  std::vector<Product> products;  ///< spans count on the axis below
+  std::vector<cf::TimeStep> time;
+  std::vector<calendar::Date> dates;
+  calendar::Calendar calendar;
+  cf::Frequency frequency = cf::Frequency::fixed;
+};
 class Session {
  public:
   /// Reads the job file and expands the runs' patterns. Errors as for the job file and missing inputs.
@@ -55,6 +66,11 @@ class Session {
     return job.fields[field].adjust.method != job::Adjustment::none;
   }
   void wait_until_settled() const { engine::wait_until_settled(files_, job.settle_s); }
+  /// What a run of the job would do with a product whose key is complete: fills in key_digest, stale and span.wanted.
+  void judge(Product& product) const;
+  /// First parts of a key: program and settings.
+  [[nodiscard]] static plan::Key key_head(const std::vector<std::pair<std::string, std::string>>& settings);
+  [[nodiscard]] bool writes() const { return writes_; }  ///< false: `plan`
   /// Keeps workspace objects in memory only: `plan` writes nothing.
   void write_nothing();
 
@@ -70,6 +86,7 @@ class Session {
   std::unique_ptr<DigestCache> digests_;
   std::unique_ptr<MapStore> maps_;
   std::optional<Target> target_;
+  bool writes_ = true;
   struct Opened {
     Source source;  ///< mesh null until asked for
     Notices notices;
@@ -77,6 +94,9 @@ class Session {
   Opened& opened(std::size_t field, std::size_t run);
   std::map<std::pair<std::size_t, std::string>, Opened> sources_;  ///< by run and variable
 };
+
+/// PRODUCT.ledger.json beside PRODUCT.nc.
+std::string ledger_path(const std::string& product_path);
 
 /// Digest of a key: names the product's tiles in the spool.
 codec::Digest digest_of(const plan::Key& key);

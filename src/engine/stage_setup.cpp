@@ -269,17 +269,16 @@ void plan_stage(Session& session, StageSetup& out, const std::string& place) {
   out.stage = plan::make_stage(needs, place);
 }
 
-plan::Chunk chunk_of(const Session& session, const Target& target, const Source& source, bool adjusted) {
+}  // namespace
+
+plan::Chunk chunk_of(const Session& session, const Target& target, cf::Frequency frequency, bool adjusted) {
   if (const auto& tile = session.job.output.tile) {
     return {static_cast<std::size_t>((*tile)[0]), std::min(static_cast<std::size_t>((*tile)[1]), target.ny),
             std::min(static_cast<std::size_t>((*tile)[2]), target.nx)};
   }
-  const auto frequency = source.variable->frequency();
-  return plan::automatic_chunk(
-      {target.ny, target.nx, adjusted, frequency == cf::Frequency::monthly, frequency == cf::Frequency::fixed});
+  return plan::automatic_chunk({target.ny, target.nx, adjusted, frequency == cf::Frequency::monthly,
+                                frequency == cf::Frequency::fixed});
 }
-
-}  // namespace
 
 std::int64_t memory_ceiling(const job::JobSpec& job) {
   return job.memory_bytes ? *job.memory_bytes : os::memory_limit() / 10 * 8;
@@ -382,7 +381,7 @@ std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size
   input.weights = &out->weights;
   input.ny = target.ny;
   input.nx = target.nx;
-  input.chunk = chunk_of(session, target, source, session.adjusted(field));
+  input.chunk = chunk_of(session, target, source.variable->frequency(), session.adjusted(field));
   input.field = field_math(session.job, spec, conversion.affine);
   input.level = session.job.output.deflate ? session.job.output.level : 0;
   input.bins = step_bins(out->scan, *out->map, input.field);

@@ -50,6 +50,9 @@ struct StageSetup {
 std::unique_ptr<StageSetup> set_up(Session& session, SharedFits& fits, std::size_t field, std::size_t run,
                                    std::vector<Product> products, Notices& notices);
 
+/// The job's tile, or the automatic chunk of a product.
+plan::Chunk chunk_of(const Session& session, const Target& target, cf::Frequency frequency, bool adjusted);
+
 /// Output units of a field for a run: the job's, or the source's in UDUNITS' spelling.
 std::string output_units(Session& session, std::size_t field, std::size_t run);
 

@@ -72,11 +72,14 @@ void Voucher::check_ledger() {
 /// Strictly monotonic, bounds around every value, neighbours share bounds (CF 7.1).
 void Voucher::check_axis(const std::string& name) {
   const auto values = reader_->values(name);
-  if (!has(name + "_bnds")) {
+  // CF 7.4: a climatological time has climatology bounds, which overlap from month to month.
+  const auto climatology = text(name, "climatology");
+  const std::string bounds_name = climatology.empty() ? name + "_bnds" : climatology;
+  if (!has(bounds_name)) {
     check("axis " + name, false, "has no bounds");
     return;
   }
-  const auto bounds = reader_->values(name + "_bnds");
+  const auto bounds = reader_->values(bounds_name);
   bool good = bounds.size() == 2 * values.size();
   for (std::size_t i = 0; good && i < values.size(); ++i) {
     good = bounds[2 * i] <= values[i] && values[i] <= bounds[2 * i + 1];
@@ -94,7 +97,8 @@ void Voucher::check_structure() {
     const auto dimensions = reader_->dimensions(name);
     if (dimensions.size() == 1 && dimensions.front().name == name) check_axis(name);
   }
-  std::vector<std::string> wanted{"crs", "status_flag", "cover"};
+  std::vector<std::string> wanted{"crs", "status_flag"};
+  if (text("", "windrow_ensemble").empty()) wanted.emplace_back("cover");  // that of its members stands in them
   if (text("", "featureType").empty()) wanted.emplace_back("cell_area");  // points have no area
   std::string missing, all;
   for (const std::string& name : wanted) {

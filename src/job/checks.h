@@ -11,7 +11,7 @@ namespace windrow::job {
 /// The cursors the checks point with, in the order of JobSpec's lists.
 struct Tables {
   std::vector<Table> runs, fields;
-  std::optional<Table> output;
+  std::optional<Table> ensemble, output;
 };
 
 /// Fills in what a run's name and family default to, then checks that names are unique and that every family has
@@ -24,5 +24,7 @@ void check_methods(const Tables& tables, const JobSpec& job);
 void check_pairs(const Tables& tables, const JobSpec& job);
 /// Every field of every run has a product name of its own.
 void check_products(const Document& document, const Tables& tables, const JobSpec& job);
+/// Statistics have members, and products of [ensemble] names of their own.
+void check_ensemble(const Document& document, const Tables& tables, const JobSpec& job);
 
 }  // namespace windrow::job

@@ -55,6 +55,7 @@ JobSpec parse_job(const std::string& path, const std::string& text, const std::v
   job.mesh = read_mesh(*mesh);
   if (const auto table = root.table("stations", "[stations]", kStationKeys)) job.stations = read_stations(*table);
   if (const auto table = root.table("reach", "[reach]", kReachKeys)) job.reach = read_reach(*table);
+  tables.ensemble = root.table("ensemble", "[ensemble]", kEnsembleKeys);
   tables.output = root.table("output", "[output]", kOutputKeys);
   if (tables.output) {
     const std::string directory = job.output.directory;
@@ -63,10 +64,12 @@ JobSpec parse_job(const std::string& path, const std::string& text, const std::v
   }
 
   settle_runs(tables, job);
+  if (tables.ensemble) job.ensemble = read_ensemble(*tables.ensemble, job);
   check_fields(tables, job);
   check_methods(tables, job);
   check_pairs(tables, job);
   check_products(document, tables, job);
+  check_ensemble(document, tables, job);
   return job;
 }
 

@@ -12,7 +12,7 @@
 
 namespace windrow::job {
 
-const Keys kRootKeys{{"job", "run", "field", "mesh", "stations", "reach", "output"}, {"joint", "ensemble"}};
+const Keys kRootKeys{{"job", "run", "field", "mesh", "stations", "reach", "ensemble", "output"}, {"joint"}};
 const Keys kJobKeys{{"title", "workspace", "memory", "threads", "settle", "version"}, {}};
 const Keys kRunKeys{{"name", "family", "anchor", "forcing", "files", "land_fraction", "grid"}, {}};
 const Keys kGridKeys{{"crs", "pole", "units", "coordinates", "sides"}, {}};

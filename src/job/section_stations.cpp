@@ -96,20 +96,19 @@ void read_mappings(const Table& table, StationSpec& stations) {
   }
 }
 
-std::optional<std::pair<int, int>> normals_period(const Table& table) {
-  const auto years = table.numbers("normals_period", 2);
+}  // namespace
+
+std::optional<std::pair<int, int>> read_years(const Table& table, const std::string& key) {
+  const auto years = table.numbers(key, 2);
   if (!years) return std::nullopt;
-  for (const Value& item : table.find("normals_period")->items)
+  for (const Value& item : table.find(key)->items)
     if (item.kind != Value::Kind::whole || item.whole < 1 || item.whole > 9999)
-      table.document().fail(item.at, "an entry of 'normals_period' is no year; expected one such as 1981");
+      table.document().fail(item.at, fmt::format("an entry of '{}' is no year; expected one such as 1981", key));
   if ((*years)[1] < (*years)[0])
-    table.fail("normals_period", fmt::format("'normals_period' ends in {}, before it begins in {}; expected the first "
-                                             "year first",
-                                             (*years)[1], (*years)[0]));
+    table.fail(key, fmt::format("'{}' ends in {}, before it begins in {}; expected the first year first", key,
+                                (*years)[1], (*years)[0]));
   return std::pair{static_cast<int>((*years)[0]), static_cast<int>((*years)[1])};
 }
-
-}  // namespace
 
 StationSpec read_stations(const Table& table) {
   StationSpec stations;
@@ -129,7 +128,7 @@ StationSpec read_stations(const Table& table) {
   if (stations.sites.empty() && !hold_sites)
     table.missing("sites", "a CSV file with station, longitude, latitude and elevation");
   read_mappings(table, stations);
-  stations.normals_period = normals_period(table);
+  stations.normals_period = read_years(table, "normals_period");
   stations.min_years = table.whole("min_years", stations.min_years, 1, 1000);
   read_day(table, stations);
   stations.undercatch = table.text("undercatch", "none");

@@ -12,11 +12,12 @@ FieldSpec read_field(const Table& table);               ///< [[field]] with [fie
 MeshSpec read_mesh(const Table& table);                 ///< [mesh]
 StationSpec read_stations(const Table& table);          ///< [stations]
 ReachSpec read_reach(const Table& table);               ///< [reach]
+EnsembleSpec read_ensemble(const Table& table, const JobSpec& job);  ///< [ensemble]; needs the job's runs
 /// [output], directory absolute. What `tile` and `also` may say depends on the kind of mesh.
 OutputSpec read_output(const Table& table, MeshKind kind);
 
 extern const Keys kRootKeys, kJobKeys, kRunKeys, kGridKeys, kFieldKeys, kMeshKeys, kStationKeys, kReachKeys,
-    kOutputKeys;
+    kEnsembleKeys, kWarmingKeys, kOutputKeys;
 
 std::string kind_word(MeshKind kind);  ///< as [mesh] kind says it
 /// Cells in rows and columns; `file` may turn out otherwise once the file is read.
@@ -27,5 +28,8 @@ std::string method_word(Method method);  ///< as [[field]] method says it
 void check_name(const Table& table, const std::string& key, const std::string& name);
 /// Units that UDUNITS knows, after the usual repairs; absent is fine.
 void check_units(const Table& table, const std::string& key);
+
+/// [first year, last year]; nothing when the key is absent.
+std::optional<std::pair<int, int>> read_years(const Table& table, const std::string& key);
 
 }  // namespace windrow::job

@@ -265,6 +265,26 @@ void add_reach(List& list, const ReachSpec& reach) {
   if (!nearest) list.add("reach.neighbours", reach.neighbours);
 }
 
+void add_ensemble(List& list, const JobSpec& job) {
+  const EnsembleSpec& ensemble = job.ensemble;
+  std::string words, pairs, levels;
+  for (const auto& statistic : ensemble.statistics) words += (words.empty() ? "" : ", ") + statistic.word;
+  for (const auto& pair : ensemble.contrasts) pairs += (pairs.empty() ? "" : ", ") + contrast_name(job, pair);
+  if (!words.empty()) list.add("ensemble.statistics", words);
+  if (!pairs.empty()) list.add("ensemble.contrast", pairs);
+  if (ensemble.baseline)
+    list.add("ensemble.baseline", fmt::format("{} to {}", ensemble.baseline->first, ensemble.baseline->second));
+  if (!ensemble.warming) return;
+  for (const double level : ensemble.warming->levels) levels += fmt::format("{}{}", levels.empty() ? "" : ", ", level);
+  list.add("ensemble.warming.levels", levels);
+  if (ensemble.warming->global.empty())
+    list.add("ensemble.warming.global", "computed from the run's own files");
+  else
+    list.add_path("ensemble.warming.global", ensemble.warming->global);
+  list.add("ensemble.warming.reference",
+           fmt::format("{} to {}", ensemble.warming->reference.first, ensemble.warming->reference.second));
+}
+
 void add_job(List& list, const JobSpec& job) {
   list.add("job.title", or_none(job.title));
   list.add_path("job.workspace", job.workspace, Effect::none);
@@ -311,6 +331,7 @@ std::vector<std::pair<std::string, std::string>> settings(const JobSpec& job, bo
   add_mesh(list, job.mesh);
   add_stations(list, job.stations);
   if (job.stations.given) add_reach(list, job.reach);
+  add_ensemble(list, job);
   add_output(list, job.output, job.mesh.kind);
   return chosen(list, result_only ? Effect::result : Effect::none);
 }
@@ -336,6 +357,17 @@ std::vector<std::pair<std::string, std::string>> product_settings(const JobSpec&
     add_stations(list, job.stations);
     add_reach(list, job.reach);
   }
+  add_output(list, job.output, job.mesh.kind);
+  return chosen(list, least);
+}
+
+std::vector<std::pair<std::string, std::string>> ensemble_settings(
+    const JobSpec& job, std::size_t field, const std::vector<std::pair<std::string, std::string>>& own, Effect least) {
+  List list(job);
+  add_job(list, job);
+  list.add("field.name", job.fields.at(field).name);
+  list.add("mesh.name", job.mesh.name);
+  for (const auto& [key, value] : own) list.add(key, value);
   add_output(list, job.output, job.mesh.kind);
   return chosen(list, least);
 }

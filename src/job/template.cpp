@@ -152,6 +152,21 @@ constexpr const char* kStations = R"toml(#[stations]
 #                             # models: exponential | spherical | gaussian; a model alone is fitted
 )toml";
 
+constexpr const char* kEnsemble =
+    R"toml(# Products computed from the finished products of the runs; they are named with what they are in place of {run}.
+#[ensemble]
+# Statistics are taken over the runs of one 'forcing', one member a family (its anchor run, or its first of that forcing), at the
+# steps that all have; a cell where a member is missing is missing. With 'baseline' of values and of anomalies. spread:
+# standard deviation with n - 1; quantile: type 7 of Hyndman & Fan 1996; agreement (of anomalies): share of members whose
+# change has the sign of the mean change.
+# statistics = ["mean", "spread", "quantile:0.1", "quantile:0.9", "agreement"]
+# contrast = [["run", "run-natural"]]   # factual minus counterfactual, step by step: two runs of one family
+#baseline = [1981, 2010]      # anomalies of every run against its monthly means of these years
+# Warming levels: monthly means of the 20 years (n - 9 to n + 10) in which the running global mean first reaches each level
+# above its mean of 'reference'. global: a file with the series; without it, it is computed from the run's files.
+#warming  = { levels = [1.5, 2.0], global = "in/{run}_gmst.nc", reference = [1850, 1900] }
+)toml";
+
 constexpr const char* kOutput = R"toml([output]
 #directory = "out"
 #name      = "{field}_{run}_{mesh}.nc"   # {field} {run} {mesh} {version}; {year} splits by year
@@ -173,7 +188,8 @@ constexpr const char* kCellOutput = R"toml(#tile      = "auto"           # or [t
 
 std::string template_text(const std::string& kind) {
   const auto whole = [](const std::string& field, const std::string& mesh, const std::string& output) {
-    return kHead + ("\n" + field) + "\n" + kAdjust + "\n" + mesh + "\n" + kStations + "\n" + kOutput + output;
+    return kHead + ("\n" + field) + "\n" + kAdjust + "\n" + mesh + "\n" + kStations + "\n" + kEnsemble + "\n" +
+           kOutput + output;
   };
   if (kind == "grid") return whole(kField, kGridMesh, kGridOutput);
   if (kind == "catchments") return whole(kField, kCatchmentMesh, kCellOutput);

@@ -79,6 +79,9 @@ struct ProductReader {
   [[nodiscard]] virtual std::vector<double> values(const std::string& variable) const = 0;
   virtual void read_steps(const std::string& variable, std::size_t t0, std::size_t t1,
                           std::vector<float>& out) const = 0;
+  /// A hyperslab: `start` and `count` have one entry a dimension.
+  virtual void read_window(const std::string& variable, const std::vector<std::size_t>& start,
+                           const std::vector<std::size_t>& count, std::vector<float>& out) const = 0;
 };
 std::unique_ptr<ProductReader> open_product(const std::string& path);
 

@@ -142,6 +142,25 @@ struct OutputSpec {
   std::vector<std::pair<std::string, std::string>> attributes;
 };
 
+enum class StatisticKind { mean, spread, quantile, agreement };
+struct EnsembleStatistic {
+  StatisticKind kind = StatisticKind::mean;
+  double p = 0;      ///< of a quantile
+  std::string word;  ///< as the job file says it
+};
+struct WarmingSpec {
+  std::vector<double> levels;            ///< kelvin above the reference
+  std::string global;                    ///< path with {run}; empty: computed from the run's own files
+  std::pair<int, int> reference{1850, 1900};
+};
+/// What is computed from finished products.
+struct EnsembleSpec {
+  std::vector<EnsembleStatistic> statistics;
+  std::vector<std::pair<std::size_t, std::size_t>> contrasts;  ///< runs: factual, counterfactual
+  std::optional<std::pair<int, int>> baseline;
+  std::optional<WarmingSpec> warming;
+};
+
 struct JobSpec {
   std::string path;  ///< the job file
   std::string text;  ///< its text, kept for provenance
@@ -155,6 +174,7 @@ struct JobSpec {
   MeshSpec mesh;
   StationSpec stations;
   ReachSpec reach;
+  EnsembleSpec ensemble;
   OutputSpec output;
 };
 
@@ -169,6 +189,21 @@ std::string template_text(const std::string& kind);
 /// The file name of a field's product of one run, from the pattern of [output] name; {year} is left in.
 std::string product_name(const JobSpec& job, const FieldSpec& field, const RunSpec& run);
 
+/// Runs that make an ensemble: those of one forcing, one member a family (its anchor run where that has this forcing, else
+/// its first). Forcings with runs of a single family make none.
+struct EnsembleGroup {
+  std::string forcing, name;         ///< name: "ensemble", with the forcing where there are several groups
+  std::vector<std::size_t> runs;     ///< members
+  std::vector<std::size_t> others;   ///< runs of a family that has its member already
+};
+std::vector<EnsembleGroup> ensemble_groups(const JobSpec& job);
+
+/// What stands for {run} in the names of products of [ensemble], and for a statistic in it ("mean", "q90").
+std::string contrast_name(const JobSpec& job, const std::pair<std::size_t, std::size_t>& pair);
+std::string statistic_part(const EnsembleStatistic& statistic);
+std::string warming_name(const JobSpec& job, std::size_t run, double level);
+std::vector<std::string> ensemble_names(const JobSpec& job);
+
 /// Every setting with its value, defaults included, one "key = value" a line, in job-file order. Result-changing keys
 /// only when `result_only`; used for the ledger and the staleness key.
 std::vector<std::pair<std::string, std::string>> settings(const JobSpec& job, bool result_only);
@@ -182,5 +217,9 @@ enum class Effect { result, encoding, none };
 /// reach only for an adjusted field; the anchor run's where it is another run.
 std::vector<std::pair<std::string, std::string>> product_settings(const JobSpec& job, std::size_t field,
                                                                   std::size_t run, Effect least);
+
+/// The settings a product of [ensemble] depends on beside its members' own: `own` are those of its kind.
+std::vector<std::pair<std::string, std::string>> ensemble_settings(
+    const JobSpec& job, std::size_t field, const std::vector<std::pair<std::string, std::string>>& own, Effect least);
 
 }  // namespace windrow::job

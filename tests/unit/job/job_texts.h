@@ -113,6 +113,34 @@ tile      = [365, 16, 32]
 attributes = { institution = "Kelder Weather Office (invented)", contact = "none" }
 )toml";
 
+/// Three runs of two families and everything [ensemble] can ask for.
+inline const std::string kEnsemble = R"toml([[run]]
+name    = "heron-all"
+family  = "heron"
+anchor  = true
+forcing = "All forcings"
+files   = ["heron_all.nc"]
+[[run]]
+name    = "heron-natural"
+family  = "heron"
+forcing = "natural only"
+files   = ["heron_nat.nc"]
+[[run]]
+name    = "plover-all"
+forcing = "All forcings"
+files   = ["plover.nc"]
+[[field]]
+variable = "tas"
+[mesh]
+lon = { from = -10, to = 30, step = 0.25 }
+lat = { from = 35, to = 60, step = 0.25 }
+[ensemble]
+statistics = ["mean", "spread", "quantile:0.1", "quantile:0.975", "agreement"]
+contrast = [["heron-all", "heron-natural"]]
+baseline = [1981, 2010]
+warming  = { levels = [1.5, 2.0], global = "in/{run}_gmst.nc", reference = [1861, 1900] }
+)toml";
+
 /// A job on another kind of mesh: `mesh` are its keys below [mesh]; `field` more keys of its one field.
 inline std::string job_on(const std::string& mesh, const std::string& field = "", const std::string& output = "") {
   return "[[run]]\nfiles = [\"tas_*.nc\"]\n[[field]]\nvariable = \"tas\"\n" + field + "[mesh]\n" + mesh + "[output]\n" +

@@ -277,8 +277,8 @@ TEST_CASE("the job file to start from shows a setting's default") {
 
 TEST_CASE("the job files to start from name every key of this version") {
   const std::string text = template_text("grid") + template_text("catchments") + template_text("towns");
-  for (const Keys* keys :
-       {&kJobKeys, &kRunKeys, &kGridKeys, &kFieldKeys, &kMeshKeys, &kStationKeys, &kReachKeys, &kOutputKeys})
+  for (const Keys* keys : {&kJobKeys, &kRunKeys, &kGridKeys, &kFieldKeys, &kMeshKeys, &kStationKeys, &kReachKeys,
+                           &kEnsembleKeys, &kWarmingKeys, &kOutputKeys})
     for (const std::string& key : keys->known) {
       CAPTURE(key);
       CHECK((text.find(key + " ") != std::string::npos || text.find("." + key + "]") != std::string::npos));
