@@ -12,8 +12,8 @@
 namespace windrow::cli {
 namespace {
 
-const std::vector<std::string> kCommands{"new", "inspect", "plan", "run", "vouch"};
-const std::vector<std::string> kCommandsToCome{"join", "prove"};
+const std::vector<std::string> kCommands{"new", "inspect", "plan", "run", "prove", "vouch"};
+const std::vector<std::string> kCommandsToCome{"join"};
 const std::vector<std::string> kOptionsToCome{"--allow-revision", "--part"};
 
 constexpr const char* kFooter =
@@ -21,6 +21,14 @@ constexpr const char* kFooter =
     "hold; 66 input missing; 70 defect of windrow; 73 cannot create output; 74 input/output error; 75 interrupted or\n"
     "workspace held: run again to go on; 78 bad job file.\n"
     "Start with `windrow new > job.toml`; what a job file can say stands in it.";
+
+constexpr const char* kProveFooter =
+    "Every adjusted field, on the anchor run of each family: each station is left out in turn, blocks of neighbouring\n"
+    "stations together, and odd or even years or one half of the years; what the others make of its place is compared\n"
+    "with its own record, beside the raw model and the height adjustment alone. The verdict rests on blocks of "
+    "stations\n"
+    "in years that were not fitted. Apart from the file of --csv nothing is written.\n"
+    "Options of every command and the exit status: `windrow --help`.";
 
 [[noreturn]] void refuse(const std::string& message) { throw Error(Failure::usage, "", message); }
 
@@ -74,9 +82,15 @@ struct Parser {
     plan->add_option("JOB", arguments.job, "The job file")->option_text(" ");
     CLI::App* run = command("run", "Make the products");
     run->add_option("JOB", arguments.job, "The job file")->option_text(" ");
+    CLI::App* prove = command("prove", "Cross-validate the adjustment: what places without a station can expect");
+    prove->add_option("JOB", arguments.job, "The job file")->option_text(" ");
+    prove->add_option("--csv", arguments.csv, "Write a line a station, season and score")
+        ->option_text("FILE")
+        ->take_last();
+    prove->footer(kProveFooter);
     CLI::App* vouch = command("vouch", "Check finished products again");
     vouch->add_option("PRODUCT", arguments.files, "Products to check")->option_text("...");
-    for (CLI::App* with_json : {inspect, plan, run, vouch})
+    for (CLI::App* with_json : {inspect, plan, run, prove, vouch})
       with_json->add_flag("--json", arguments.json, "Print JSON instead of text");
   }
 
@@ -190,7 +204,8 @@ Arguments parse_arguments(const std::vector<std::string>& words) {
     return arguments;
   }
   if (chosen.empty()) refuse("no command; expected " + text::alternatives(kCommands) + " (see `windrow --help`)");
-  constexpr Command kChosen[] = {Command::start, Command::inspect, Command::plan, Command::run, Command::vouch};
+  constexpr Command kChosen[] = {Command::start, Command::inspect, Command::plan,
+                                 Command::run,   Command::prove,   Command::vouch};
   const auto at = std::find(kCommands.begin(), kCommands.end(), chosen.front()->get_name());
   arguments.command = kChosen[at - kCommands.begin()];
   arguments.options.threads = threads(parser.typed.threads);

@@ -7,16 +7,25 @@
 
 namespace windrow::cli {
 
-enum class Command { print, start, inspect, plan, run, vouch };  ///< start: `windrow new`; print: --help, --version
+enum class Command {
+  print,
+  start,
+  inspect,
+  plan,
+  run,
+  prove,
+  vouch
+};  ///< start: `windrow new`; print: --help, --version
 
 struct Arguments {
   Command command = Command::print;
   std::string text;                ///< print: what to print
   std::string kind = "grid";       ///< start: --for
-  std::string job;                 ///< plan, run
+  std::string job;                 ///< plan, run, prove
   std::vector<std::string> files;  ///< inspect, vouch: at least one
   bool json = false;
   bool quiet = false;
+  std::string csv;       ///< prove: path or empty
   std::string log_json;  ///< path or empty
   engine::Options options;
 };

@@ -15,6 +15,7 @@
 #include "json_lines.h"
 #include "progress.h"
 #include "windrow/job/spec.h"
+#include "windrow/os/files.h"
 #include "windrow/os/process.h"
 #include "wording.h"
 
@@ -82,6 +83,32 @@ int run(const cli::Arguments& arguments) {
   }
 }
 
+int prove(const cli::Arguments& arguments) {
+  std::unique_ptr<cli::ProgressLine> line;
+  if (const auto columns = terminal_columns(); columns && !arguments.quiet)
+    line = std::make_unique<cli::ProgressLine>(tell, os::monotonic_seconds, *columns);
+  os::watch_signals();
+  const auto show = [&](const engine::ProgressState& state) {
+    if (line) line->show(state);
+  };
+  const auto clear = [&] {
+    if (line) line->clear();
+  };
+  try {
+    const engine::Proof proof = engine::prove(arguments.job, arguments.options, show);
+    clear();
+    if (!arguments.quiet)
+      for (const Notice& notice : proof.notices) tell(cli::notice_text(notice) + "\n");
+    for (const std::string& failure : proof.failures) tell(fmt::format("windrow: {}\n", failure));
+    if (!arguments.csv.empty() && !proof.csv.empty()) os::replace_file(arguments.csv, proof.csv);
+    print(arguments.json ? proof.report.json : proof.report.text);
+    return proof.failure ? cli::exit_status(*proof.failure) : cli::kSuccess;
+  } catch (const Error&) {
+    clear();
+    throw;
+  }
+}
+
 // Calls `one` for each file; an Error of one file does not keep the others from being looked at.
 template <class F>
 int for_each_file(const std::vector<std::string>& files, F one) {
@@ -121,6 +148,8 @@ int dispatch(const cli::Arguments& arguments) {
     }
     case cli::Command::run:
       return run(arguments);
+    case cli::Command::prove:
+      return prove(arguments);
     case cli::Command::vouch:
       return for_each_file(arguments.files, [&](const std::string& file) {
         const engine::Vouched vouched = engine::vouch(file);

@@ -1,5 +1,6 @@
 // From the job's words to the setup of an adjustment. Private to the engine.
 #pragma once
+#include <cstdint>
 #include <string>
 
 #include "windrow/adjust/setup.h"
@@ -8,6 +9,10 @@
 #include "windrow/units/units.h"
 
 namespace windrow::engine {
+
+/// Which days are made wet is drawn from one field for the whole job: the seed is fixed, so that every product of every
+/// family shares its days.
+inline constexpr std::uint64_t kDrawSeed = 20260101;
 
 /// Method, seasons and limits of a field for a run of the given frequency. Error(data) for what is neither daily nor
 /// monthly.

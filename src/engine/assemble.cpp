@@ -55,10 +55,10 @@ std::vector<std::pair<std::string, std::int64_t>> count_figures(const StageConte
     out.emplace_back(kNames[i], static_cast<std::int64_t>(stats.count[i]));
   }
   if (context.calibration != nullptr) {
-    out.emplace_back("stations_level", static_cast<std::int64_t>(context.calibration->level_stations));
-    out.emplace_back("stations_shape", static_cast<std::int64_t>(context.calibration->shape_stations));
+    out.emplace_back("stations_level", static_cast<std::int64_t>(context.calibration->carried.level_stations));
+    out.emplace_back("stations_shape", static_cast<std::int64_t>(context.calibration->carried.shape_stations));
     const auto left = static_cast<std::int64_t>(context.calibration->stations.size()) -
-                      static_cast<std::int64_t>(context.calibration->level_stations);
+                      static_cast<std::int64_t>(context.calibration->carried.level_stations);
     out.emplace_back("stations_left_out", left);
   }
   return out;

@@ -5,10 +5,10 @@
 #include <algorithm>
 #include <cmath>
 #include <limits>
+#include <numeric>
 #include <optional>
 
 #include "adjust_setup.h"
-#include "carrying.h"
 #include "lapse_fit.h"
 #include "station_tables.h"
 #include "windrow/base/error.h"
@@ -125,6 +125,10 @@ void check_resolution(const adjust::Setup& setup, const std::vector<station::Rec
   }
 }
 
+std::string place_of(const CalibrationNeeds& needs) {
+  return fmt::format("field '{}', run '{}'", needs.field.name, needs.anchor_name);
+}
+
 [[noreturn]] void no_station(const CalibrationNeeds& needs, const std::vector<report::StationRecord>& outcomes) {
   std::string why =
       outcomes.empty() ? "of those in the tables none can be used; the notes say why" : outcomes.front().outcome;
@@ -165,51 +169,96 @@ std::array<double, 12> lapse_in(const job::TerrainSpec& terrain, const std::stri
   return out;
 }
 
-Calibration calibrate(const CalibrationNeeds& needs, Notices& notices) {
-  const std::string place_text = fmt::format("field '{}', run '{}'", needs.field.name, needs.anchor_name);
-  Calibration out;
+void no_shape(const CalibrationNeeds& needs) {
+  throw Error(Failure::data, place_of(needs),
+              job::word(needs.field.adjust.method) + " needs stations with daily series; there are none");
+}
+
+Gathered gather(const CalibrationNeeds& needs, Notices& notices) {
+  const std::string place_text = place_of(needs);
+  Gathered out;
   out.setup =
       adjust_setup(needs.field.adjust, *needs.anchor.variable, needs.conversion, needs.output_units, place_text);
   out.steps = adjust::make_steps(out.setup, needs.anchor.variable->calendar(), step_dates(*needs.anchor.variable),
                                  needs.field.adjust.period, true, place_text);
-  const auto all = records(needs, notices);
-  check_resolution(out.setup, all, place_text);
-  const auto placed = place(needs, all, notices, out.stations);
-  if (placed.empty()) no_station(needs, out.stations);
-  auto series = model_series(needs, placed);
-  if (needs.field.terrain) {
-    out.lapse = needs.field.terrain->fit ? fit_lapse(placed, series, out.steps, place_text, notices)
-                                         : lapse_in(*needs.field.terrain, needs.output_units);
-    for (std::size_t i = 0; i < placed.size(); ++i) {
-      for (std::size_t t = 0; t < series[i].size(); ++t) {
-        series[i][t] -= out.lapse[out.steps.month[t]] * placed[i].model_height;
-      }
-    }
+  out.records = records(needs, notices);
+  check_resolution(out.setup, out.records, place_text);
+  out.placed = place(needs, out.records, notices, out.left_out);
+  if (out.placed.empty()) no_station(needs, out.left_out);
+  out.series = model_series(needs, out.placed);
+  return out;
+}
+
+std::array<double, 12> lapse_of(const CalibrationNeeds& needs, const Gathered& gathered,
+                                const std::vector<Placed>& placed, const std::vector<std::size_t>& chosen,
+                                Notices& notices) {
+  if (!needs.field.terrain) return {};
+  if (!needs.field.terrain->fit) return lapse_in(*needs.field.terrain, needs.output_units);
+  std::vector<Placed> stations;
+  std::vector<std::vector<double>> series;
+  for (const std::size_t i : chosen) {
+    stations.push_back(placed[i]);
+    series.push_back(gathered.series[i]);
   }
-  std::vector<Fitted> fitted;
-  for (std::size_t i = 0; i < placed.size(); ++i) {
-    const auto& record = *placed[i].record;
-    std::vector<double> reduction(12, 0.0);
-    for (std::size_t m = 0; m < 12 && needs.field.terrain; ++m) reduction[m] = out.lapse[m] * record.site.elevation_m;
-    auto fit = adjust::fit_station(out.setup, out.steps, series[i], record, reduction,
-                                   needs.job.stations.normals_period.value_or(std::pair(0, 0)),
-                                   needs.field.adjust.accept_period_mismatch);
-    const bool used = fit.level;
-    out.stations.push_back({record.site.id, !used ? fit.left_out : fit.shape ? "level and shape" : "level"});
-    if (!used) {
+  return fit_lapse(stations, series, gathered.steps, place_of(needs), notices);
+}
+
+std::vector<double> reduced(const std::vector<double>& series, const adjust::Steps& steps,
+                            const std::array<double, 12>& lapse, double height_m) {
+  std::vector<double> out(series);
+  for (std::size_t t = 0; t < out.size(); ++t) out[t] -= lapse[steps.month[t]] * height_m;
+  return out;
+}
+
+adjust::StationFit fit_placed(const CalibrationNeeds& needs, const Gathered& gathered, const Placed& placed,
+                              const std::vector<double>& series, const std::array<double, 12>& lapse) {
+  const auto& record = *placed.record;
+  std::vector<double> reduction(12, 0.0);
+  for (std::size_t m = 0; m < 12 && needs.field.terrain; ++m) reduction[m] = lapse[m] * record.site.elevation_m;
+  const auto model = needs.field.terrain ? reduced(series, gathered.steps, lapse, placed.model_height) : series;
+  return adjust::fit_station(gathered.setup, gathered.steps, model, record, reduction,
+                             needs.job.stations.normals_period.value_or(std::pair(0, 0)),
+                             needs.field.adjust.accept_period_mismatch);
+}
+
+std::vector<Fitted> fit_all(const CalibrationNeeds& needs, const Gathered& gathered,
+                            const std::array<double, 12>& lapse, std::vector<report::StationRecord>& outcomes,
+                            Notices& notices) {
+  std::vector<Fitted> out;
+  for (std::size_t i = 0; i < gathered.placed.size(); ++i) {
+    const auto& record = *gathered.placed[i].record;
+    auto fit = fit_placed(needs, gathered, gathered.placed[i], gathered.series[i], lapse);
+    outcomes.push_back({record.site.id, !fit.level ? fit.left_out : fit.shape ? "level and shape" : "level"});
+    if (fit.level) {
+      out.push_back({&record, std::move(fit)});
+    } else {
       notices.add(fmt::format("station {}", record.site.id), fmt::format("left out: {}", fit.left_out));
-      continue;
     }
-    out.period_mismatch = out.period_mismatch || fit.period_mismatch;
-    fitted.push_back({&record, std::move(fit)});
   }
-  if (fitted.empty()) no_station(needs, out.stations);
-  carry_over(needs, fitted, out, notices);
-  if (out.setup.width() > 0 && out.shape_stations == 0) {
-    throw Error(Failure::data, place_text,
-                job::word(needs.field.adjust.method) + " needs stations with daily series; there are none");
+  if (out.empty()) no_station(needs, outcomes);
+  return out;
+}
+
+Calibration calibrate(const CalibrationNeeds& needs, Notices& notices) {
+  auto gathered = gather(needs, notices);
+  Calibration out;
+  out.stations = gathered.left_out;
+  std::vector<std::size_t> all(gathered.placed.size());
+  std::iota(all.begin(), all.end(), std::size_t{0});
+  out.lapse = lapse_of(needs, gathered, gathered.placed, all, notices);
+  const auto fitted = fit_all(needs, gathered, out.lapse, out.stations, notices);
+  for (const auto& f : fitted) out.period_mismatch = out.period_mismatch || f.fit.period_mismatch;
+  std::vector<const Fitted*> chosen;
+  for (const auto& f : fitted) chosen.push_back(&f);
+  std::vector<GeoPoint> cells;
+  for (std::size_t i = 0; i < needs.target.mesh->size(); ++i) cells.push_back(needs.target.mesh->centre(i));
+  out.carried = carry_over(needs.job, needs.field, gathered.setup, chosen, cells, notices);
+  if (gathered.setup.width() > 0 && out.carried.shape_stations == 0) {
+    no_shape(needs);
   }
   if (out.period_mismatch) tell_mismatch(needs, notices);
+  out.setup = std::move(gathered.setup);
+  out.steps = std::move(gathered.steps);
   return out;
 }
 

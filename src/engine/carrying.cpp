@@ -41,11 +41,11 @@ std::array<double, 12> monthly_variance(const station::Record& record, bool rati
 
 /// Sampling variance of every station's season means [station * seasons]. Moving windows take that of the month they
 /// are centred in, which is a little more than their own; the year a twelfth of the months' mean.
-std::vector<double> sampling_variance(const std::vector<Fitted>& fitted, const adjust::Setup& setup) {
+std::vector<double> sampling_variance(const std::vector<const Fitted*>& fitted, const adjust::Setup& setup) {
   const std::size_t seasons = setup.season_count();
   std::vector<double> out;
-  for (const Fitted& f : fitted) {
-    const auto months = monthly_variance(*f.record, setup.multiplicative());
+  for (const Fitted* f : fitted) {
+    const auto months = monthly_variance(*f->record, setup.multiplicative());
     double year = 0;
     for (const double v : months) year += v / 144;
     for (std::size_t s = 0; s < seasons; ++s) {
@@ -75,13 +75,13 @@ void take_off(const reach::Drift& drift, const std::vector<double>& heights, std
 /// The reach of all stations and of those with a shape.
 class Carrier {
  public:
-  Carrier(const CalibrationNeeds& needs, const std::vector<Fitted>& fitted, Calibration& out, Notices& notices)
-      : needs_(needs), fitted_(fitted), out_(out), notices_(notices) {
-    for (const Fitted& f : fitted) {
-      position_.push_back(f.record->site.position);
-      height_.push_back(f.record->site.elevation_m);
+  Carrier(const job::ReachSpec& spec, const adjust::Setup& setup, const std::vector<const Fitted*>& fitted,
+          Carried& out, Notices& notices)
+      : spec_(spec), setup_(setup), fitted_(fitted), out_(out), notices_(notices) {
+    for (const Fitted* f : fitted) {
+      position_.push_back(f->record->site.position);
+      height_.push_back(f->record->site.elevation_m);
     }
-    const auto& spec = needs.job.reach;
     options_.method = spec.method == job::ReachMethod::nearest            ? reach::Method::nearest
                       : spec.method == job::ReachMethod::inverse_distance ? reach::Method::inverse_distance
                                                                           : reach::Method::kriging;
@@ -95,11 +95,10 @@ class Carrier {
   /// corrections hold the steps between coarse cells, which a variogram takes for noise, so that kriging of targets by
   /// it would average far and wide.
   void learn() {
-    const auto& spec = needs_.job.reach;
-    if (!spec.kriges()) return;
-    options_.noise = reach::standardised_noise(out_.station_level, sampling_variance(fitted_, out_.setup),
-                                               out_.setup.season_count());
-    if (spec.method != job::ReachMethod::kriging_height) {
+    if (!spec_.kriges()) return;
+    options_.noise =
+        reach::standardised_noise(out_.station_level, sampling_variance(fitted_, setup_), setup_.season_count());
+    if (spec_.method != job::ReachMethod::kriging_height) {
       options_.variogram = variogram(out_.station_level);
       return;
     }
@@ -111,38 +110,38 @@ class Carrier {
     options_.variogram = variogram(out_.station_level);
   }
 
-  [[nodiscard]] reach::ReachMap make(bool with_shape) const {
-    std::vector<GeoPoint> stations, cells;
+  [[nodiscard]] reach::ReachMap make(const std::vector<GeoPoint>& places, bool with_shape) const {
+    std::vector<GeoPoint> stations;
     reach::Options options = options_;
     options.noise.clear();
     for (std::size_t i = 0; i < fitted_.size(); ++i) {
-      if (with_shape && !fitted_[i].fit.shape) continue;
+      if (with_shape && !fitted_[i]->fit.shape) continue;
       stations.push_back(position_[i]);
       if (!options_.noise.empty()) options.noise.push_back(options_.noise[i]);
     }
-    for (std::size_t i = 0; i < needs_.target.mesh->size(); ++i) cells.push_back(needs_.target.mesh->centre(i));
-    return reach::make_reach(stations, cells, options, with_shape ? nullptr : &notices_);
+    return reach::make_reach(stations, places, options, with_shape ? nullptr : &notices_);
   }
 
   [[nodiscard]] const reach::Variogram& variogram() const { return options_.variogram; }
 
  private:
   [[nodiscard]] reach::Variogram variogram(const std::vector<double>& values) const {
-    const auto& given = needs_.job.reach.variogram;
+    const auto& given = spec_.variogram;
     if (!given.fit) return {model_of(given.model), given.nugget, given.sill, given.range_m};
-    return reach::fit_variogram(position_, values, out_.setup.season_count(), options_.noise, model_of(given.model),
+    return reach::fit_variogram(position_, values, setup_.season_count(), options_.noise, model_of(given.model),
                                 notices_);
   }
   /// What it says, it says when it has its final variogram.
   [[nodiscard]] reach::Drift fit_drift(const std::optional<reach::Variogram>& variogram) const {
     Notices quiet;
-    return reach::fit_drift(height_, out_.station_level, out_.setup.season_count(), position_, variogram,
-                            options_.noise, variogram ? notices_ : quiet);
+    return reach::fit_drift(height_, out_.station_level, setup_.season_count(), position_, variogram, options_.noise,
+                            variogram ? notices_ : quiet);
   }
 
-  const CalibrationNeeds& needs_;
-  const std::vector<Fitted>& fitted_;
-  Calibration& out_;
+  const job::ReachSpec& spec_;
+  const adjust::Setup& setup_;
+  const std::vector<const Fitted*>& fitted_;
+  Carried& out_;
   Notices& notices_;
   std::vector<GeoPoint> position_;
   std::vector<double> height_;
@@ -151,35 +150,50 @@ class Carrier {
 
 }  // namespace
 
-void carry_over(const CalibrationNeeds& needs, const std::vector<Fitted>& fitted, Calibration& out, Notices& notices) {
-  const bool target = needs.field.adjust.carry == job::Carry::target;
-  for (const Fitted& f : fitted) {
-    const auto& values = target ? f.fit.target_level : f.fit.correction_level;
+Carried carry_over(const job::JobSpec& job, const job::FieldSpec& field, const adjust::Setup& setup,
+                   const std::vector<const Fitted*>& fitted, const std::vector<GeoPoint>& places, Notices& notices) {
+  Carried out;
+  const bool target = field.adjust.carry == job::Carry::target;
+  for (const Fitted* f : fitted) {
+    const auto& values = target ? f->fit.target_level : f->fit.correction_level;
     out.station_level.insert(out.station_level.end(), values.begin(), values.end());
-    add_to(out.mean_correction_level, f.fit.correction_level);
+    add_to(out.mean_correction_level, f->fit.correction_level);
     ++out.level_stations;
-    if (!f.fit.shape) continue;
-    const auto& shapes = target ? f.fit.target_shape : f.fit.correction_shape;
+    if (!f->fit.shape) continue;
+    const auto& shapes = target ? f->fit.target_shape : f->fit.correction_shape;
     out.station_shape.insert(out.station_shape.end(), shapes.begin(), shapes.end());
-    add_to(out.mean_correction_shape, f.fit.correction_shape);
+    add_to(out.mean_correction_shape, f->fit.correction_shape);
     ++out.shape_stations;
   }
   divide(out.mean_correction_level, out.level_stations);
   if (out.shape_stations > 0) divide(out.mean_correction_shape, out.shape_stations);
-  if (needs.job.reach.beyond == job::Beyond::raw) {
+  if (job.reach.beyond == job::Beyond::raw) {
     std::fill(out.mean_correction_level.begin(), out.mean_correction_level.end(), 0.0);
     std::fill(out.mean_correction_shape.begin(), out.mean_correction_shape.end(), 0.0);
   }
-  Carrier carrier(needs, fitted, out, notices);
+  Carrier carrier(job.reach, setup, fitted, out, notices);
   carrier.learn();
-  out.level = carrier.make(false);
-  if (out.setup.width() > 0) out.shape = carrier.make(true);
-  if (!needs.job.reach.kriges()) return;
+  out.level = carrier.make(places, false);
+  if (setup.width() > 0) out.shape = carrier.make(places, true);
+  if (!job.reach.kriges()) return out;
   const reach::Variogram& v = carrier.variogram();
   notices.add(
-      fmt::format("field '{}'", needs.field.name),
+      fmt::format("field '{}'", field.name),
       fmt::format("kriging with nugget {:.3g}, sill {:.3g}, range {:.0f} km{}; {} negative weights set to zero",
                   v.nugget, v.sill, v.range_m / 1000, out.drift.used ? ", height as drift" : "", out.level.clipped));
+  return out;
+}
+
+void hand_over(const Carried& carried, std::span<const double> height, pipeline::AdjustInput& adjust) {
+  adjust.level = &carried.level;
+  adjust.shape = &carried.shape;
+  adjust.station_level = carried.station_level;
+  adjust.station_shape = carried.station_shape;
+  adjust.mean_correction_level = carried.mean_correction_level;
+  adjust.mean_correction_shape = carried.mean_correction_shape;
+  if (!carried.drift.used) return;
+  adjust.drift_slope = carried.drift.slope;
+  for (const double metres : height) adjust.drift_height.push_back(reach::drift_height(carried.drift, metres));
 }
 
 }  // namespace windrow::engine

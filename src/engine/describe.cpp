@@ -256,7 +256,7 @@ void Describer::add_globals(const report::Balance& balance) {
     set(out, "windrow_adjustment",
         fmt::format(
             "{}, calibrated on run {}, {} stations{}", transfer,
-            job.runs[context_.session.anchor_of(context_.run)].name, context_.calibration->level_stations,
+            job.runs[context_.session.anchor_of(context_.run)].name, context_.calibration->carried.level_stations,
             spec.accept_period_mismatch && context_.calibration->period_mismatch ? ", period mismatch accepted" : ""));
   }
   std::string cautions;

@@ -37,8 +37,8 @@ void add_stage(Session& session, const StageSetup& setup, Fact& fact, Totals& to
   fact.add({"threads", static_cast<std::int64_t>(setup.stage.threads)});
   fact.add({"memory bound", text::bytes_text(setup.stage.bound)});
   if (setup.calibration != nullptr) {
-    fact.add({"stations", fmt::format("{} give the level, {} the shape", setup.calibration->level_stations,
-                                      setup.calibration->shape_stations)});
+    fact.add({"stations", fmt::format("{} give the level, {} the shape", setup.calibration->carried.level_stations,
+                                      setup.calibration->carried.shape_stations)});
   }
   totals.bound = std::max(totals.bound, setup.stage.bound);
   const double cells = static_cast<double>(context.target.ny * context.target.nx);

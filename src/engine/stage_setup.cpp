@@ -6,13 +6,12 @@
 #include <cmath>
 #include <set>
 
+#include "adjust_setup.h"
 #include "windrow/base/error.h"
 #include "windrow/os/process.h"
 
 namespace windrow::engine {
 namespace {
-
-constexpr std::uint64_t kDrawSeed = 20260101;
 
 // Beside what is resident when a stage starts: chunk caches of the libraries, the description of a product being
 // assembled (below, per cell) and the heap's own slack.
@@ -189,25 +188,14 @@ void set_adjustment(Session& session, SharedFits& fits, std::size_t field, std::
           ? adjust.anchor_steps
           : adjust::make_steps(adjust.setup, source.variable->calendar(), step_dates(*source.variable),
                                session.job.fields[field].adjust.period, false, place_of(session, field, run));
-  adjust.level = &fit.calibration.level;
-  adjust.shape = &fit.calibration.shape;
-  adjust.station_level = fit.calibration.station_level;
-  adjust.station_shape = fit.calibration.station_shape;
-  adjust.mean_correction_level = fit.calibration.mean_correction_level;
-  adjust.mean_correction_shape = fit.calibration.mean_correction_shape;
+  const Carried& carried = fit.calibration.carried;
+  hand_over(carried, carried.drift.used ? fits.cell_height(session) : std::vector<double>(), adjust);
   if (adjust.setup.wet_days() && adjust.setup.wet_day > 0) {
-    // One field for the whole job: the seed is fixed, so that every product of every family shares its days.
     adjust.anchor_draws = std::make_shared<adjust::Draws>(kDrawSeed, adjust.anchor_steps.date);
     adjust.run_draws =
         adjust.run_is_anchor ? adjust.anchor_draws : std::make_shared<adjust::Draws>(kDrawSeed, adjust.run_steps.date);
     const auto& mesh = *session.target().mesh;
     for (std::size_t i = 0; i < mesh.size(); ++i) adjust.cell_centre.push_back(mesh.centre(i));
-  }
-  if (fit.calibration.drift.used) {
-    adjust.drift_slope = fit.calibration.drift.slope;
-    for (const double height : fits.cell_height(session)) {
-      adjust.drift_height.push_back(reach::drift_height(fit.calibration.drift, height));
-    }
   }
   adjust.missing_beyond = session.job.reach.beyond == job::Beyond::missing;
   adjust.terrain = session.job.fields[field].terrain.has_value();

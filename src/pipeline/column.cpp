@@ -3,11 +3,11 @@
 #include <algorithm>
 #include <cmath>
 #include <map>
-#include <optional>
 #include <string>
 
 #include "lanes.h"
 #include "row_series.h"
+#include "windrow/pipeline/cell.h"
 #include "worker.h"
 
 namespace windrow::pipeline {
@@ -37,17 +37,6 @@ void add_terms(const double* weighted, const std::uint8_t* kept, double area, co
   }
 }
 
-/// out[i] = sum over the row's pairings of share * values[column * width + i].
-void carry(const linear_map::LinearMap& map, std::size_t row, std::span<const double> values, std::size_t width,
-           std::vector<double>& out) {
-  out.assign(width, 0.0);
-  for (auto k = map.row_start[row]; k < map.row_start[row + 1]; ++k) {
-    const double share = map.share[k];
-    const double* from = values.data() + static_cast<std::size_t>(map.column[k]) * width;
-    for (std::size_t i = 0; i < width; ++i) out[i] += share * from[i];
-  }
-}
-
 }  // namespace
 
 struct ColumnWorker::State {
@@ -57,9 +46,8 @@ struct ColumnWorker::State {
   RowSeries row, anchor_row;
   adjust::RowClimate climate;
   adjust::Ranks ranks;
-  adjust::Correction correction;
-  std::optional<adjust::CellDraws> anchor_draws, run_draws;
-  std::vector<double> level, shape, out;
+  CellCorrection cell_correction;
+  std::vector<double> out;
   std::size_t first = 0, steps = 0;  ///< steps of the segment on the run's axis
   std::vector<float> values;         ///< [cell][step of the segment]
   std::vector<TileStats> stats;      ///< one a piece
@@ -68,7 +56,6 @@ struct ColumnWorker::State {
       : input(stage), adjust(*stage.adjust), data(data_encoder), cover(cover_encoder) {}
 
   void prepare_row(std::size_t mesh_row, const linear_map::SourceBlock& run, const linear_map::SourceBlock& anchor);
-  bool correct_cell(std::size_t mesh_row);
   void make_cell(std::size_t mesh_row, std::size_t cell, const std::vector<plan::Piece>& pieces);
   void count_cell(std::size_t mesh_row, std::size_t cell, bool adjusted, const plan::Piece& piece, TileStats& tile);
   void write(const plan::Piece& piece, TileStats& tile, std::uint32_t block_index, const linear_map::SourceBlock& run);
@@ -98,37 +85,6 @@ void ColumnWorker::State::prepare_row(std::size_t mesh_row, const linear_map::So
   adjust::rank_series(adjust.setup, adjust.run_steps, climate, row.reduced, ranks);
 }
 
-/// False when the cell cannot be adjusted (beyond reach and told to be missing).
-bool ColumnWorker::State::correct_cell(std::size_t mesh_row) {
-  const std::size_t seasons = adjust.seasons();
-  adjust::CellTarget target;
-  target.fade_level = adjust.level->fade[mesh_row];
-  if (adjust.missing_beyond) {
-    if (target.fade_level <= 0) return false;
-    target.fade_level = 1;
-  }
-  carry(adjust.level->map, mesh_row, adjust.station_level, seasons, level);
-  for (std::size_t s = 0; s < adjust.drift_slope.size(); ++s) {
-    level[s] += adjust.drift_slope[s] * adjust.drift_height[mesh_row];
-  }
-  target.level = level;
-  target.mean_correction_level = adjust.mean_correction_level;
-  if (adjust.setup.width() > 0) {
-    carry(adjust.shape->map, mesh_row, adjust.station_shape, seasons * adjust.setup.width(), shape);
-    target.shape = shape;
-    target.mean_correction_shape = adjust.mean_correction_shape;
-    target.fade_shape = adjust.shape->fade[mesh_row];
-  }
-  if (adjust.anchor_draws) {
-    anchor_draws.emplace(*adjust.anchor_draws, adjust.cell_centre[mesh_row]);
-    run_draws.emplace(*adjust.run_draws, adjust.cell_centre[mesh_row]);
-  }
-  const RowSeries& calibration = adjust.run_is_anchor ? row : anchor_row;
-  adjust::make_correction(adjust.setup, adjust.anchor_steps, climate, calibration.reduced, target,
-                          anchor_draws ? &*anchor_draws : nullptr, correction);
-  return true;
-}
-
 void ColumnWorker::State::count_cell(std::size_t mesh_row, std::size_t cell, bool adjusted, const plan::Piece& piece,
                                      TileStats& tile) {
   const std::size_t t0 = piece.t0, count = piece.t1 - piece.t0;
@@ -154,18 +110,19 @@ void ColumnWorker::State::count_cell(std::size_t mesh_row, std::size_t cell, boo
   }
   tile.flags[cell] = flags;
   if (piece.time_chunk == 0 && adjusted) {
-    tile.count[kReordered] += static_cast<std::uint64_t>(correction.reordered);
-    tile.count[kCapped] += static_cast<std::uint64_t>(correction.capped);
+    tile.count[kReordered] += static_cast<std::uint64_t>(cell_correction.correction.reordered);
+    tile.count[kCapped] += static_cast<std::uint64_t>(cell_correction.correction.capped);
   }
 }
 
 void ColumnWorker::State::make_cell(std::size_t mesh_row, std::size_t cell, const std::vector<plan::Piece>& pieces) {
-  const bool adjusted = correct_cell(mesh_row);
+  const RowSeries& calibration = adjust.run_is_anchor ? row : anchor_row;
+  const bool adjusted = correct_cell(adjust, mesh_row, climate, calibration.reduced, cell_correction);
   const std::size_t run_steps = row.reduced.size();
   out.resize(run_steps);
   if (adjusted) {
-    adjust::evaluate(adjust.setup, adjust.run_steps, row.reduced, ranks, correction, run_draws ? &*run_draws : nullptr,
-                     out);
+    adjust::evaluate(adjust.setup, adjust.run_steps, row.reduced, ranks, cell_correction.correction,
+                     cell_correction.run_draws ? &*cell_correction.run_draws : nullptr, out);
   } else {
     std::fill(out.begin(), out.end(), std::nan(""));
   }

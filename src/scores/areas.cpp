@@ -64,9 +64,12 @@ std::string sentence_of(const AreaScores& area, const Season& season) {
   if (area.verdict == AreaVerdict::too_small) {
     return who + fmt::format("sample too small: {} years, at least {} needed", area.years, kFewestYears);
   }
-  const std::string ratios = fmt::format(
-      "product over observed is {:.3g} for the variance, {:.3g} for the 95th percentile and {:.3g} for Rx1day",
-      area.variance.value.value, area.percentile_95.value.value, area.yearly_maximum.value.value);
+  const auto ratio = [](const Estimate& estimate) {
+    return std::isnan(estimate.value.value) ? "not to be had" : fmt::format("{:.3g}", estimate.value.value);
+  };
+  const std::string ratios =
+      fmt::format("product over observed is {} for the variance, {} for the 95th percentile and {} for Rx1day",
+                  ratio(area.variance), ratio(area.percentile_95), ratio(area.yearly_maximum));
   const std::string range = fmt::format("{:g} to {:g}", kLeastAreaRatio, kLargestAreaRatio);
   if (area.verdict == AreaVerdict::sound) {
     return who + fmt::format("areal extremes may be used: {}, all within {}", ratios, range);

@@ -18,6 +18,9 @@ namespace {
 constexpr double kNone = std::numeric_limits<double>::quiet_NaN();
 constexpr std::array<double, 4> kProbabilities = {0.05, 0.5, 0.95, 0.99};
 
+/// Values of a series whose counts by year are kept together.
+constexpr std::size_t kQuantileBlock = 64;
+
 Value difference(double observed, double modelled) { return {observed, modelled, modelled - observed}; }
 
 Value& at(Values& values, Score score) { return values[static_cast<std::size_t>(score)]; }
@@ -106,6 +109,12 @@ void Sample::add_up(Series& series, const Days& days, const std::vector<std::siz
     series.value.push_back(values[taken[k]]);
     series.year.push_back(year_of_taken_[k]);
   }
+  std::vector<std::uint32_t> passed(years_.size(), 0);
+  for (std::size_t k = 0; k < series.year.size(); ++k) {
+    if (k % kQuantileBlock == 0) series.before.insert(series.before.end(), passed.begin(), passed.end());
+    ++passed[series.year[k]];
+  }
+  series.before.insert(series.before.end(), passed.begin(), passed.end());
   // The median as centre: exact, so that a constant series has no variance at all.
   if (!series.value.empty()) series.centre = series.value[series.value.size() / 2];
   series.sums.resize(years_.size());
@@ -218,13 +227,31 @@ void Sample::mean_and_spread(std::span<const int> times, Values& out) const {
   at(out, Score::variance_ratio) = {observed, modelled, observed > 0 ? modelled / observed : kNone};
 }
 
+/// Of the drawn values, which are not laid out: the block that holds the k-th is found by halves from the counts before
+/// each block, and the value by counting within it.
 void Sample::quantiles(const Series& series, std::span<const int> times, std::array<double, 4>& out) const {
-  std::vector<double> drawn;
-  drawn.reserve(2 * series.value.size());
-  for (std::size_t k = 0; k < series.value.size(); ++k) {
-    for (int n = times[series.year[k]]; n > 0; --n) drawn.push_back(series.value[k]);
-  }
-  for (std::size_t p = 0; p < out.size(); ++p) out[p] = stats::quantile(drawn, kProbabilities[p], 7);
+  const std::size_t years = times.size(), blocks = series.before.size() / years;
+  const auto drawn_before = [&](std::size_t block) {
+    std::size_t sum = 0;
+    for (std::size_t y = 0; y < years; ++y) {
+      sum += static_cast<std::size_t>(times[y]) * series.before[block * years + y];
+    }
+    return sum;
+  };
+  const auto drawn_value = [&](std::size_t k) {
+    std::size_t block = 0, end = blocks - 1;  // the last entry counts all values
+    while (end - block > 1) {
+      const std::size_t middle = (block + end) / 2;
+      (drawn_before(middle) <= k ? block : end) = middle;
+    }
+    std::size_t at = block * kQuantileBlock, passed = drawn_before(block);
+    while (passed + static_cast<std::size_t>(times[series.year[at]]) <= k) {
+      passed += static_cast<std::size_t>(times[series.year[at++]]);
+    }
+    return series.value[at];
+  };
+  const std::size_t size = drawn_before(blocks - 1);
+  for (std::size_t p = 0; p < out.size(); ++p) out[p] = stats::quantile(size, drawn_value, kProbabilities[p], 7);
 }
 
 void Sample::frequencies(std::span<const int> times, Values& out) const {

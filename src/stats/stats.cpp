@@ -27,16 +27,17 @@ struct Position {
 };
 
 /// Element k (1-based) of the sample, its ends beyond.
-double element(std::span<const double> ascending, double k) {
-  const double n = static_cast<double>(ascending.size());
-  return ascending[static_cast<std::size_t>(std::clamp(k, 1.0, n)) - 1];
+template <class Element>
+double element(std::size_t size, const Element& ascending, double k) {
+  return ascending(static_cast<std::size_t>(std::clamp(k, 1.0, static_cast<double>(size))) - 1);
 }
 
 /// Types 1 to 3, Hyndman & Fan 1996, Definitions 1-3.
-double discontinuous(std::span<const double> ascending, double p, int type) {
-  const double n = static_cast<double>(ascending.size());
+template <class Element>
+double discontinuous(std::size_t size, const Element& ascending, double p, int type) {
+  const double n = static_cast<double>(size);
   const Position at(type == 3 ? n * p - 0.5 : n * p);
-  const double low = element(ascending, at.whole), high = element(ascending, at.whole + 1);
+  const double low = element(size, ascending, at.whole), high = element(size, ascending, at.whole + 1);
   if (at.rest > 0) return high;
   if (type == 1) return low;
   if (type == 2) return low + (high - low) / 2;
@@ -71,23 +72,33 @@ double product_sum(std::span<const double> a, std::span<const double> b) {
   return pairwise_sum(products);
 }
 
-}  // namespace
-
-double quantile(std::span<const double> ascending, double p, int type) {
+template <class Element>
+double quantile_of(std::size_t size, const Element& ascending, double p, int type) {
   if (type < 1 || type > 9) throw Error(Failure::defect, "quantile", fmt::format("no type {}; expected 1 to 9", type));
-  if (ascending.empty() || std::isnan(p)) return std::numeric_limits<double>::quiet_NaN();
+  if (size == 0 || std::isnan(p)) return std::numeric_limits<double>::quiet_NaN();
   p = std::clamp(p, 0.0, 1.0);
-  if (type <= 3) return discontinuous(ascending, p, type);
+  if (type <= 3) return discontinuous(size, ascending, p, type);
   struct Plotting {
     double alpha, beta;
   };
   constexpr std::array<Plotting, 6> kTypes = {
       {{0, 1}, {0.5, 0.5}, {0, 0}, {1, 1}, {1.0 / 3, 1.0 / 3}, {3.0 / 8, 3.0 / 8}}};
   const auto [alpha, beta] = kTypes[static_cast<std::size_t>(type - 4)];
-  const Position at(alpha + p * (static_cast<double>(ascending.size()) + 1 - alpha - beta));
-  const double low = element(ascending, at.whole), high = element(ascending, at.whole + 1);
+  const Position at(alpha + p * (static_cast<double>(size) + 1 - alpha - beta));
+  const double low = element(size, ascending, at.whole), high = element(size, ascending, at.whole + 1);
   // The bound keeps the interpolated value in its interval when the last bit rounds up.
   return low == high ? low : std::min(high, low + at.rest * (high - low));
+}
+
+}  // namespace
+
+double quantile(std::span<const double> ascending, double p, int type) {
+  return quantile_of(
+      ascending.size(), [ascending](std::size_t k) { return ascending[k]; }, p, type);
+}
+
+double quantile(std::size_t size, const std::function<double(std::size_t)>& ascending, double p, int type) {
+  return quantile_of(size, ascending, p, type);
 }
 
 int make_non_decreasing(std::span<double> values) {

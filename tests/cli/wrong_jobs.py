@@ -319,3 +319,35 @@ def _(folder):
 def _(folder):
     regrid(folder, rest="[outptu]\nlevel = 1\n")
     return ["plan", "job.toml"]
+
+
+@case("proof of a job without adjustment", 78,
+      "windrow: FOLDER/job.toml: no field has [field.adjust]: there is nothing to prove; expected a field adjusted to "
+      "stations\n")
+def _(folder):
+    regrid(folder)
+    return ["prove", "job.toml", "--quiet", "--csv", "out/scores.csv"]
+
+
+@case("proof with one station", 65,
+      "windrow: field 'tas', run 'run': with station 'A' left out nothing is left to fit: no other station can be used; "
+      "expected stations at two sites at least\n")
+def _(folder):
+    adjust(folder)
+    kit.sites(folder("in/sites.csv"), "station,longitude,latitude,elevation\nA,12.5,42.5,100\n")
+    kit.daily(folder("in/daily.csv"), stations="A")
+    return ["prove", "job.toml", "--quiet", "--csv", "out/scores.csv"]
+
+
+@case("proof with two stations at one site", 65,
+      "windrow: field 'tas', run 'run': with station 'A' left out nothing is left to fit: all 2 stations lie within 2 km "
+      "of it; expected stations at two sites at least\n")
+def _(folder):
+    adjust(folder)
+    kit.sites(folder("in/sites.csv"), "station,longitude,latitude,elevation\nA,12.5,42.5,100\nB,12.51,42.51,120\n")
+    return ["prove", "job.toml", "--quiet"]
+
+
+@case("proof without a job", 64, "windrow: `windrow prove` needs a job file\n")
+def _(folder):
+    return ["prove", "--csv", "scores.csv"]

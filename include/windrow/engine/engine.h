@@ -28,9 +28,9 @@ struct ProductStatus {
 struct Summary {
   std::vector<ProductStatus> products;  ///< job order
   std::vector<Notice> notices;
-  std::optional<Failure> failure;       ///< the first failure's kind in job order; nothing when all is well
+  std::optional<Failure> failure;  ///< the first failure's kind in job order; nothing when all is well
   double seconds = 0;
-  double output_bytes = 0;              ///< uncompressed bytes made
+  double output_bytes = 0;  ///< uncompressed bytes made
   std::int64_t peak_memory = 0;
 };
 
@@ -45,6 +45,17 @@ Summary run(const std::string& job_file, const Options& options, const ProgressS
 /// `windrow plan`: reads, writes nothing.
 Report plan(const std::string& job_file, const Options& options);
 
+struct Proof {
+  Report report;    ///< empty when nothing could be proven
+  std::string csv;  ///< a line a station, season and score
+  std::vector<Notice> notices;
+  std::vector<std::string> failures;  ///< fields that could not be proven, one line each
+  std::optional<Failure> failure;     ///< the first one's kind, in job order
+};
+/// `windrow prove`: cross-validation of every adjusted field, on the anchor run of each family. Writes nothing. Error
+/// for what stops everything; Error(job) when no field is adjusted.
+Proof prove(const std::string& job_file, const Options& options, const ProgressSink& progress);
+
 /// `windrow inspect`: what one file is understood to be.
 Report inspect(const std::string& path);
 
@@ -57,7 +68,7 @@ struct Check {
 struct Vouched {
   std::string product;
   std::vector<Check> checks;
-  std::string value_digest;  ///< of the data variable's values
+  std::string value_digest;          ///< of the data variable's values
   [[nodiscard]] bool holds() const;  ///< no check failed
 };
 /// `windrow vouch`. Error(missing) or Error(data) when the file cannot be opened at all.

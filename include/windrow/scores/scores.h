@@ -82,8 +82,9 @@ class Sample {
   };
   struct Series {
     double centre = 0;
-    std::vector<double> value;      // ascending
-    std::vector<std::size_t> year;  // of each value: position in years_
+    std::vector<double> value;          // ascending
+    std::vector<std::size_t> year;      // of each value: position in years_
+    std::vector<std::uint32_t> before;  // block of values x year: values of that year in the blocks before; all at last
     std::vector<Year> sums;
     std::vector<int> bins;  // bin x year: days
   };

@@ -93,6 +93,9 @@ struct Tables {
 std::vector<Record> read_records(const Tables& tables, const Mapping& mapping, const Options& options,
                                  Notices& notices);
 
+/// What the record has of these years (ascending). Normals go: they hold other years too. Complete years count anew.
+Record of_years(const Record& record, const std::vector<int>& years);
+
 /// Sites with coordinates, each once, in the table's order; what is left out is told. Errors as for read_records.
 std::vector<Site> read_sites(const text::CsvTable& table, const Mapping& mapping, Notices& notices);
 

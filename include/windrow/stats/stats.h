@@ -1,5 +1,7 @@
 // Statistics without knowledge of climate: quantiles, moments, monotone regression.
 #pragma once
+#include <cstddef>
+#include <functional>
 #include <span>
 #include <vector>
 
@@ -8,6 +10,8 @@ namespace windrow::stats {
 /// Sample quantile of an ascending sample, types 4..9 of Hyndman & Fan 1996 (Am. Stat. 50:361) by (alpha, beta), and
 /// the discontinuous types 1..3. Empty sample: NaN.
 double quantile(std::span<const double> ascending, double p, int type);
+/// The same of a sample that is not laid out: `ascending` gives its k-th value, from 0.
+double quantile(std::size_t size, const std::function<double(std::size_t)>& ascending, double p, int type);
 
 /// Pool adjacent violators: the non-decreasing sequence nearest in least squares (equal weights), in place. Returns how
 /// many entries moved.

@@ -66,6 +66,11 @@ TEST_CASE("each command takes its own words") {
   CHECK(parse_arguments({"inspect", "a.nc", "b.csv"}).files == std::vector<std::string>{"a.nc", "b.csv"});
   CHECK(parse_arguments({"vouch", "a.nc", "--json"}).json);
   CHECK(parse_arguments({"run", "job.toml"}).job == "job.toml");
+  const Arguments prove = parse_arguments({"prove", "job.toml", "--csv", "scores.csv", "--json"});
+  CHECK(prove.command == Command::prove);
+  CHECK(prove.job == "job.toml");
+  CHECK(prove.csv == "scores.csv");
+  CHECK(prove.json);
 }
 
 TEST_CASE("--set takes one value and may be repeated; other options count as last said") {
@@ -97,9 +102,10 @@ TEST_CASE("help and version are texts to print") {
 
 TEST_CASE("a wrong command line is refused in one line with the near miss") {
   CHECK(refused({"rum", "job.toml"}) == "unknown command 'rum'; did you mean 'run'?");
-  CHECK(refused({"make"}) == "unknown command 'make'; expected new, inspect, plan, run or vouch");
-  CHECK(refused({"join", "job.toml"}) == "'join' is not in this version; expected new, inspect, plan, run or vouch");
-  CHECK(refused({}) == "no command; expected new, inspect, plan, run or vouch (see `windrow --help`)");
+  CHECK(refused({"make"}) == "unknown command 'make'; expected new, inspect, plan, run, prove or vouch");
+  CHECK(refused({"join", "job.toml"}) ==
+        "'join' is not in this version; expected new, inspect, plan, run, prove or vouch");
+  CHECK(refused({}) == "no command; expected new, inspect, plan, run, prove or vouch (see `windrow --help`)");
   CHECK(refused({"run"}) == "`windrow run` needs a job file");
   CHECK(refused({"run", ""}) == "`windrow run` needs a job file");
   CHECK(refused({"inspect"}) == "`windrow inspect` needs a file");

@@ -94,6 +94,19 @@ TEST_CASE("one point's rain given to all cells overstates areal extremes and is 
   CHECK(area.sentence.find("do not use areal extremes") != std::string::npos);
 }
 
+TEST_CASE("without a complete year there is no Rx1day, and areal extremes are refused") {
+  const Days days = invented::years(1991, 2005);
+  Field observed = apart(days, 2, 75);
+  for (std::size_t i = 0; i < days.size(); ++i) {
+    if (days.date(i).month == 1 && days.date(i).day <= 16) observed[0][i] = kNaN;
+  }
+  const AreaScores area = score_area(days, season("year"), observed, observed, {0, 1}, kFew);
+  CHECK(area.verdict == AreaVerdict::refused);
+  CHECK(area.sentence ==
+        "year, mean of 2 stations: do not use areal extremes: product over observed is 1 for the variance, 1 for the "
+        "95th percentile and not to be had for Rx1day, not all within 0.8 to 1.25");
+}
+
 TEST_CASE("ratios of exactly 0.8 and 1.25 pass, the next ones do not") {
   const Days days = invented::years(1991, 2002);
   const Field observed(2, invented::rain(days, 8, 80));

@@ -39,6 +39,9 @@ TEST_CASE("quantiles stay in the sample's range, rise with p and keep the ends")
     for (int type = 1; type <= 9; ++type) {
       double last = sample.front();
       CHECK(quantile(sample, 0, type) == sample.front());
+      CHECK(quantile(
+                sample.size(), [&sample](std::size_t k) { return sample[k]; }, 0.3, type) ==
+            quantile(sample, 0.3, type));
       CHECK(quantile(sample, 1, type) == sample.back());
       for (int i = 0; i <= 200; ++i) {
         const double q = quantile(sample, i / 200.0, type);
