@@ -144,7 +144,7 @@ EdgedMesh::EdgedMesh(EdgedCells cells, EdgedTraits traits, const std::string& pl
 }
 
 std::pair<std::size_t, std::size_t> EdgedMesh::shape() const {
-  return traits_.nx == 0 ? std::pair<std::size_t, std::size_t>(1, size()) : std::pair(traits_.ny, traits_.nx);
+  return traits_.nx == 0 ? std::pair<std::size_t, std::size_t>(1, area_.size()) : std::pair(traits_.ny, traits_.nx);
 }
 
 std::pair<std::size_t, std::size_t> EdgedMesh::pieces_of(std::size_t cell) const {
@@ -193,7 +193,7 @@ void EdgedMesh::measure(const std::string& place) {
     sphere::Polygon polygon;
 #pragma omp for schedule(static)
     for (std::size_t k = 0; k < area_.size(); ++k) {
-      cell_into(k, polygon);
+      EdgedMesh::cell_into(k, polygon);
       double sum = 0;
       for (const sphere::Piece& piece : polygon.pieces) {
         const double part = sphere::signed_area(piece);
@@ -210,7 +210,7 @@ void EdgedMesh::measure(const std::string& place) {
 }
 
 void EdgedMesh::find_rim() {
-  rim_.assign(size(), traits_.overlapping);
+  rim_.assign(area_.size(), traits_.overlapping);
   if (traits_.overlapping) return;
   ExactSum whole;
   for (const double area : area_) whole.add(area);
@@ -219,7 +219,7 @@ void EdgedMesh::find_rim() {
   std::vector<std::uint8_t> used(cells_.edge.size());
   for (const EdgedCells::Use use : cells_.use)
     used[use / 2] = static_cast<std::uint8_t>(std::min(2, used[use / 2] + 1));
-  for (std::size_t k = 0; k < size(); ++k) {
+  for (std::size_t k = 0; k < area_.size(); ++k) {
     const auto uses = uses_of(k);
     rim_[k] = std::any_of(uses.begin(), uses.end(), [&](EdgedCells::Use use) { return used[use / 2] == 1; });
   }
@@ -228,7 +228,8 @@ void EdgedMesh::find_rim() {
 void EdgedMesh::make_digest() {
   codec::Hasher hasher;
   hasher.add("edged " + traits_.kind).add(traits_.earth.e2);
-  hasher.add(static_cast<std::int64_t>(shape().first)).add(static_cast<std::int64_t>(shape().second));
+  hasher.add(static_cast<std::int64_t>(EdgedMesh::shape().first))
+      .add(static_cast<std::int64_t>(EdgedMesh::shape().second));
   add_values(hasher, cells_.node);
   add_values(hasher, cells_.inner);
   add_values(hasher, cells_.use);

@@ -307,7 +307,8 @@ std::string describe(const std::vector<HealpixCell>& cells) {
 
 }  // namespace
 
-MeshPtr make_healpix(std::vector<HealpixCell> cells, double e2_of_file, const Earth& earth, const std::string& place) {
+MeshPtr make_healpix(const std::vector<HealpixCell>& cells, double e2_of_file, const Earth& earth,
+                     const std::string& place) {
   std::vector<std::uint32_t> order = order_along_curve(cells, place);
   const healpix::Latitudes latitudes{e2_of_file, earth};
   EdgedTraits traits;

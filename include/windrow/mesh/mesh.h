@@ -98,10 +98,12 @@ MeshPtr make_cells(CellCorners corners, Sides sides, const Earth& earth, const s
 MeshPtr make_faces(const FaceNodes& faces, const Earth& earth, const std::string& place, Notices& notices);
 
 /// HEALPix cells (Gorski et al. 2005, ApJ 622, 759; CF 1.13 appendix F), levels may be mixed. Sides are
-/// circle arcs that stray from the exact boundaries by at most 1e-6 of a cell, as much to either side: every cell's area
-/// is 4 pi / (12 * 4^level) within 1e-9 (up to level 20; beyond it the rounding of unit vectors shows). The latitude is
-/// authalic: `e2_of_file` (0: sphere) turns it into a geodetic one before `earth` turns that back; equal ones cancel.
-MeshPtr make_healpix(std::vector<HealpixCell> cells, double e2_of_file, const Earth& earth, const std::string& place);
+/// circle arcs that stray from the exact boundaries by at most 1e-6 of a cell, as much to either side: every cell's
+/// area is 4 pi / (12 * 4^level) within 1e-9 (up to level 20; beyond it the rounding of unit vectors shows). The
+/// latitude is authalic: `e2_of_file` (0: sphere) turns it into a geodetic one before `earth` turns that back; equal
+/// ones cancel.
+MeshPtr make_healpix(const std::vector<HealpixCell>& cells, double e2_of_file, const Earth& earth,
+                     const std::string& place);
 /// Numbering of CF 1.13 appendix F. Error(data) for a number out of range.
 HealpixCell healpix_from_ring(int level, std::uint64_t ring, const std::string& place);
 HealpixCell healpix_from_nuniq(std::uint64_t nuniq, const std::string& place);
