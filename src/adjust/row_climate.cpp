@@ -1,6 +1,5 @@
 // The anchor run's calibration climate at one place, and ranks within it.
 #include <algorithm>
-#include <cmath>
 #include <limits>
 
 #include "ranking.h"
@@ -42,12 +41,6 @@ void collect(const StepGroups& groups, std::size_t group, std::span<const double
     const double x = series[groups.step[i]];
     if (x == x) out.push_back(x);
   }
-}
-
-double deviation_of(std::span<const double> values, double mean) {
-  double sum = 0;
-  for (const double x : values) sum += (x - mean) * (x - mean);
-  return values.size() > 1 ? std::sqrt(sum / static_cast<double>(values.size() - 1)) : kMissing;
 }
 
 /// Mean of the run's own window less the calibration's, or over it (detrended-quantile-mapping): [window * seasons].
@@ -127,7 +120,7 @@ RowClimate fit_row(const Setup& setup, const Steps& steps, std::span<const doubl
     collect(steps.sample, s, series, values);
     if (values.empty()) continue;
     climate.mean[s] = stats::mean(values);
-    if (!climate.deviation.empty()) climate.deviation[s] = deviation_of(values, climate.mean[s]);
+    if (!climate.deviation.empty()) climate.deviation[s] = stats::standard_deviation(values);
     if (!nodes && !setup.wet_days()) continue;
     std::sort(values.begin(), values.end());
     if (setup.wet_days()) {

@@ -17,13 +17,6 @@ constexpr std::size_t kFewestWet = 10;
 
 double logit(double p) { return std::log(p / (1 - p)); }
 
-double deviation_of(std::span<const double> values) {
-  const double mean = stats::mean(values);
-  double sum = 0;
-  for (const double x : values) sum += (x - mean) * (x - mean);
-  return std::sqrt(sum / static_cast<double>(values.size() - 1));
-}
-
 /// Logarithms of the wet nodes; of a gamma distribution with gamma-mapping.
 std::vector<double> log_nodes(const Setup& setup, std::span<const double> wet) {
   std::vector<double> out(static_cast<std::size_t>(setup.quantiles));
@@ -88,8 +81,8 @@ void add_quantiles(const Setup& setup, const RowClimate& climate, const Matched&
 }
 
 bool add_deviation(const RowClimate& climate, const Matched& matched, std::size_t season, StationFit& fit) {
-  const double correction =
-      std::log(deviation_of(matched.observed_sample[season]) / deviation_of(matched.modelled_sample[season]));
+  const double correction = std::log(stats::standard_deviation(matched.observed_sample[season]) /
+                                     stats::standard_deviation(matched.modelled_sample[season]));
   fit.correction_shape[season] = correction;
   fit.target_shape[season] = std::log(climate.deviation[season]) + correction;
   return std::isfinite(fit.target_shape[season]);
